@@ -1,0 +1,67 @@
+"""What one step did: the vessel before, along and after it, in every lane."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from carboy.chemistry.mixture import Array, Mixture
+from carboy.reasoning.binding import Surroundings
+from carboy.reasoning.firing import Firing
+
+
+@dataclass
+class Course:
+    """A vessel followed along something: the dosing path, the mixing ratios of the contact zone, or a wait.
+
+    Lanes run over ranges first, points second: lane ``r * points + p``. ``fractions`` is ``[points]``.
+    """
+
+    mixture: Mixture
+    unreacted: Mixture
+    firings: list[Firing]
+    fractions: Array
+    heat_kJ: Array  # set free, [lanes]
+    reached_C: Array  # without loss, [lanes]
+    unknown_heat: tuple[str, ...] = ()
+
+    @property
+    def points(self) -> int:
+        return len(self.fractions)
+
+    @property
+    def ranges(self) -> int:
+        return self.mixture.lanes // self.points
+
+    def table(self, values: Array) -> Array:
+        """``[lanes]`` as ``[ranges, points]``."""
+        return np.asarray(values).reshape(self.ranges, self.points)
+
+    def last(self) -> NDArray[np.intp]:
+        """The lanes of the last point."""
+        return np.arange(self.ranges) * self.points + self.points - 1
+
+
+@dataclass
+class StepTrace:
+    """One step of a plan as walked."""
+
+    number: int
+    action: str
+    vessel: str
+    before: Mixture | None  # [ranges]; None for an empty vessel
+    added: Mixture | None  # [ranges]; None where nothing is added
+    added_label: str
+    path: Course | None
+    contact: Course | None
+    storage: Course | None
+    after: Mixture  # [ranges]
+    surroundings: Surroundings
+    cover: str
+    capacity_L: Array  # of the vessel, [ranges]
+    rating_kPa: Array | None
+    duration_s: Array | None
+    notes: list[str] = field(default_factory=list)
+    sludge: Mixture | None = None  # a filter's cake

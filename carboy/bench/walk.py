@@ -1,0 +1,427 @@
+"""Walks a plan step by step and yields what each step did."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from carboy.bench.follow import along, at_contact, stored
+from carboy.bench.make_up import Bench, MadeUp
+from carboy.bench.ranges import Ranges
+from carboy.bench.trace import Course, StepTrace
+from carboy.chemistry.mixture import (
+    ATMOSPHERE_KPA,
+    GAS_CONSTANT_KPA,
+    TRACE,
+    Array,
+    Mixture,
+    empty,
+    poured_together,
+    water_vapour_kPa,
+)
+from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
+from carboy.errors import InputError
+from carboy.model.plan import Add, Case, Check, Cover, Filter, Portion, Rinse, Temper, Transfer, VesselSpec, Wait
+from carboy.reasoning.binding import Surroundings
+from carboy.reasoning.equation import HYDROXIDE
+from carboy.reasoning.firing import Firing, Reactor
+from carboy.reasoning.record import Record
+
+_HOUR = 3600.0
+_DAY = 24 * _HOUR
+_LIQUID_IN_CAKE = 2.0  # mL of liquid kept per g of moist solid by a drained filter cake; common practice
+_DEFAULT_ROOM = 2.0  # a vessel that is not described holds twice the final volume
+
+
+@dataclass
+class VesselState:
+    """A vessel on the bench."""
+
+    spec: VesselSpec
+    content: Mixture
+    capacity_L: Array
+    rating_kPa: Array | None
+    cover: str
+    air_mol: Array | None = None
+    pours: dict[str, frozenset[int]] = field(default_factory=dict)
+    earlier: dict[str, frozenset[str]] = field(default_factory=dict)
+    labels: list[str] = field(default_factory=list)
+
+    @property
+    def filled(self) -> bool:
+        return bool(self.content.amounts)
+
+
+@dataclass
+class Walk:
+    """A plan as walked: the steps, the record of causes, and what was assumed, asked and not recognised."""
+
+    case: Case
+    ranges: Ranges
+    record: Record
+    steps: list[StepTrace] = field(default_factory=list)
+    vessels: dict[str, VesselState] = field(default_factory=dict)
+    assumptions: list[str] = field(default_factory=list)
+    questions: list[str] = field(default_factory=list)
+    unrecognised: list[str] = field(default_factory=list)
+
+
+class Walker:
+    """Walks cases over one stock of chemistry and one book of rules."""
+
+    def __init__(self, stock: ChemicalStock, reactor: Reactor, progress: Callable[[int, int], None] | None = None) -> None:
+        self.stock = stock
+        self.reactor = reactor
+        self.progress = progress
+
+    def walk(self, case: Case) -> Walk:
+        """Every step in order. Raises InputError where a step cannot be carried out (an empty vessel, more than there is)."""
+        ranges = Ranges()
+        self._make_all(case, Bench(self.stock, ranges))
+        ranges.fix()
+        bench = Bench(self.stock, ranges)
+        made = self._make_all(case, bench)
+        walk = Walk(case, ranges, Record())
+        for portion in made.values():
+            walk.assumptions += portion.assumptions
+            walk.questions += portion.questions
+            walk.unrecognised += portion.unrecognised
+        self._lay_out(case, walk, made)
+        for number, step in enumerate(case.steps, start=1):
+            if self.progress is not None:
+                self.progress(number, len(case.steps))
+            self._step(number, step, walk, made)
+        for name in ("assumptions", "questions", "unrecognised"):
+            setattr(walk, name, list(dict.fromkeys(getattr(walk, name))))
+        return walk
+
+    # --- preparation -------------------------------------------------------------------------------------------
+
+    def _make_all(self, case: Case, bench: Bench) -> dict[str, MadeUp]:
+        temperature = 0.5 * (case.setting.temperature.low + case.setting.temperature.high)
+        made = {f"bottle {name}": bench.make_up(portion, name, temperature) for name, portion in case.bottles.items()}
+        for number, step in enumerate(case.steps, start=1):
+            portion = step.portion if isinstance(step, Add | Rinse) else None
+            if portion is not None:
+                made[f"step {number}"] = bench.make_up(portion, f"step {number}", temperature)
+            if isinstance(step, Add) and step.part is not None:
+                bench.ranges.draw(f"part taken in step {number}", step.part.low, step.part.high)
+        for vessel in case.vessels:
+            for place, portion in enumerate(vessel.holds):
+                made[f"vessel {vessel.name} {place}"] = bench.make_up(portion, vessel.name, temperature)
+        return made
+
+    def _lay_out(self, case: Case, walk: Walk, made: dict[str, MadeUp]) -> None:
+        lanes = walk.ranges.lanes
+        specs = list(case.vessels) or [VesselSpec(name="vessel")]
+        volume = sum((portion.mixture.volume_L for portion in made.values()), np.zeros(lanes))
+        for spec in specs:
+            self._new_vessel(spec, walk, lanes, _DEFAULT_ROOM * volume)
+            if spec.volume is None:
+                walk.assumptions.append(
+                    f"{spec.name.capitalize()}: no size is given; {_DEFAULT_ROOM * float(volume[0]):.3g} L, twice the final volume, is taken."
+                )
+            for place, portion in enumerate(spec.holds):
+                state = walk.vessels[spec.name]
+                self._join(state, made[f"vessel {spec.name} {place}"].mixture, walk, 0, portion, made[f"vessel {spec.name} {place}"])
+        walk.assumptions.append("The chemistry is that of 25 degC; heat is judged without loss to the vessel or the air.")
+
+    def _new_vessel(self, spec: VesselSpec, walk: Walk, lanes: int, fallback_L: Array) -> VesselState:
+        temperature = 0.5 * (walk.case.setting.temperature.low + walk.case.setting.temperature.high)
+        capacity = (
+            np.maximum(fallback_L, 1e-6)
+            if spec.volume is None
+            else walk.ranges.draw(f"volume of {spec.name}", spec.volume.low, spec.volume.low)
+        )
+        rating = None if spec.rating is None else np.full(lanes, spec.rating.low)
+        state = VesselState(spec, empty(self.stock, lanes, temperature), capacity, rating, spec.cover)
+        walk.vessels[spec.name] = state
+        return state
+
+    # --- steps -------------------------------------------------------------------------------------------------
+
+    def _step(self, number: int, step, walk: Walk, made: dict[str, MadeUp]) -> None:  # type: ignore[no-untyped-def]
+        match step:
+            case Add():
+                self._add(number, step, walk, made)
+            case Rinse():
+                state = self._vessel(step.vessel, walk)
+                self._pour(number, f"rinse with {step.portion.text}", state, made[f"step {number}"].mixture, step.portion.text, None, walk, step.portion, made[f"step {number}"])
+            case Transfer():
+                self._transfer(number, step, walk)
+            case Filter():
+                self._filter(number, step, walk)
+            case Temper():
+                state = self._vessel(step.vessel, walk)
+                state.content = state.content.take(np.arange(state.content.lanes))
+                state.content.temperature_C = np.full(state.content.lanes, 0.5 * (step.to.low + step.to.high))
+                self._stand(number, f"{step.kind} to {step.to.high:g} degC", state, "minutes", None, walk)
+            case Wait():
+                self._wait(number, step, walk)
+            case Cover():
+                self._cover(number, step, walk)
+            case Check():
+                state = self._vessel(step.vessel, walk)
+                self._note(number, f"check {step.text or step.quantity}", state, walk)
+
+    def _vessel(self, name: str, walk: Walk) -> VesselState:
+        if not name:
+            return next(iter(walk.vessels.values()))
+        state = walk.vessels.get(name)
+        if state is None:
+            raise InputError(f"there is no vessel '{name}' at this step", suggestions=tuple(walk.vessels))
+        return state
+
+    def _add(self, number: int, step: Add, walk: Walk, made: dict[str, MadeUp]) -> None:
+        state = self._vessel(step.to, walk)
+        if step.portion is not None:
+            portion = made[f"step {number}"]
+            self._pour(number, f"add {step.portion.text}", state, portion.mixture, step.portion.text, step.over, walk, step.portion, portion)
+        elif f"bottle {step.source}" in made:
+            portion = made[f"bottle {step.source}"]
+            content = portion.mixture
+            label = walk.case.bottles[step.source]
+            if step.part is not None:
+                content = content.scaled(self._share(number, step, content, walk))
+            words = f"{step.source}: {label.text}"
+            self._pour(number, f"add {words}", state, content, words, step.over, walk, label, portion)
+        else:
+            self._transfer(number, Transfer(vessel=step.source, to=step.to or state.spec.name, part=step.part, over=step.over), walk)
+
+    def _share(self, number: int, step: Add, content: Mixture, walk: Walk) -> Array:
+        assert step.part is not None
+        wanted = walk.ranges.draw(f"part taken in step {number}", step.part.low, step.part.high)
+        whole = content.volume_L if step.part_unit == "L" else content.mass_g
+        share = np.divide(wanted, whole, out=np.ones_like(wanted), where=whole > 0)
+        if float(share[0]) > 1.0 + 1e-6:
+            raise InputError(f"step {number} takes more from '{step.source}' than the {float(whole[0]):.3g} {step.part_unit} that it holds")
+        return np.minimum(share, 1.0)
+
+    def _surroundings(self, state: VesselState, pour: int | None) -> Surroundings:
+        material = self.stock.index.containers.get(state.spec.material)
+        words = frozenset({state.spec.material, *((material.name.lower(), *(word.lower() for word in material.synonyms)) if material else ())})
+        return Surroundings(state.cover, state.spec.material, words, dict(state.pours), pour, dict(state.earlier))
+
+    def _join(
+        self, state: VesselState, content: Mixture, walk: Walk, number: int, portion: Portion | None, made: MadeUp | None
+    ) -> None:
+        """Note where things come from before they are poured."""
+        for token in (*content.amounts, *content.labelled):
+            state.pours[token] = state.pours.get(token, frozenset()) | {number}
+        if made is not None and portion is not None:
+            for identity, equation, tokens in made.parts:
+                walk.record.poured(
+                    state.spec.name,
+                    portion.text if len(made.parts) == 1 else f"{self.stock.index.substances[identity].name} in {portion.text}",
+                    equation,
+                    _brought(tokens),
+                    number,
+                )
+            state.labels.append(portion.text)
+        if number == 0:
+            state.content = poured_together(state.content, content) if state.filled else content
+
+    def _pour(  # noqa: PLR0913
+        self, number: int, action: str, state: VesselState, added: Mixture, label: str, over, walk: Walk, portion: Portion | None, made: MadeUp | None
+    ) -> None:  # type: ignore[no-untyped-def]
+        before = state.content if state.filled else None
+        self._join(state, added, walk, number, portion, made)
+        surroundings = self._surroundings(state, number)
+        sealed = state.cover == "sealed"
+        path: Course | None = None
+        contact: Course | None = None
+        if before is None:
+            after, firings = self.reactor.run(added.take(np.arange(added.lanes)), self._surroundings(state, None))
+            self._record(firings, state, number, walk)
+        else:
+            if sealed and state.air_mol is None:
+                state.air_mol = self._air(state, before)
+            path = along(
+                before, added, self.reactor, surroundings, capacity_L=state.capacity_L if sealed else None, air_mol=state.air_mol
+            )
+            contact = at_contact(before, added, self.reactor, surroundings, self.stock.index.thresholds)
+            after = path.mixture.take(path.last())
+            after.temperature_C = np.minimum(path.reached_C[path.last()], 100.0)
+            self._record(path.firings, state, number, walk)
+        over_capacity = after.volume_L > state.capacity_L * (1 + 1e-6)
+        duration = None if over is None else np.full(after.lanes, 0.5 * (over.low + over.high))
+        trace = StepTrace(
+            number, action, state.spec.name, before, added, label, path, contact, None, after, surroundings, state.cover,
+            state.capacity_L, state.rating_kPa, duration,
+        )
+        if over_capacity.any():
+            trace.notes.append(f"{state.spec.name} overflows: {float(after.volume_L.max()):.3g} L in {float(state.capacity_L[0]):.3g} L")
+        self._settle(state, after, walk, trace)
+
+    def _record(self, firings: list[Firing], state: VesselState, number: int, walk: Walk) -> None:
+        for firing in firings:
+            most = float(firing.extent.max())
+            consumed: dict[str, float] = {}
+            for token, count in firing.reaction.reactants:
+                for component, inner in self.stock.components_of(token).items():
+                    if component != WATER and inner > 0:
+                        consumed[component] = consumed.get(component, 0.0) + count * inner * most
+            made: dict[str, float] = {}
+            for token, count in firing.reaction.products:
+                for component, inner in self.stock.components_of(token).items():
+                    if component not in (WATER, PROTON) and inner > 0:
+                        made[component] = made.get(component, 0.0) + count * inner * most
+            walk.record.fired(
+                state.spec.name, firing.rule.id, firing.reaction.equation, consumed, made, number,
+                shown=(tuple(token for token, _ in firing.reaction.reactants), tuple(token for token, _ in firing.reaction.products)),
+            )
+
+    def _settle(self, state: VesselState, after: Mixture, walk: Walk, trace: StepTrace) -> None:
+        """End of a step: what bubbled out of an open vessel is gone; remember what was here."""
+        trace.after = after
+        walk.steps.append(trace)
+        content = after
+        if state.cover != "sealed" and after.gases:
+            amounts = dict(after.amounts)
+            for token, left in after.gases.items():
+                if np.any(left > TRACE):
+                    for component, count in self.stock.components_of(token).items():
+                        amounts[component] = amounts.get(component, after.zeros()) - count * left
+            amounts = {token: value if token == PROTON else np.maximum(value, 0.0) for token, value in amounts.items()}
+            content = after.with_amounts(amounts)
+        content = content.take(np.arange(content.lanes))
+        if after.water_fraction.max() > 0:
+            content.neat = {}
+        state.content = content
+        for token in (*content.amounts, *after.solids, *content.labelled):
+            state.earlier[token] = self.stock.classes.get(token, frozenset())
+        if not np.all(after.converged):
+            trace.notes.append("The equilibrium of this step did not converge over the whole of the stated ranges.")
+
+    def _air(self, state: VesselState, content: Mixture) -> Array:
+        room = np.maximum(state.capacity_L - content.volume_L, 0.0)
+        kelvin = content.temperature_C + 273.15
+        return (ATMOSPHERE_KPA - water_vapour_kPa(content.temperature_C)) * room / (GAS_CONSTANT_KPA * kelvin)
+
+    def _stand(self, number: int, action: str, state: VesselState, slowest: str, duration: Array | None, walk: Walk) -> None:
+        surroundings = self._surroundings(state, None)
+        before = state.content
+        course = stored(before, self.reactor, surroundings, slowest) if state.filled else None
+        if course is not None:
+            self._record(course.firings, state, number, walk)
+        after = before if course is None else course.mixture
+        trace = StepTrace(
+            number, action, state.spec.name, before if state.filled else None, None, "", None, None, course, after, surroundings, state.cover,
+            state.capacity_L, state.rating_kPa, duration,
+        )
+        self._settle(state, after, walk, trace)
+
+    def _note(self, number: int, action: str, state: VesselState, walk: Walk) -> None:
+        surroundings = self._surroundings(state, None)
+        before = state.content if state.filled else None
+        walk.steps.append(
+            StepTrace(number, action, state.spec.name, before, None, "", None, None, None, state.content, surroundings, state.cover,
+                      state.capacity_L, state.rating_kPa, None)
+        )
+
+    def _wait(self, number: int, step: Wait, walk: Walk) -> None:
+        state = self._vessel(step.vessel, walk)
+        seconds = None if step.duration is None else step.duration.high
+        slowest = "minutes" if step.kind == "stir" or seconds is None or seconds < 0.5 * _HOUR else "hours" if seconds < 0.5 * _DAY else "days"
+        words = step.kind if seconds is None else f"{step.kind} {_time_words(seconds)}"
+        self._stand(number, words, state, slowest, None if seconds is None else np.full(walk.ranges.lanes, seconds), walk)
+
+    def _cover(self, number: int, step: Cover, walk: Walk) -> None:
+        state = self._vessel(step.vessel, walk)
+        if step.kind == "seal":
+            state.cover = "sealed"
+            state.air_mol = self._air(state, state.content)
+            state.content = state.content.take(np.arange(state.content.lanes))
+            state.content.headspace_L = np.maximum(state.capacity_L - state.content.volume_L, 1e-3)
+            state.content.air_mol = state.air_mol
+            self._stand(number, f"seal {state.spec.name}", state, "days", None, walk)
+        else:
+            state.cover = "open" if step.kind == "open" else "vented"
+            state.air_mol = None
+            state.content = state.content.take(np.arange(state.content.lanes))
+            state.content.headspace_L = None
+            state.content.air_mol = None
+            self._stand(number, f"{step.kind} {state.spec.name}", state, "minutes", None, walk)
+
+    def _transfer(self, number: int, step: Transfer, walk: Walk) -> None:
+        source = self._vessel(step.vessel, walk)
+        if not source.filled:
+            raise InputError(f"step {number}: vessel '{step.vessel}' is empty")
+        target = walk.vessels.get(step.to) or self._new_vessel(VesselSpec(name=step.to), walk, walk.ranges.lanes, source.capacity_L)
+        whole = source.content.volume_L
+        share = np.ones_like(whole)
+        if step.part is not None:
+            share = np.minimum(0.5 * (step.part.low + step.part.high) / np.maximum(whole, 1e-9), 1.0)
+        elif step.heel is not None:
+            share = np.clip(1.0 - step.heel.high / np.maximum(whole, 1e-9), 0.0, 1.0)
+        moved = source.content.scaled(share)
+        source.content = source.content.scaled(1.0 - share)
+        walk.record.moved(source.spec.name, target.spec.name, tuple(moved.amounts))
+        target.earlier.update(source.earlier)
+        self._pour(number, f"transfer {source.spec.name} to {target.spec.name}", target, moved, source.spec.name, step.over, walk, None, None)
+
+    def _filter(self, number: int, step: Filter, walk: Walk) -> None:
+        state = self._vessel(step.vessel, walk)
+        if not state.filled:
+            raise InputError(f"step {number}: vessel '{step.vessel}' is empty")
+        content = state.content
+        solid_amounts: dict[str, Array] = {}
+        grams = content.zeros()
+        for token, amount in content.solids.items():
+            grams = grams + amount * self.stock.molar_mass(token)
+            for component, count in self.stock.components_of(token).items():
+                solid_amounts[component] = solid_amounts.get(component, content.zeros()) + count * amount
+        for token, amount in content.aside.items():
+            if self.stock.species(token).phase == "s":
+                grams = grams + amount * self.stock.molar_mass(token)
+                solid_amounts[token] = amount
+        passes = 0.0 if step.passes is None else step.passes.high
+        retained_mL = (_LIQUID_IN_CAKE if step.retained is None else step.retained) * grams
+        kept = np.clip(retained_mL / 1000 / np.maximum(content.volume_L, 1e-9), 0.0, 0.5)
+        liquid = {token: amount - solid_amounts.get(token, 0.0) for token, amount in content.amounts.items()}
+        liquid = {token: value if token == PROTON else np.maximum(value, 0.0) for token, value in liquid.items()}
+        stays = {token: value * (1 - kept) + passes * solid_amounts.get(token, 0.0) for token, value in liquid.items()}
+        cake = {token: value * kept + (1 - passes) * solid_amounts.get(token, 0.0) for token, value in liquid.items()}
+        filtrate_name = step.filtrate or f"{state.spec.name} filtrate"
+        cake_name = step.cake or f"{state.spec.name} cake"
+        spec = walk.vessels.get(filtrate_name)
+        jug = spec or self._new_vessel(VesselSpec(name=filtrate_name), walk, walk.ranges.lanes, state.capacity_L)
+        holder = walk.vessels.get(cake_name) or self._new_vessel(VesselSpec(name=cake_name), walk, walk.ranges.lanes, state.capacity_L)
+        clear = self._part(content, stays, content.volume_L * (1 - kept), np.maximum(content.mass_g - grams, 0.0) * (1 - kept), 1 - kept)
+        sludge = self._part(content, cake, np.maximum(content.volume_L * kept, grams / 2000), grams + np.maximum(content.mass_g - grams, 0.0) * kept, kept)
+        for target, part in ((jug, clear), (holder, sludge)):
+            target.content = part if not target.filled else poured_together(target.content, part)
+            target.pours = {token: frozenset({number}) for token in part.amounts}
+            walk.record.moved(state.spec.name, target.spec.name, tuple(part.amounts))
+        jug.earlier = {token: self.stock.classes.get(token, frozenset()) for token in (*clear.amounts, *clear.solids)}
+        holder.earlier = dict(state.earlier)
+        state.content = empty(self.stock, content.lanes, float(content.temperature_C[0]))
+        state.pours, state.earlier, state.labels = {}, {}, []
+        surroundings = self._surroundings(jug, None)
+        walk.steps.append(
+            StepTrace(number, f"{step.kind} {step.vessel} into {filtrate_name}", filtrate_name, None, None, "", None, None, None, jug.content, surroundings,
+                      jug.cover, jug.capacity_L, jug.rating_kPa, None, sludge=holder.content)
+        )
+
+    def _part(self, content: Mixture, amounts: dict[str, Array], volume: Array, mass: Array, share: Array) -> Mixture:
+        return Mixture(
+            self.stock, amounts, {name: value * share for name, value in content.labelled.items()}, volume, mass, content.temperature_C.copy(),
+            network_temperature_C=content.network_temperature_C,
+        )
+
+
+def _brought(tokens: dict[str, float]) -> dict[str, float]:
+    """What a labelled substance brings, with protons that it takes away told as hydroxide that it brings."""
+    brought = {token: count for token, count in tokens.items() if token != WATER and count > 0}
+    if tokens.get(PROTON, 0.0) < 0:
+        brought[HYDROXIDE] = -tokens[PROTON]
+    return brought
+
+
+def _time_words(seconds: float) -> str:
+    for size, unit in ((_DAY, "d"), (_HOUR, "h"), (60.0, "min")):
+        if seconds >= size:
+            return f"{seconds / size:g} {unit}"
+    return f"{seconds:g} s"

@@ -1,0 +1,1 @@
+"""Aqueous chemistry in numbers: equilibrium, activity, gases."""

@@ -1,0 +1,237 @@
+"""Equilibrium of many vessels at once: what is dissolved, what comes down, what bubbles off."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from carboy.chemistry.activity import TRUSTED_IONIC_STRENGTH
+from carboy.chemistry.iteration import (
+    BALANCE,
+    SUPERSATURATION,
+    Pace,
+    finish,
+    first_state,
+    interior_point,
+    residuals,
+    rough_solids,
+    rough_start,
+)
+from carboy.chemistry.mass_action import (
+    LN10,
+    BoolArray,
+    Constraints,
+    IntArray,
+    Medium,
+    Terms,
+    Vessel,
+    ln_pressures,
+    ln_saturation,
+    make_lanes,
+    term_amounts,
+)
+from carboy.chemistry.network import FloatArray, Network
+
+
+@dataclass(eq=False)
+class Solved:
+    """The outcome of :func:`solve` for L lanes. Where ``converged`` is false the numbers are the last iterate and
+    mean nothing.
+    """
+
+    network: Network
+    amounts: FloatArray  # [L, S] mol dissolved
+    solids: FloatArray  # [L, M] mol
+    gas: FloatArray  # [L, G] mol bubbled off (open) or in the headspace (sealed)
+    pressures: FloatArray  # [L, G] atm in equilibrium with the liquid, whether it bubbles or not
+    pH: FloatArray  # [L] -log10 activity of H+
+    ionic_strength: FloatArray  # [L] mol/kg
+    water_kg: FloatArray  # [L]
+    log_activity: FloatArray  # [L, C] log10; -inf where the component is absent
+    saturation: FloatArray  # [L, M] log10 of the saturation ratio; -inf where a component is absent
+    bubbling: BoolArray  # [L]
+    converged: BoolArray  # [L]
+    reasons: list[str]  # "" where converged
+    iterations: IntArray  # [L]
+    outside_activity_range: BoolArray  # [L] ionic strength or dryness beyond the activity model
+
+
+def solve(  # noqa: PLR0913
+    network: Network,
+    totals: FloatArray,
+    water_mol: FloatArray,
+    *,
+    headspace_L: FloatArray | None = None,
+    ambient_atm: float = 1.0,
+    start: Solved | None = None,
+    retain_gas: bool = False,
+) -> Solved:
+    """Equilibrium of each lane.
+
+    ``totals`` [L, C] are mol of each component, the column of H+ being the proton excess (negative in base);
+    ``water_mol`` [L] is the total of the component H2O in mol. ``headspace_L`` None is an open vessel: gas bubbles
+    off where the sum of the partial pressures and that of water would exceed ``ambient_atm``, and then that sum
+    equals it. With ``headspace_L`` [L] the vessel is sealed and each gas fills the headspace by the gas law.
+    ``retain_gas`` allows no gas phase. Water vapour takes no water from the liquid. ``start``, a solution of the same
+    network for as many lanes or for one, speeds up a nearby problem.
+
+    There is a floor under the water (1 kg per 50 mol of components); lanes on it are marked
+    ``outside_activity_range`` and their water is not conserved. Raises ValueError for shapes that do not fit and for
+    a negative total other than that of H+.
+    """
+    totals = np.atleast_2d(np.asarray(totals, dtype=float))
+    water_mol = np.broadcast_to(np.asarray(water_mol, dtype=float), totals.shape[:1]).copy()
+    if headspace_L is not None:
+        headspace_L = np.broadcast_to(np.asarray(headspace_L, dtype=float), totals.shape[:1]).copy()
+    vessel = Vessel(None if retain_gas else headspace_L, ambient_atm, retain_gas)
+    _check(network, totals, water_mol, headspace_L, ambient_atm)
+    # Overflow and the like are judged by the outcome: a lane that is not finite does not converge.
+    with np.errstate(all="ignore"):
+        solution = _Solution(network, totals, water_mol, vessel)
+        if start is not None and start.network is network:
+            solution.from_neighbour(start)
+        for pace in _PACES:
+            left = np.flatnonzero(~solution.ended)
+            if left.size == 0:
+                break
+            solution.attempt(left, pace)
+        return solution.outcome()
+
+
+# Tried in turn on the lanes that are left: more rough passes, shorter steps, stronger damping, other starts.
+_PACES = (
+    Pace(passes=20, rounds=12, turns=50, rate=0.8, longest=8.0),
+    Pace(passes=100, rounds=0, turns=120, rate=0.3, longest=3.0),
+    Pace(passes=200, rounds=0, turns=250, rate=0.2, longest=1.5, shift=-10.0),
+    Pace(passes=400, rounds=30, turns=400, rate=0.1, longest=1.0, shift=9.0),
+)
+
+
+class _Solution:
+    """The lanes of one call on their way to the outcome."""
+
+    def __init__(self, network: Network, totals: FloatArray, water_mol: FloatArray, vessel: Vessel) -> None:
+        self.network = network
+        self.sealed = vessel.headspace_L is not None
+        self.terms = Terms.of(network, self.sealed)
+        self.lanes, self.scale = make_lanes(network, totals, water_mol, vessel)
+        count = totals.shape[0]
+        self.state = first_state(self.lanes)
+        self.ended = np.zeros(count, dtype=bool)
+        self.iterations = np.zeros(count, dtype=np.intp)
+
+    def attempt(self, which: IntArray, pace: Pace) -> None:
+        """All three stages for some lanes."""
+        lanes = self.lanes.take(which)
+        state = first_state(lanes)
+        state.x[:, 0] += pace.shift
+        rough_start(self.terms, lanes, state, pace.passes)
+        rough_solids(self.terms, lanes, state, pace.rounds)
+        self.iterations[which] += interior_point(self.terms, lanes, state, pace)
+        medium = Medium.at(self.terms, state.strength, state.molality)
+        excess = Constraints.at(self.terms, lanes, state, medium).excess
+        # Of a phase and its undersaturation the larger, each in its own measure, says whether it is there.
+        present = lanes.allowed & (state.phases / lanes.most > np.maximum(-excess, 0.0))
+        ended, turns = finish(self.terms, lanes, state, present)
+        self.iterations[which] += turns
+        self.ended[which] = ended
+        self.state.put(which, state)
+
+    def from_neighbour(self, start: Solved) -> None:
+        """Finish from a solution nearby; lanes for which that fails are left to the full way."""
+        count = self.lanes.number.size
+        if count == 0 or start.converged.size not in (1, count):
+            return
+        pick = np.zeros(count, dtype=np.intp) if start.converged.size == 1 else np.arange(count)
+        same = ((start.log_activity[pick] == -np.inf) == self.lanes.absent).all(axis=1) & start.converged[pick]
+        which = np.flatnonzero(same)
+        if which.size == 0:
+            return
+        lanes, pick = self.lanes.take(which), pick[which]
+        state = first_state(lanes)
+        state.x = LN10 * np.where(lanes.absent, 0.0, start.log_activity[pick])
+        state.strength = start.ionic_strength[pick].copy()
+        state.molality = start.amounts[pick].sum(axis=1) / start.water_kg[pick]
+        bubbled = np.where(start.bubbling[pick], start.gas[pick].sum(axis=1), 0.0)
+        phases = np.column_stack([start.solids[pick], bubbled]) / self.scale[which, None]
+        state.phases = np.where(lanes.allowed, phases, 0.0)
+        ended, turns = finish(self.terms, lanes, state, state.phases > 0.0, most_turns=25)
+        self.iterations[which] += turns
+        self.ended[which] = ended
+        self.state.put(which, state)
+
+    def outcome(self) -> Solved:
+        """The answer in the caller's units, judged afresh by its residuals."""
+        network, terms, lanes, state = self.network, self.terms, self.lanes, self.state
+        scale = self.scale[:, None]
+        species, solids = len(network.species), len(network.solids)
+        medium = Medium.at(terms, state.strength, state.molality)
+        amounts = term_amounts(terms, lanes, state, medium) * scale
+        relative, excess, medium_error, left_kg = residuals(terms, lanes, state)
+        phases = np.maximum(state.phases, 0.0)
+        pressures = np.exp(ln_pressures(terms, lanes, state, medium))
+        if self.sealed:
+            gas = amounts[:, species:]
+        else:
+            total = np.maximum(pressures.sum(axis=1, keepdims=True), 1e-300)
+            gas = pressures / total * phases[:, solids:] * scale
+        balance = np.abs(relative).max(axis=1, initial=0.0)
+        over = np.where(lanes.allowed, excess, -1.0).max(axis=1)
+        held = lanes.allowed & (np.abs(state.phases) > 1e-9 * lanes.most)
+        under = np.where(held, np.where(state.phases < 0.0, np.inf, -excess), -1.0).max(axis=1)
+        reasons = [
+            _reason(*(float(part[lane]) for part in (balance, over, under, medium_error)))
+            for lane in range(lanes.number.size)
+        ]
+        on_floor = left_kg < lanes.least_water * (1.0 + 1e-9)
+        return Solved(
+            network=network,
+            amounts=amounts[:, :species],
+            solids=phases[:, :solids] * scale,
+            gas=gas,
+            pressures=pressures,
+            pH=-state.x[:, 0] / LN10,
+            ionic_strength=state.strength,
+            water_kg=np.exp(state.ln_water) * self.scale,
+            log_activity=np.where(lanes.absent, -np.inf, state.x / LN10),
+            saturation=np.where(lanes.allowed[:, :solids], ln_saturation(terms, lanes, state, medium) / LN10, -np.inf),
+            bubbling=phases[:, solids] > 0.0,
+            converged=np.array([reason == "" for reason in reasons], dtype=bool),
+            reasons=reasons,
+            iterations=self.iterations,
+            outside_activity_range=(state.strength > TRUSTED_IONIC_STRENGTH) | on_floor,
+        )
+
+
+def _check(
+    network: Network, totals: FloatArray, water_mol: FloatArray, headspace_L: FloatArray | None, ambient_atm: float
+) -> None:
+    if totals.ndim != 2 or totals.shape[1] != len(network.components):
+        raise ValueError(f"totals must have {len(network.components)} columns, one per component")
+    if not (np.isfinite(totals).all() and np.isfinite(water_mol).all()):
+        raise ValueError("totals and water must be finite numbers")
+    if (water_mol < 0.0).any():
+        raise ValueError("the amount of water must not be negative")
+    if (totals[:, 1:] < 0.0).any():
+        column = 1 + int(np.argmax((totals[:, 1:] < 0.0).any(axis=0)))
+        raise ValueError(f"the total of {network.components[column]} must not be negative")
+    if headspace_L is not None and not ((headspace_L >= 0.0) & np.isfinite(headspace_L)).all():
+        raise ValueError("the headspace must be a volume of zero or more")
+    if not ambient_atm > 0.0:
+        raise ValueError("the ambient pressure must be above zero")
+
+
+def _reason(balance: float, over: float, under: float, medium_error: float) -> str:
+    """Why a lane is not a solution, or nothing."""
+    if not np.isfinite(balance + over + medium_error):
+        return "the iteration went beyond the range of numbers"
+    if balance > BALANCE:
+        return f"a mass balance is open by {balance:.1e} of its terms"
+    if over > SUPERSATURATION:
+        return f"a solid or gas remains above saturation (log ratio {over / LN10:.1e})"
+    if under > SUPERSATURATION:
+        return "a solid or gas is held that would go back into solution"
+    if medium_error > 1e-7:
+        return f"the activity coefficients did not settle ({medium_error:.1e})"
+    return ""

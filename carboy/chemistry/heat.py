@@ -1,0 +1,114 @@
+"""Heat of mixing, dissolving, neutralising and reacting, and the temperature it leads to without loss.
+
+Enthalpies are kept relative to the components in water at infinite dilution, so that a component whose enthalpy of formation is unknown
+cancels as long as it stays a component. Method: Hess's law; dilution by the apparent molar enthalpies of the graph (Parker 1965 and the
+tables named there).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from carboy.chemistry.mixture import Array, Mixture
+from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
+from carboy.model.knowledge import Enthalpy
+
+WATER_HEAT_CAPACITY = 4.18  # kJ/(kg K), CRC Handbook (from memory)
+SOLUTE_HEAT_CAPACITY = 1.0  # kJ/(kg K) for dissolved salts and solids; common practice
+LIQUID_HEAT_CAPACITY = 2.0  # kJ/(kg K) for organic liquids; common practice
+
+
+@dataclass(frozen=True)
+class HeatBook:
+    """Enthalpies of one stock, ready for mixtures."""
+
+    stock: ChemicalStock
+
+    def of_speciation(self, mixture: Mixture) -> Array:
+        """kJ ``[L]`` of the mixture's species against its components at infinite dilution: acid/base steps, complexes, solids, gases, and
+        what concentrated acids and bases still have to give on dilution. Constants without an enthalpy count as athermal."""
+        total = mixture.zeros()
+        for group in (mixture.aqueous, mixture.solids, mixture.gases):
+            for token, amount in group.items():
+                made = self.stock.formation.get(token)
+                if made is not None and made.enthalpy_formation is not None:
+                    total = total + made.enthalpy_formation * amount
+        return total + self._undiluted(mixture)
+
+    def _undiluted(self, mixture: Mixture) -> Array:
+        """kJ held by electrolytes that are not yet dilute, beyond infinite dilution."""
+        water = mixture.total(WATER)
+        left = {token: mixture.total(token).copy() for token in mixture.amounts}
+        held: list[tuple[Enthalpy, Array]] = []
+        ions = mixture.zeros()
+        for table in self.stock.index.dilution:
+            n = self._share(table, left, mixture)
+            held.append((table, n))
+            ions = ions + n
+        total = mixture.zeros()
+        for table, n in held:
+            if np.any(n > 0):
+                ratio = np.divide(water, ions, out=np.zeros_like(water), where=ions > 0)
+                grid = sorted(table.points)
+                total = total + n * np.interp(ratio, [point[0] for point in grid], [point[1] for point in grid])
+        return total
+
+    def _share(self, table: Enthalpy, left: dict[str, Array], mixture: Mixture) -> Array:
+        """mol of an electrolyte that the ions left can make up; takes them out of ``left``."""
+        yields = self.stock.yield_of(table.electrolyte)
+        n: Array | None = None
+        for token, count in yields.items():
+            if token == WATER:
+                continue
+            have = left.get(token, mixture.zeros()) * np.sign(count)
+            n = np.maximum(have, 0.0) / abs(count) if n is None else np.minimum(n, np.maximum(have, 0.0) / abs(count))
+        if n is None:
+            return mixture.zeros()
+        for token, count in yields.items():
+            if token in left:
+                left[token] = left[token] - count * n
+        return n
+
+    def of_reaction(self, change: dict[str, float]) -> float | None:
+        """kJ per mol of extent of a reaction given as components gained; None where an enthalpy of formation is unknown."""
+        total = 0.0
+        for token, count in change.items():
+            formation = self._formation(token)
+            if formation is None:
+                return None
+            total += count * formation
+        return total
+
+    def _formation(self, token: str) -> float | None:
+        if token == PROTON:
+            return 0.0
+        record = self.stock.index.species.get(token)
+        if record is not None and record.formation is not None:
+            return record.formation.magnitude
+        substance = self.stock.index.substances.get(token)
+        if substance is not None and substance.formation is not None:
+            return substance.formation.magnitude
+        return None
+
+    def of_dissolving(self, substance_id: str, *, neat: bool) -> float | None:
+        """kJ per mol on dissolving a substance as bought to its components at infinite dilution (negative = warms); zero for one that is
+        in solution already or stands aside; None where unknown."""
+        substance = self.stock.index.substances[substance_id]
+        if not neat or not substance.yields:
+            return 0.0
+        if substance.formation is None:
+            return None
+        after = self.of_reaction(self.stock.yield_of(substance_id))
+        return None if after is None else after - substance.formation.magnitude
+
+    def heat_capacity(self, mixture: Mixture) -> Array:
+        """kJ/K of the content."""
+        water = mixture.water_kg
+        organic = mixture.zeros()
+        for token, amount in mixture.aside.items():
+            if self.stock.species(token).phase == "l":
+                organic = organic + amount * self.stock.molar_mass(token) / 1000
+        rest = np.maximum(mixture.mass_g / 1000 - water - organic, 0.0)
+        return water * WATER_HEAT_CAPACITY + organic * LIQUID_HEAT_CAPACITY + rest * SOLUTE_HEAT_CAPACITY

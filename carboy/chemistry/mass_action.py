@@ -1,0 +1,321 @@
+"""Mass action and balances of many lanes at once: the arrays on which the solver works.
+
+A lane is one vessel of its own. Everything is held per kilogram of the water that the lane began with, so that a drop
+and a drum are the same problem. In a sealed vessel the gases in the headspace (``p V / R T`` mol) are carried as
+further terms beside the aqueous species.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, fields, replace
+from typing import Self
+
+import numpy as np
+from numpy.typing import NDArray
+
+from carboy.chemistry import activity
+from carboy.chemistry.gases import GAS_CONSTANT, water_vapour_pressure
+from carboy.chemistry.network import ZERO_CELSIUS, FloatArray, Network
+
+BoolArray = NDArray[np.bool_]
+IntArray = NDArray[np.intp]
+
+LN10 = float(np.log(10.0))
+KG_PER_MOL_WATER = 0.01801528
+MOST_SOLUTE = 50.0  # mol of components per kg of water; below that much water the floor holds
+LEAST_WATER = 1e-9  # kg
+LEAST_GAS_SHARE = 0.02  # of ambient pressure that is left to gases when the water itself nears boiling
+ABSENT = -1e5  # ln of what is not there
+_CEILING = 60.0  # ln of the largest molality that is evaluated
+
+
+@dataclass(frozen=True, eq=False)
+class Terms:
+    """What all lanes share: J terms (aqueous species, then headspace gases) and M solids over C components."""
+
+    nu: FloatArray  # [J, C]
+    scaling: FloatArray  # [J, 4 C]: gains, losses as positive numbers, and both times the sum of |nu| of the term
+    sums: FloatArray  # [J, 2 C + 4]: nu, |nu|, z^2, neutral, water, aqueous
+    features: FloatArray  # [J, C + 4]: nu, z^2, neutral, water, aqueous
+    features_across: FloatArray  # [C + 4, J]
+    feature_pairs: FloatArray  # [J, (C + 4)^2]
+    nu_pairs: FloatArray  # [J, C^2]
+    solid_nu: FloatArray  # [M, C]
+    solid_water: FloatArray  # [M]
+    solid_pairs: FloatArray  # [M, C^2]
+    gas_nu: FloatArray  # [G, C]
+    gas_water: FloatArray  # [G]
+    gas_pairs: FloatArray  # [G, C^2]
+    slope: float  # A of the Davies equation
+
+    @property
+    def size(self) -> int:
+        return int(self.nu.shape[1])
+
+    @classmethod
+    def of(cls, network: Network, sealed: bool) -> Self:
+        """Cached on the network."""
+        cache = network.__dict__.setdefault("_terms", {})
+        if sealed not in cache:
+            cache[sealed] = cls._make(network, sealed)
+        made: Self = cache[sealed]
+        return made
+
+    @classmethod
+    def _make(cls, network: Network, sealed: bool) -> Self:
+        nu, water, charge = network.nu, network.nu_water, network.charge
+        aqueous = np.ones(len(network.species))
+        neutral = (charge == 0.0).astype(float)
+        if sealed:
+            none = np.zeros(len(network.gases))
+            nu = np.vstack([nu, network.gas_nu])
+            water = np.concatenate([water, network.gas_nu_water])
+            charge, aqueous, neutral = (np.concatenate([part, none]) for part in (charge, aqueous, neutral))
+        features = np.column_stack([nu, charge**2, neutral, water, aqueous])
+        positive, negative = np.maximum(nu, 0.0), np.maximum(-nu, 0.0)
+        total = np.abs(nu).sum(axis=1, keepdims=True)
+        weighted = positive * total, negative * total
+        return cls(
+            nu=nu,
+            scaling=np.hstack([positive, negative, *weighted]),
+            sums=np.hstack([nu, np.abs(nu), features[:, nu.shape[1] :]]),
+            features=features,
+            features_across=np.ascontiguousarray(features.T),
+            feature_pairs=_pairs(features),
+            nu_pairs=_pairs(nu),
+            solid_nu=network.solid_nu,
+            solid_water=network.solid_nu_water,
+            solid_pairs=_pairs(network.solid_nu),
+            gas_nu=network.gas_nu,
+            gas_water=network.gas_nu_water,
+            gas_pairs=_pairs(network.gas_nu),
+            slope=activity.debye_hueckel_slope(network.temperature_C),
+        )
+
+
+@dataclass(eq=False)
+class Lanes:
+    """What differs from lane to lane and does not change while solving. K = M + 1: the solids and the gas phase of
+    bubbles.
+    """
+
+    number: IntArray  # [L] lane of the caller
+    totals: FloatArray  # [L, C] mol per kg
+    water: FloatArray  # [L] mol H2O per kg of starting water
+    least_water: FloatArray  # [L] kg per kg
+    absent: BoolArray  # [L, C]
+    ln_beta: FloatArray  # [L, J]
+    solid_ln_beta: FloatArray  # [L, M]
+    gas_ln_beta: FloatArray  # [L, G]
+    ln_available: FloatArray  # [L] ln of the pressure (atm) that gases must reach to bubble
+    allowed: BoolArray  # [L, K] phases that can exist at all
+    most: FloatArray  # [L, K] the most that could form of each phase, mol per kg; 1 where it cannot
+
+    def take(self, which: IntArray | BoolArray) -> Lanes:
+        """These lanes only."""
+        return Lanes(**{part.name: getattr(self, part.name)[which] for part in fields(self)})
+
+
+@dataclass(eq=False)
+class State:
+    """Where the iteration stands."""
+
+    x: FloatArray  # [L, C] ln activity of the components
+    phases: FloatArray  # [L, K] mol of each solid and of the bubbled gas, per kg of starting water
+    strength: FloatArray  # [L] ionic strength, mol/kg
+    molality: FloatArray  # [L] sum of molalities, mol/kg
+    ln_water: FloatArray  # [L] ln of kg water per kg of starting water
+
+    def take(self, which: IntArray | BoolArray) -> State:
+        """A copy of these lanes."""
+        return State(**{part.name: getattr(self, part.name)[which].copy() for part in fields(self)})
+
+    def put(self, which: IntArray | BoolArray, other: State) -> None:
+        """Write ``other`` into these lanes."""
+        for part in fields(self):
+            getattr(self, part.name)[which] = getattr(other, part.name)
+
+    def copy(self) -> State:
+        """A copy."""
+        return replace(self, **{part.name: getattr(self, part.name).copy() for part in fields(self)})
+
+
+@dataclass(frozen=True, eq=False)
+class Vessel:
+    """What stands over the liquid."""
+
+    headspace_L: FloatArray | None  # [L]; None is open
+    ambient_atm: float
+    retain_gas: bool  # no gas phase at all
+
+
+def make_lanes(network: Network, totals: FloatArray, water_mol: FloatArray, vessel: Vessel) -> tuple[Lanes, FloatArray]:
+    """The lanes, and the kg of water by which each was divided, [L]."""
+    lanes = totals.shape[0]
+    solute = totals[:, 1:].sum(axis=1)
+    floor_kg = np.maximum(solute / MOST_SOLUTE, LEAST_WATER)
+    scale = np.maximum(water_mol * KG_PER_MOL_WATER, floor_kg)
+    scaled = totals / scale[:, None]
+    # A component of zero total is absent, unless something made from it could give it back (a negative coefficient).
+    rows = np.vstack([network.nu, network.solid_nu, network.gas_nu])
+    keep: BoolArray = np.asarray((rows < 0.0).any(axis=0))
+    keep[0] = True
+    absent = (totals == 0.0) & ~keep
+    gone = absent.astype(float)
+    missing = gone @ (network.nu != 0.0).T.astype(float) > 0.0
+    solid_missing = gone @ (network.solid_nu != 0.0).T.astype(float) > 0.0
+    gas_missing = gone @ (network.gas_nu != 0.0).T.astype(float) > 0.0
+    ln_beta = np.where(missing, ABSENT, LN10 * network.log_beta)
+    gas_ln_beta = np.where(gas_missing, ABSENT, LN10 * network.gas_log_beta)
+    if vessel.headspace_L is not None:
+        kelvin = network.temperature_C + ZERO_CELSIUS
+        per_atm = np.log(np.maximum(vessel.headspace_L, 1e-30) / (GAS_CONSTANT * kelvin) / scale)
+        ln_beta = np.concatenate([ln_beta, gas_ln_beta + per_atm[:, None]], axis=1)
+    open_gas = vessel.headspace_L is None and not vessel.retain_gas and len(network.gases) > 0
+    bubbles = (~gas_missing).any(axis=1) & open_gas
+    most_solid = _most(network.solid_nu, scaled)
+    most_gas = np.where(gas_missing, 0.0, _most(network.gas_nu, scaled)).sum(axis=1)
+    allowed = np.column_stack([~solid_missing, bubbles])
+    most = np.where(allowed, np.column_stack([most_solid, most_gas]), 1.0)
+    vapour = water_vapour_pressure(network.temperature_C)
+    available = max(vessel.ambient_atm - vapour, LEAST_GAS_SHARE * vessel.ambient_atm)
+    return (
+        Lanes(
+            number=np.arange(lanes),
+            totals=scaled,
+            water=water_mol / scale,
+            least_water=floor_kg / scale,
+            absent=absent,
+            ln_beta=ln_beta,
+            solid_ln_beta=np.where(solid_missing, ABSENT, LN10 * network.solid_log_beta),
+            gas_ln_beta=gas_ln_beta,
+            ln_available=np.full(lanes, np.log(available)),
+            allowed=allowed,
+            most=np.maximum(most, 1e-30),
+        ),
+        scale,
+    )
+
+
+def _most(nu: FloatArray, totals: FloatArray) -> FloatArray:
+    """[L, rows]: total over coefficient of the scarcest component other than H+."""
+    shares = np.full((totals.shape[0], nu.shape[0]), np.inf)
+    for column in range(1, nu.shape[1]):
+        rows = np.flatnonzero(nu[:, column] > 0.0)
+        shares[:, rows] = np.minimum(shares[:, rows], totals[:, column, None] / nu[rows, column])
+    return np.where(np.isfinite(shares), shares, 1.0)
+
+
+def matrix_vector(matrix: FloatArray, vector: FloatArray) -> FloatArray:
+    """Product of each lane's matrix [L, A, B] and vector [L, B]: [L, A]."""
+    return np.asarray((matrix @ vector[:, :, None])[:, :, 0])
+
+
+def vector_matrix(vector: FloatArray, matrix: FloatArray) -> FloatArray:
+    """Product of each lane's vector [L, A] and matrix [L, A, B]: [L, B]."""
+    return np.asarray((vector[:, None, :] @ matrix)[:, 0, :])
+
+
+def _pairs(rows: FloatArray) -> FloatArray:
+    return np.ascontiguousarray((rows[:, :, None] * rows[:, None, :]).reshape(rows.shape[0], rows.shape[1] ** 2))
+
+
+@dataclass(eq=False)
+class Medium:
+    """Activity corrections of each lane at its ionic strength and sum of molalities; all [L]."""
+
+    ion: FloatArray
+    ion_slope: FloatArray
+    neutral: FloatArray
+    neutral_slope: FloatArray
+    water: FloatArray
+    water_slope: FloatArray
+
+    @classmethod
+    def at(cls, terms: Terms, strength: FloatArray, molality: FloatArray) -> Self:
+        """Evaluated."""
+        return cls(
+            *activity.ln_gamma_unit_charge(strength, terms.slope),
+            *activity.ln_gamma_neutral(strength),
+            *activity.ln_water_activity(molality),
+        )
+
+
+def term_amounts(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
+    """mol of each term per kg of starting water, [L, J]."""
+    size = terms.size
+    given = np.empty((state.x.shape[0], size + 4))
+    given[:, :size] = state.x
+    given[:, size] = -medium.ion
+    given[:, size + 1] = -medium.neutral
+    given[:, size + 2] = medium.water
+    given[:, size + 3] = state.ln_water
+    logs = given @ terms.features_across
+    logs += lanes.ln_beta
+    return np.exp(np.minimum(logs, _CEILING, out=logs), out=logs)
+
+
+def ln_pressures(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
+    """ln of the partial pressures (atm) in equilibrium with the liquid, [L, G]."""
+    return lanes.gas_ln_beta + state.x @ terms.gas_nu.T + medium.water[:, None] * terms.gas_water
+
+
+def ln_saturation(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
+    """ln of the saturation ratio of the solids, [L, M]."""
+    return lanes.solid_ln_beta + state.x @ terms.solid_nu.T + medium.water[:, None] * terms.solid_water
+
+
+@dataclass(eq=False)
+class Constraints:
+    """The phases' conditions: ``excess <= 0``; their gradients by x are the solids' coefficients and ``gas_row``."""
+
+    excess: FloatArray  # [L, K] ln of saturation ratio, and of sum(p) over the available pressure
+    gas_row: FloatArray  # [L, C] mean coefficients of the bubbled gas
+    gas_water: FloatArray  # [L] its H2O
+    shares: FloatArray  # [L, G] its composition
+    any_gas: bool
+
+    @classmethod
+    def at(cls, terms: Terms, lanes: Lanes, state: State, medium: Medium) -> Self:
+        """Evaluated; phases that cannot exist have an excess of -1."""
+        count, solids = lanes.number.size, terms.solid_nu.shape[0]
+        excess = np.empty((count, solids + 1))
+        excess[:, :solids] = ln_saturation(terms, lanes, state, medium)
+        bubbles = lanes.allowed[:, solids]
+        any_gas = bool(bubbles.any())
+        if any_gas:
+            pressures = ln_pressures(terms, lanes, state, medium)
+            top = pressures.max(axis=1)
+            shares = np.exp(pressures - top[:, None])
+            sums = shares.sum(axis=1)
+            shares *= (bubbles / sums)[:, None]
+            excess[:, solids] = top + np.log(sums) - lanes.ln_available
+        else:
+            shares = np.zeros((count, terms.gas_nu.shape[0]))
+        excess[~lanes.allowed] = -1.0
+        return cls(excess, shares @ terms.gas_nu, shares @ terms.gas_water, shares, any_gas)
+
+    def take(self, which: BoolArray) -> Constraints:
+        """These lanes only."""
+        return Constraints(
+            self.excess[which], self.gas_row[which], self.gas_water[which], self.shares[which], self.any_gas
+        )
+
+    def sum_over(self, terms: Terms, weights: FloatArray) -> FloatArray:
+        """Gradients summed with ``weights`` [L, K] (zero for phases that cannot exist): [L, C]."""
+        total = weights[:, :-1] @ terms.solid_nu
+        if self.any_gas:
+            total += weights[:, -1:] * self.gas_row
+        return total
+
+    def along(self, terms: Terms, lanes: Lanes, step: FloatArray) -> FloatArray:
+        """Change of each excess with a step of x [L, C]: [L, K]."""
+        change = np.empty(self.excess.shape)
+        change[:, :-1] = step @ terms.solid_nu.T
+        change[:, -1] = (step * self.gas_row).sum(axis=1)
+        change[~lanes.allowed] = 0.0
+        return change
+
+    def water_in(self, terms: Terms, phases: FloatArray) -> FloatArray:
+        """mol H2O in the phases, [L]."""
+        return np.asarray(phases[:, :-1] @ terms.solid_water + phases[:, -1] * self.gas_water)

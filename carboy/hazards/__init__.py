@@ -1,0 +1,1 @@
+"""From what happened to what it means: magnitudes, limits, severity, moment."""

@@ -1,0 +1,260 @@
+"""What the rules say of a step: words for the hazards that were computed, and hazards known only by class."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+
+import numpy as np
+
+from carboy.bench.trace import Course, StepTrace
+from carboy.chemistry.mixture import TRACE, Array
+from carboy.chemistry.stock import ChemicalStock
+from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Scale, courses, graded
+from carboy.hazards.numbers import figures
+from carboy.model.report import Measure
+from carboy.model.rule import Bound, Flag, Kind, Present, Rule
+from carboy.reasoning.binding import Binding, Mask, View
+from carboy.reasoning.firing import SPEEDS, Firing
+
+GAS_KINDS: tuple[Kind, ...] = ("toxic-gas", "flammable-gas", "asphyxiant-gas", "oxygen")
+COMPUTED: tuple[Kind, ...] = (*GAS_KINDS, "heat", "foam", "pressure", "remobilised")
+_END_STATE_ONLY: tuple[Kind, ...] = ("incomplete", "remobilised")
+_GRADES = {"": DANGER, "danger": DANGER, "warning": WARNING, "note": NOTE}
+_ANYWAY_AT_CONTACT: tuple[Kind, ...] = ("explosive", "fire")
+
+
+@dataclass
+class Raised:
+    """One flag of one rule raised in a course: lanes and the grams that weigh it, ``[lanes]``."""
+
+    rule: Rule
+    flag: Flag
+    bound: dict[str, str]
+    mask: Mask
+    grams: Array
+    moles: Array
+    firing: Firing | None
+
+
+def raised_flags(course: Course, trace: StepTrace, where: str, rules: tuple[Rule, ...], stock: ChemicalStock) -> Iterator[Raised]:
+    """Every flag that a rule raises in a course."""
+    after = View(course.mixture, trace.surroundings)
+    start = View(course.unreacted, trace.surroundings)
+    fired: dict[str, list[Firing]] = {}
+    for firing in course.firings:
+        fired.setdefault(firing.rule.id, []).append(firing)
+    for rule in rules:
+        if rule.off or not rule.flags:
+            continue
+        if rule.does:
+            for firing in fired.get(rule.id, ()):
+                for flag in rule.flags:
+                    mask = firing.extent > TRACE
+                    mask = _and_when(mask, flag, start, firing.bound, rule)
+                    if mask.any():
+                        grams, moles = _weight_of_firing(flag, firing, course, stock)
+                        yield Raised(rule, flag, firing.bound, mask, grams, moles, firing)
+            continue
+        if SPEEDS.index(rule.speed) > SPEEDS.index("minutes") and where != "storage":
+            continue
+        for flag in rule.flags:
+            views = (after,) if flag.kind in _END_STATE_ONLY else (after, start)
+            seen: dict[tuple[tuple[str, str], ...], Raised] = {}
+            for view in views:
+                for names, mask, grams, moles in _matches(rule, flag, view, stock):
+                    key = tuple(sorted(names.items()))
+                    if key in seen:
+                        seen[key].mask = seen[key].mask | mask
+                        seen[key].grams = np.maximum(seen[key].grams, grams)
+                        seen[key].moles = np.maximum(seen[key].moles, moles)
+                    else:
+                        seen[key] = Raised(rule, flag, names, mask, grams, moles, None)
+            yield from seen.values()
+
+
+def _matches(rule: Rule, flag: Flag, view: View, stock: ChemicalStock) -> Iterator[tuple[dict[str, str], Mask, Array, Array]]:
+    for binding in view.bindings(rule):
+        mask = np.ones(view.mixture.lanes, dtype=bool)
+        for condition in (*rule.needs, *flag.when):
+            mask &= view.holds(condition, binding)
+            if not mask.any():
+                break
+        if mask.any():
+            grams, moles = _weight(rule, flag, view, binding, stock)
+            yield {variable: carrier.token for variable, carrier in binding.items()}, mask, np.where(mask, grams, 0.0), np.where(mask, moles, 0.0)
+
+
+def _and_when(mask: Mask, flag: Flag, view: View, names: dict[str, str], rule: Rule) -> Mask:
+    if not flag.when:
+        return mask
+    binding: Binding = {}
+    for one in rule.needs:
+        if isinstance(one, Bound):
+            found = view.having((names[one.variable],), where=one.where)
+            if found:
+                binding[one.variable] = found[0]
+    for condition in flag.when:
+        mask = mask & view.holds(condition, binding)
+    return mask
+
+
+def _weight(rule: Rule, flag: Flag, view: View, binding: Binding, stock: ChemicalStock) -> tuple[Array, Array]:
+    """Grams and mol of what judges the flag: the term it is weighed by, else the scarcest thing the rule needs."""
+    terms = [flag.weighed_by] if flag.weighed_by else [one.variable for one in rule.needs if isinstance(one, Bound)]
+    if not terms:
+        terms = [one.term for one in rule.needs if isinstance(one, Present) and not one.negated]
+    grams = np.full(view.mixture.lanes, np.inf)
+    moles = np.full(view.mixture.lanes, np.inf)
+    for term in terms:
+        token = binding[term].token if term in binding else term
+        amount = view.amount(term, binding)
+        mass = stock.molar_mass(token) if token in stock.index.species or token in stock.index.substances else 0.0
+        if mass:
+            grams, moles = np.minimum(grams, amount * mass), np.minimum(moles, amount)
+    whole = view.mixture.mass_g
+    return np.where(np.isfinite(grams), grams, whole), np.where(np.isfinite(moles), moles, 0.0)
+
+
+def _weight_of_firing(flag: Flag, firing: Firing, course: Course, stock: ChemicalStock) -> tuple[Array, Array]:
+    made = dict(firing.reaction.products)
+    used = dict(firing.reaction.reactants)
+    term = flag.weighed_by or (flag.terms[0] if flag.terms else "")
+    token = firing.bound.get(term, term)
+    if token in made or token in used:
+        moles = (made.get(token) or used[token]) * firing.extent
+        return moles * stock.molar_mass(token), moles
+    masses = [count * firing.extent * stock.molar_mass(name) for name, count in firing.reaction.reactants if name not in ("H+", "OH-", "H2O")]
+    grams = np.minimum.reduce(masses) if masses else course.mixture.mass_g
+    return grams, firing.extent
+
+
+def class_drafts(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, scale: Scale, computed: list[Draft]) -> list[Draft]:
+    """Drafts for flags without a computed magnitude; flags with one lend their words to the drafts in ``computed``."""
+    drafts: dict[tuple[str, ...], Draft] = {}
+    for where, course in courses(trace):
+        standing = _standing(trace, rules, stock) if where != "storage" else {}
+        for raised in raised_flags(course, trace, where, rules, stock):
+            flag = raised.flag
+            if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
+                continue
+            if flag.kind in ("heat", "foam", "remobilised") or (flag.kind == "pressure" and trace.cover != "sealed"):
+                continue
+            if flag.kind in GAS_KINDS and flag.terms and all(f"{_gas_of(term, raised.bound)}(g)" in stock.formation for term in flag.terms):
+                continue  # a gas whose amount is computed, and is too little for a line
+            draft = _class_draft(raised, where, trace, course, stock, scale, standing)
+            if draft is None:
+                continue
+            key = (draft.kind, *draft.tokens, raised.rule.id, "storage" if where == "storage" else "")
+            known = drafts.get(key)
+            if known is None or (known.where == where and draft.level > known.level):
+                drafts[key] = draft
+    return list(drafts.values())
+
+
+def _gas_of(term: str, bound: dict[str, str]) -> str:
+    return bound.get(term, term).removesuffix("(g)")
+
+
+def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock) -> dict[tuple[str, tuple[tuple[str, str], ...]], float]:
+    """Flags that stood already in the vessel or in the bottle, with the grams that weighed them."""
+    stood: dict[tuple[str, tuple[tuple[str, str], ...]], float] = {}
+    for mixture in (trace.before, trace.added):
+        if mixture is None or not mixture.amounts:
+            continue
+        view = View(mixture, trace.surroundings)
+        for rule in rules:
+            if rule.off or rule.does:
+                continue
+            for flag in rule.flags:
+                for names, mask, grams, _ in _matches(rule, flag, view, stock):
+                    key = (rule.id, tuple(sorted(names.items())))
+                    stood[key] = max(stood.get(key, 0.0), float(grams[mask].max()))
+    return stood
+
+
+def _lend(raised: Raised, where: str, computed: list[Draft], stock: ChemicalStock, course: Course) -> bool:
+    """Give a rule's words to the computed drafts of its kind; True if there was one."""
+    lent = False
+    for draft in computed:
+        if draft.kind != raised.flag.kind or draft.where != where:
+            continue
+        if raised.flag.kind in GAS_KINDS:
+            mine = {f"{_gas_of(term, raised.bound)}(g)" for term in raised.flag.terms}
+            if not mine.intersection(draft.tokens):
+                continue
+        if raised.flag.kind == "remobilised" and raised.flag.terms and not _same_element(raised, draft, stock):
+            continue
+        if not (course.table(raised.mask) & (draft.levels > 0)).any():
+            continue
+        lent = True
+        if raised.rule not in draft.rules:
+            draft.rules.append(raised.rule)
+            draft.names.update({variable: name_of(token, stock) for variable, token in raised.bound.items()})
+        if raised.firing is not None:
+            draft.cause_rule = draft.cause_rule or raised.rule.id
+            draft.share = raised.firing.share
+    return lent
+
+
+def _same_element(raised: Raised, draft: Draft, stock: ChemicalStock) -> bool:
+    def elements(token: str) -> set[str]:
+        record = stock.index.species.get(token)
+        return set() if record is None else {element for element in record.atoms if element not in ("H", "O", "C", "N", "S", "Cl", "I")}
+
+    mine = set().union(*(elements(raised.bound.get(term, term)) for term in raised.flag.terms))
+    theirs = set().union(*(elements(token) for token in draft.tokens))
+    return not mine or bool(mine & theirs)
+
+
+def name_of(token: str, stock: ChemicalStock) -> str:
+    """The name of a species or substance as one says it."""
+    record = stock.index.species.get(token)
+    if record is not None and record.name:
+        return record.name
+    substance = stock.index.substances.get(token)
+    return substance.name if substance is not None else token
+
+
+def _class_draft(  # noqa: PLR0913
+    raised: Raised, where: str, trace: StepTrace, course: Course, stock: ChemicalStock, scale: Scale,
+    standing: dict[tuple[str, tuple[tuple[str, str], ...]], float],
+) -> Draft | None:
+    flag, rule = raised.flag, raised.rule
+    grams = np.where(raised.mask, raised.grams, 0.0)
+    if flag.kind == "explosive":
+        levels = graded(grams, 0.01 * scale["energetic-warning-amount"], scale["energetic-warning-amount"], scale["energetic-danger-amount"])
+    elif flag.kind in ("attack", "incomplete", "pressure"):
+        levels = np.where(raised.mask, WARNING, 0)
+    else:
+        levels = graded(grams, 0.01 * scale["reactive-trace-amount"], scale["reactive-trace-amount"], scale["reactive-danger-amount"])
+    levels = np.where(raised.mask, np.minimum(levels, _GRADES[flag.grade]), 0)
+    stood = standing.get((rule.id, tuple(sorted(raised.bound.items()))))
+    if stood is not None and raised.firing is None and float(grams.max()) <= scale["markedly-worse-factor"] * max(stood, 1e-12):
+        levels = np.minimum(levels, NOTE)
+    if where == "contact" and flag.kind not in _ANYWAY_AT_CONTACT:
+        levels = np.minimum(levels, WARNING)
+    moment = flag.moment or rule.moment
+    if moment == "storage" and where == "contact":
+        return None
+    levels = course.table(levels)
+    if not levels.any():
+        return None
+    terms = tuple(raised.bound.get(term, term) for term in flag.terms) or tuple(dict.fromkeys(raised.bound.values()))
+    names = {variable: name_of(token, stock) for variable, token in raised.bound.items()}
+    subject = flag.words or ", ".join(name_of(term, stock) for term in terms)
+    weight = float(grams.max())
+    summary = f"{rule.title}{': ' + subject if subject else ''} ({figures(weight)} g at stake)."
+    draft = Draft(
+        flag.kind, terms, levels, course.fractions, "storage" if moment == "storage" else where, trace, summary, None,  # type: ignore[arg-type]
+        [Measure(quantity="amount at stake", value=weight, unit="g", basis="the scarcest of what the rule needs")],
+        rules=[rule], names=names,
+    )
+    if raised.firing is not None:
+        draft.amount = course.table(np.where(raised.mask, raised.moles, 0.0))
+        draft.share = raised.firing.share
+        draft.cause_rule = rule.id
+    elif flag.kind in GAS_KINDS:
+        draft.amount = course.table(np.where(raised.mask, raised.moles, 0.0))
+        draft.share = (0.0, 1.0)
+    return draft

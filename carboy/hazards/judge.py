@@ -1,0 +1,152 @@
+"""From a walk to findings: every hazard of every step drafted, given its reaction paths and put into the report's form."""
+
+from __future__ import annotations
+
+import re
+
+from carboy.bench.trace import StepTrace
+from carboy.bench.walk import Walk
+from carboy.chemistry.stock import ChemicalStock
+from carboy.hazards.draft import Draft, Scale
+from carboy.hazards.flagged import class_drafts
+from carboy.hazards.gas import gas_drafts
+from carboy.hazards.metals import remobilised_drafts
+from carboy.hazards.physical import foam_drafts, heat_drafts, pressure_drafts
+from carboy.model.knowledge import Index
+from carboy.model.report import Finding, PathStep, Signal
+from carboy.model.rule import Rule
+from carboy.reasoning.equation import consumed_for
+from carboy.reasoning.record import Node, Record
+
+_SIGNALS: dict[int, Signal] = {1: "note", 2: "warning", 3: "danger"}
+SIGNAL_ORDER = {"danger": 0, "warning": 1, "note": 2}
+_MOMENT_ORDER = {"contact": 0, "during": 1, "after": 2, "storage": 3}
+_VARIABLE = re.compile(r"\?(\w+)(?:\.\w+)?")
+
+
+class Judge:
+    """Judges walks by the rules and the thresholds of the graph."""
+
+    def __init__(self, stock: ChemicalStock, rules: tuple[Rule, ...]) -> None:
+        self.stock = stock
+        self.index: Index = stock.index
+        self.rules = rules
+        self.scale = Scale(stock.index)
+
+    def findings(self, walk: Walk) -> list[Finding]:
+        """All findings, one per kind, species, step and vessel, in the order of steps and of gravity."""
+        found: list[Finding] = []
+        for trace in walk.steps:
+            found += [self._finding(draft, walk.record) for draft in self._merged(self._drafts(trace))]
+        return sorted(found, key=lambda one: (one.step, SIGNAL_ORDER[one.signal], _MOMENT_ORDER[one.moment], one.kind))
+
+    def _drafts(self, trace: StepTrace) -> list[Draft]:
+        if trace.path is None and trace.contact is None and trace.storage is None:
+            return []
+        computed = [
+            *gas_drafts(trace, self.stock, self.scale),
+            *heat_drafts(trace, self.stock, self.scale),
+            *foam_drafts(trace, self.stock, self.scale),
+            *pressure_drafts(trace, self.stock, self.scale),
+            *remobilised_drafts(trace, self.stock, self.scale),
+        ]
+        return [*computed, *class_drafts(trace, self.rules, self.stock, self.scale, computed)]
+
+    def _merged(self, drafts: list[Draft]) -> list[Draft]:
+        """One draft per kind and species; the gravest leads, then the one along the path; the others lend rules and measures."""
+        groups: dict[tuple[object, ...], list[Draft]] = {}
+        for draft in drafts:
+            if draft.level > 0:
+                groups.setdefault((draft.kind, draft.tokens, draft.trace.number, draft.trace.vessel), []).append(draft)
+        leaders = []
+        for group in groups.values():
+            group.sort(key=lambda one: (-one.level, ("path", "contact", "storage").index(one.where)))
+            leader = group[0]
+            for other in group[1:]:
+                for rule in other.rules:
+                    if rule not in leader.rules:
+                        leader.rules.append(rule)
+                        leader.names = {**other.names, **leader.names}
+                leader.equations += [one for one in other.equations if one not in leader.equations]
+            leaders.append(leader)
+        return leaders
+
+    # --- words -------------------------------------------------------------------------------------------------
+
+    def _finding(self, draft: Draft, record: Record) -> Finding:
+        paths = self._paths(draft, record)
+        rule_ids = [rule.id for rule in draft.rules]
+        controls = list(dict.fromkeys([*draft.controls, *(_filled(guard, draft.names) for rule in draft.rules for guard in rule.guard)]))
+        sources = list(dict.fromkeys([*draft.sources, *(key for rule in draft.rules for key in rule.cites)]))
+        says = " ".join(dict.fromkeys(_filled(rule.says, draft.names) for rule in draft.rules))
+        return Finding(
+            rule=rule_ids[0] if rule_ids else f"{draft.kind}-by-amount",
+            kind=draft.kind,
+            signal=_SIGNALS[draft.level],
+            step=draft.trace.number,
+            vessel=draft.trace.vessel,
+            moment=draft.moment,
+            fractions=draft.span,
+            holds="throughout" if draft.throughout else "in part",
+            species=[self.plain_formula(token) for token in draft.tokens],
+            amount_mol=draft.amount_range(),
+            summary=draft.summary,
+            says=says,
+            path=paths[0] if paths else [],
+            other_paths=paths[1:],
+            measures=draft.measures,
+            controls=controls,
+            sources=sources,
+            rules=rule_ids,
+        )
+
+    def plain_formula(self, token: str) -> str:
+        """``H2S`` for the token of a species, gas, solid or substance."""
+        record = self.index.species.get(token)
+        if record is not None and record.formula:
+            return record.formula
+        substance = self.index.substances.get(token)
+        if substance is not None:
+            return substance.formula
+        return token.removesuffix("(g)")
+
+    # --- reaction paths ----------------------------------------------------------------------------------------
+
+    def _paths(self, draft: Draft, record: Record) -> list[list[PathStep]]:
+        number, vessel = draft.trace.number, draft.trace.vessel
+        nodes: list[Node] = []
+        rule = draft.rules[0].id if draft.rules else "equilibrium"
+        for sort, equation, left, right in draft.equations:
+            token = draft.tokens[0] if draft.kind != "remobilised" else right[0]
+            target = self.stock.dissolved_form.get(token, token)
+            drawn = consumed_for(self.stock, target, max(float(draft.amount.max()) if draft.amount is not None else 0.0, 1e-12))
+            watching = rule if sort == "equilibrium" and draft.rules and not draft.rules[0].does else "equilibrium"
+            nodes.append(record.fired(vessel, watching, equation, drawn, {target: 1.0}, number, sort="equilibrium", shown=(left, right)))
+        if not draft.equations:
+            nodes += record.events_of(draft.cause_rule, number) if draft.cause_rule else []
+            if not nodes and draft.rules:
+                drawn = {}
+                for token in draft.tokens:
+                    if token in self.index.species or token in self.index.substances:
+                        drawn.update(dict.fromkeys(consumed_for(self.stock, token, 1.0), 1.0))
+                for name in self._bound_tokens(draft):
+                    drawn.update(dict.fromkeys(consumed_for(self.stock, name, 1.0), 1.0))
+                nodes.append(
+                    record.fired(vessel, rule, draft.rules[0].title, drawn, {}, number, sort="equilibrium", shown=(tuple(drawn), draft.tokens))
+                )
+        paths = [path for node in nodes for path in record.paths(node)]
+        unique: list[list[PathStep]] = []
+        for path in paths:
+            if path not in unique:
+                unique.append(path)
+        return unique
+
+    def _bound_tokens(self, draft: Draft) -> list[str]:
+        by_name = {**{record.name: token for token, record in self.index.species.items() if record.name}}
+        by_name.update({record.name: token for token, record in self.index.substances.items()})
+        return [by_name[name] for name in draft.names.values() if name in by_name]
+
+
+def _filled(text: str, names: dict[str, str]) -> str:
+    """``?s`` in a rule's words replaced by what was bound."""
+    return _VARIABLE.sub(lambda match: names.get("?" + match.group(1), names.get(match.group(1), match.group(0))), text)

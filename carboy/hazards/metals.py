@@ -1,0 +1,109 @@
+"""Toxic metals put back into solution."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from carboy.bench.trace import StepTrace
+from carboy.chemistry.mixture import TRACE, Mixture
+from carboy.chemistry.stock import ChemicalStock
+from carboy.hazards.draft import Draft, Scale, courses, graded
+from carboy.hazards.numbers import amount_words, figures
+from carboy.model.knowledge import Limit
+from carboy.model.report import Measure
+from carboy.reasoning.equation import formation_equation
+from carboy.text.formulas import molar_mass
+
+_GONE = 0.01  # share of the solid that must have gone back before it is told
+
+
+def element_of(report_key: str) -> str:
+    """``Hg`` of ``Hg(II)``."""
+    return report_key.split("(")[0]
+
+
+def limit_for(report_key: str, limits: tuple[Limit, ...]) -> Limit | None:
+    """The limit on a liquid that applies to a metal: the toxicity characteristic, else the wastewater treatment standard."""
+    for kind in ("toxicity-characteristic", "universal-treatment-wastewater"):
+        for limit in limits:
+            if limit.kind == kind and limit.subject in (report_key, element_of(report_key)):
+                return limit
+    return None
+
+
+def _solid_metal(mixture: Mixture, token: str) -> np.ndarray:
+    total = mixture.zeros()
+    for solid, amount in mixture.solids.items():
+        total = total + amount * mixture.stock.components_of(solid).get(token, 0.0)
+    return total
+
+
+def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Draft]:
+    """For every toxic metal: solid that was in the vessel, or came down on the way, and has gone back into the liquid."""
+    drafts: list[Draft] = []
+    for where, course in courses(trace):
+        if where == "contact":
+            continue
+        mixture = course.mixture
+        before = trace.before
+        metals = {
+            token
+            for token in mixture.amounts
+            if "heavy-metal" in stock.classes.get(token, ()) and np.any(mixture.total(token) > TRACE)
+        }
+        for element in sorted({element_of(stock.species(token).report_key) for token in metals}):
+            tokens = [token for token in metals if element_of(stock.species(token).report_key) == element]
+            limit = limit_for(element, stock.index.limits)
+            if limit is None:
+                continue
+            weight = molar_mass({element: 1.0})
+            counts = {token: stock.species(token).atoms.get(element, 1.0) for token in tokens}
+            solid = course.table(sum((_solid_metal(mixture, token) * counts[token] for token in tokens), mixture.zeros()))
+            free = course.table(sum((mixture.dissolved(token) * counts[token] for token in tokens), mixture.zeros()))
+            held = np.maximum.accumulate(solid, axis=1)
+            if before is not None:
+                first = sum((_solid_metal(before, token) * stock.species(token).atoms.get(element, 1.0) for token in before.amounts if token in metals), before.zeros())
+                held = np.maximum(held, first[:, None])
+            volume = course.table(mixture.volume_L)
+            back = np.minimum(np.maximum(held - solid, 0.0), free)
+            back = np.where(back > _GONE * held, back, 0.0)
+            strength = np.divide(back * weight * 1000, volume, out=np.zeros_like(back), where=volume > 0)
+            dissolved = np.divide(free * weight * 1000, volume, out=np.zeros_like(back), where=volume > 0)
+            magnitude = limit.value.magnitude
+            levels = graded(strength, _GONE * magnitude, magnitude, scale["remobilised-danger-factor"] * magnitude)
+            if not levels.any():
+                continue
+            lane = int(np.argmax(strength[0]))
+            forms = _main_forms(mixture, tokens, lane)
+            summary = (
+                f"{element} goes back into solution: {amount_words(float(back[0, lane]))}, {figures(float(dissolved[0, lane]))} mg/L dissolved"
+                + (f", mostly as {forms[0]}" if forms else "")
+                + f", against a limit of {magnitude:g} mg/L."
+            )
+            drafts.append(
+                Draft(
+                    "remobilised", (forms[0] if forms else tokens[0],), levels, course.fractions, where, trace, summary, back,
+                    [
+                        Measure(quantity=f"dissolved {element}", value=float(dissolved[0, lane]), unit="mg/L", basis="equilibrium with the solids present"),
+                        Measure(quantity=f"limit for {element}", value=magnitude, unit="mg/L", basis=limit.kind.replace("-", " ")),
+                    ],
+                    sources=[limit.value.source],
+                    equations=_dissolution(stock, mixture, forms, tokens),
+                )
+            )
+    return drafts
+
+
+def _main_forms(mixture: Mixture, tokens: list[str], lane: int) -> list[str]:
+    found = [
+        (float(amount[lane]), name)
+        for name, amount in mixture.aqueous.items()
+        if any(mixture.stock.components_of(name).get(token, 0.0) > 0 for token in tokens)
+    ]
+    return [name for amount, name in sorted(found, reverse=True) if amount > 0][:3]
+
+
+def _dissolution(stock: ChemicalStock, mixture: Mixture, forms: list[str], tokens: list[str]) -> list[tuple[str, str, tuple[str, ...], tuple[str, ...]]]:
+    target = forms[0] if forms else tokens[0]
+    equation, left, right = formation_equation(stock, target)
+    return [("equilibrium", equation, left, right)]

@@ -1,0 +1,147 @@
+"""Heat, foam and pressure: magnitudes of the vessel as a whole."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from carboy.bench.make_up import MOLAR_VOLUME
+from carboy.bench.trace import StepTrace
+from carboy.chemistry.stock import ChemicalStock
+from carboy.hazards.draft import DANGER, NOTE, Draft, Scale, courses, graded
+from carboy.hazards.gas import load
+from carboy.hazards.numbers import figures, litres_words
+from carboy.model.report import Measure
+from carboy.reasoning.equation import formation_equation
+
+BOILING_WATER = 100.0  # degC at one atmosphere
+
+
+def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Draft]:
+    """Warming along the path: by how much, near boiling, above an onset of decomposition of something put in."""
+    course = trace.path
+    if course is None:
+        return []
+    start = course.unreacted.temperature_C
+    rise = course.table(course.reached_C - start)
+    reached = course.table(course.reached_C)
+    levels = graded(rise, scale["heat-note"], scale["heat-warning"], scale["heat-danger"])
+    warmed = rise >= scale["heat-note"]
+    watery = course.table(course.mixture.water_fraction) > 0.05
+    boils = warmed & watery & (reached >= BOILING_WATER - scale["boiling-margin"])
+    levels = np.where(boils, DANGER, levels)
+    reasons: list[str] = []
+    for name, amount in course.unreacted.labelled.items():
+        onset = stock.index.substances[name].onset
+        if onset is not None and np.any(amount > 0):
+            past = warmed & (reached >= onset.magnitude)
+            if past.any():
+                levels = np.where(past, DANGER, levels)
+                reasons.append(f"{stock.index.substances[name].name} begins to decompose at {onset.magnitude:g} °C")
+    if not levels.any():
+        return []
+    lane = int(np.argmax(rise[0]))
+    most, top = float(rise[0, lane]), float(reached[0, lane])
+    words = f"The mixture warms by {figures(most)} K to about {figures(min(top, 999.0), 3)} °C if no heat is lost"
+    if boils.any():
+        words += "; near boiling, so it spatters" if top < BOILING_WATER else "; it boils and spatters"
+    summary = "; ".join([words, *reasons]) + "."
+    measures = [
+        Measure(quantity="heat set free", value=float(course.table(course.heat_kJ)[0, lane]), unit="kJ", basis="Hess's law from enthalpies of formation and dilution"),
+        Measure(quantity="warming without loss", value=most, unit="K", basis="heat over heat capacity of the content"),
+        Measure(quantity="temperature reached", value=top, unit="degC", basis="start temperature of the mixed liquids plus the warming"),
+    ]
+    draft = Draft("heat", (), levels, course.fractions, "path", trace, summary, None, measures)
+    if course.unknown_heat:
+        draft.measures.append(Measure(quantity="heat not known", value=None, unit="", basis="no enthalpy in the graph: " + "; ".join(course.unknown_heat)))
+    return [draft]
+
+
+def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Draft]:
+    """Gas that bubbles through the liquid at once, against the free space above it."""
+    course = trace.path
+    if course is None or course.mixture.headspace_L is not None:
+        return []
+    slow = {token for firing in course.firings if firing.rule.speed != "at once" for token, _ in firing.reaction.products}
+    gas = course.mixture.zeros()
+    most: dict[str, float] = {}
+    for token, amount in course.mixture.gases.items():
+        if stock.dissolved_form.get(token, token) not in slow:
+            gas = gas + amount
+            most[token] = float(amount.max())
+    litres = course.table(gas) * MOLAR_VOLUME
+    if not np.any(litres > 0):
+        return []
+    if trace.duration_s is not None:
+        window = 60.0 * scale["foam-time"]
+        litres = litres * np.minimum(window / np.maximum(trace.duration_s, 1.0), 1.0)[:, None]
+    room = np.maximum(course.table(np.repeat(trace.capacity_L, course.points) - course.mixture.volume_L), 1e-6)
+    ratio = litres / room
+    levels = graded(ratio, scale["foam-note-freeboard-fraction"], scale["foam-warning-freeboard"], scale["foam-danger-freeboard"])
+    if not levels.any():
+        return []
+    token = max(most, key=most.__getitem__)
+    lane = int(np.argmax(ratio[0]))
+    molecules = load(course.mixture, token).molecules
+    record = stock.index.gases.get(token)
+    name = record.name if record is not None else token
+    spread = "" if trace.duration_s is None else f" within {scale['foam-time']:g} min"
+    summary = (
+        f"{name[:1].upper() + name[1:]} bubbles through the liquid: {litres_words(float(litres[0, lane]))} of gas{spread} against "
+        f"{litres_words(float(room[0, lane]))} of free space above it."
+    )
+    equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
+    measures = [
+        Measure(quantity=f"gas{spread}", value=float(litres[0, lane]), unit="L", basis="bubbles of an open vessel at 1 atm, 25 degC"),
+        Measure(quantity="free space (freeboard)", value=float(room[0, lane]), unit="L", basis="vessel volume less liquid volume"),
+    ]
+    return [
+        Draft(
+            "foam", (token,), levels, course.fractions, "path", trace, summary, course.table(molecules), measures,
+            equations=[("equilibrium", equation, left, right)],
+        )
+    ]
+
+
+def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Draft]:
+    """Gauge pressure in a sealed vessel."""
+    drafts: list[Draft] = []
+    for where, course in courses(trace):
+        if where == "contact" or course.mixture.headspace_L is None:
+            continue
+        gauge = course.table(course.mixture.gauge_kPa())
+        standing = 0.0 if trace.before is None or trace.before.headspace_L is None else float(trace.before.gauge_kPa().max())
+        danger = np.full(course.ranges, scale["pressure-danger"])
+        if trace.rating_kPa is not None:
+            danger = np.minimum(danger, scale["pressure-rating-fraction"] * trace.rating_kPa)
+        levels = np.stack(
+            [graded(row, 0.1 * scale["pressure-warning"], scale["pressure-warning"], limit) for row, limit in zip(gauge, danger, strict=True)]
+        )
+        if standing > 0 and float(gauge.max()) <= scale["markedly-worse-factor"] * standing:
+            levels = np.minimum(levels, NOTE)
+        if not levels.any():
+            continue
+        lane = int(np.argmax(gauge[0]))
+        top = float(gauge[0, lane])
+        gases = {token: float(course.table(amount)[0, lane]) for token, amount in course.mixture.gases.items()}
+        token = max(gases, key=gases.__getitem__) if gases else ""
+        room = float(course.table(course.mixture.headspace_L)[0, lane])
+        record = stock.index.gases.get(token)
+        summary = (
+            f"The closed vessel reaches {figures(top)} kPa above the atmosphere"
+            + (f", most of it {record.name}" if record is not None else "")
+            + f", in {litres_words(room)} of headspace."
+        )
+        measures = [
+            Measure(quantity="gauge pressure", value=top, unit="kPa", basis="ideal gas in the headspace: air shut in, water vapour and the gases at equilibrium with the liquid"),
+            Measure(quantity="headspace", value=room, unit="L", basis="vessel volume less liquid volume"),
+        ]
+        if trace.rating_kPa is not None:
+            measures.append(Measure(quantity="rating of the vessel", value=float(trace.rating_kPa[0]), unit="kPa", basis="as stated"))
+        draft = Draft("pressure", (token,) if token else (), levels, course.fractions, where, trace, summary, None, measures)
+        if token:
+            draft.amount = course.table(course.mixture.gases[token])
+            equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
+            draft.equations = [("equilibrium", equation, left, right)]
+        drafts.append(draft)
+    return drafts
+

@@ -1,0 +1,72 @@
+"""The full check of a knowledge folder: strict loading, compilation, SHACL shapes, sources that nothing uses."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from pathlib import Path
+
+from carboy.knowledge.compile import compile_index
+from carboy.knowledge.files import SCHEMA, SHAPES, read_files
+from carboy.knowledge.loading import Facts, load_facts, parse_turtle
+from carboy.knowledge.problems import Problem, in_order
+from carboy.knowledge.vocabulary import SOURCE, expand, shorten
+
+
+def check_knowledge(path: Path | None = None) -> list[Problem]:
+    """Everything that is wrong with the folder ``path`` (None: the shipped kb/), errors first, then notes.
+
+    Raises KnowledgeError or DataFilesMissing only if there is no such folder.
+    """
+    files = read_files(path)
+    facts, problems = load_facts(files)
+    if facts is not None:
+        problems = [*problems, *compile_index(facts)[1], *check_shapes(files), *_unused_sources(facts)]
+    return in_order(problems)
+
+
+def check_shapes(files: Mapping[str, bytes]) -> list[Problem]:
+    """What the SHACL shapes of shapes.ttl find in the union of all files; a folder without shapes.ttl has none."""
+    if SHAPES not in files:
+        return []
+    from pyshacl import validate  # slow to import
+    from rdflib import RDF, Graph, URIRef
+
+    graphs, _ = parse_turtle(files)
+    if SHAPES not in graphs:
+        return []
+    whole = Graph(bind_namespaces="none")
+    homes: dict[object, str] = {}
+    for name, part in graphs.items():
+        if name == SHAPES:
+            continue
+        for triple in part:
+            whole.add(triple)
+            if name != SCHEMA:
+                homes.setdefault(triple[0], name)
+    # only classes and their hierarchy are wanted of the schema; RDFS inference is not
+    _, report, _ = validate(whole, shacl_graph=graphs[SHAPES], inference="none", advanced=False)
+    shacl = "http://www.w3.org/ns/shacl#"
+    found = []
+    for result in report.subjects(RDF.type, URIRef(shacl + "ValidationResult")):
+        focus = report.value(result, URIRef(shacl + "focusNode"))
+        message = report.value(result, URIRef(shacl + "resultMessage"))
+        along = report.value(result, URIRef(shacl + "resultPath"))
+        severity = str(report.value(result, URIRef(shacl + "resultSeverity")) or "")
+        about = shorten(str(focus)) if isinstance(focus, URIRef) else ""
+        if not about:  # a part or a statement without a name: show what it hangs on
+            owner = next((s for s in whole.subjects(None, focus) if isinstance(s, URIRef)), None)
+            about = shorten(str(owner)) if owner is not None else str(whole.value(focus, URIRef(expand(":reaction"))) or "")
+        text = f"{shorten(str(along))}: {message}" if isinstance(along, URIRef) else str(message)
+        found.append(
+            Problem(homes.get(focus, ""), about, text, "note" if severity.endswith(("Warning", "Info")) else "error")
+        )
+    return sorted(found, key=lambda item: (item.file, item.node, item.message))
+
+
+def _unused_sources(facts: Facts) -> list[Problem]:
+    """Sources that no value cites."""
+    return [
+        Problem(node.file, node.name, "no value cites this source", "note", node.span)
+        for node in facts.of_type(SOURCE)
+        if node.name not in facts.sources_used
+    ]

@@ -1,0 +1,110 @@
+"""The report: the contract ``carboy-report/1`` as pydantic models. Every renderer reads this and nothing else."""
+
+from __future__ import annotations
+
+from typing import Literal
+
+from pydantic import BaseModel, ConfigDict, Field
+
+from carboy.model.rule import Kind
+
+Signal = Literal["danger", "warning", "note"]
+Moment = Literal["contact", "during", "after", "storage"]
+Verdict = Literal["refuse", "conditional", "no objection", "cannot say"]
+Pair = tuple[float, float]
+
+
+class ReportPart(BaseModel):
+    """Base of the report's records."""
+
+    model_config = ConfigDict(populate_by_name=True, extra="forbid", ser_json_inf_nan="null")
+
+
+class PathStep(ReportPart):
+    """One link of a reaction path: the rule or equilibrium, its equation, what went in and what came out. ``from`` words are labels or formulas."""
+
+    rule: str
+    equation: str
+    from_: list[str] = Field(alias="from", serialization_alias="from")
+    to: list[str]
+    step: int
+
+
+class Measure(ReportPart):
+    """One number that judges a finding, with what it rests on."""
+
+    quantity: str
+    value: float | list[float] | None
+    unit: str
+    basis: str
+
+
+class Finding(ReportPart):
+    """One hazard or shortfall of one step."""
+
+    rule: str
+    kind: Kind
+    signal: Signal
+    step: int
+    vessel: str = ""
+    moment: Moment
+    fractions: Pair
+    holds: Literal["throughout", "in part"]
+    species: list[str]
+    amount_mol: Pair | None
+    summary: str
+    says: str = ""  # the rules' words for the bench
+    path: list[PathStep]
+    other_paths: list[list[PathStep]] = []
+    measures: list[Measure] = []
+    controls: list[str] = []
+    sources: list[str] = []
+    rules: list[str] = []  # every rule that supports it
+    order: str = ""  # for combine: "as written", "other order", "either order"
+
+
+class StepReport(ReportPart):
+    """The vessel after a step."""
+
+    step: int
+    action: str = ""
+    vessel: str
+    pH: Pair | None
+    temperature_C: Pair | None
+    gauge_kPa: Pair | None
+    volume_L: Pair | float
+    dissolved_mol: dict[str, Pair] = {}
+    solids_mol: dict[str, Pair] = {}
+    gas_mol: dict[str, Pair] = {}
+
+
+class GoalReport(ReportPart):
+    """A goal and whether it is met over the stated ranges (None: cannot say)."""
+
+    goal: str
+    met: bool | None
+    value: Pair | None
+    unit: str
+
+
+class Report(ReportPart):
+    """What `combine` and `vet` return."""
+
+    format: Literal["carboy-report/1"] = "carboy-report/1"
+    title: str = ""
+    verdict: Verdict
+    findings: list[Finding] = []
+    steps: list[StepReport] = []
+    goals: list[GoalReport] = []
+    unrecognised: list[str] = []
+    assumptions: list[str] = []
+    questions: list[str] = []
+    cautions: list[str] = []
+
+    def model_dump(self, **options):  # type: ignore[no-untyped-def,override]
+        """As pydantic's, with the contract's own key names."""
+        return super().model_dump(**{"by_alias": True, **options})
+
+    def model_dump_json(self, **options):  # type: ignore[no-untyped-def,override]
+        """As pydantic's, with the contract's own key names."""
+        return super().model_dump_json(**{"by_alias": True, **options})

@@ -1,0 +1,252 @@
+"""Rules that change the state: bound, limited by what is there, applied, and the equilibria solved again after each."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from carboy.chemistry.mixture import TRACE, Array, Mixture
+from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
+from carboy.errors import RuleError
+from carboy.model.rule import Bound, Condition, Measured, Reaction, ReactionTerm, Rule
+from carboy.reasoning.binding import Binding, Mask, Surroundings, View
+from carboy.rulebook.balance import balance
+
+SPEEDS = ("at once", "minutes", "hours", "days")
+_FREE = (PROTON, WATER, "OH-")  # terms that never run out by count: the equilibria and the pH conditions limit them
+_ROUNDS = 8
+_HALVINGS = 10
+_LEAST_CHANGE = 1e-7  # of the amount at hand: smaller extents are not worth another round
+
+
+@dataclass(frozen=True)
+class BoundReaction:
+    """A reaction with its variables bound: mol per unit of extent of each token, as written and in components."""
+
+    reactants: tuple[tuple[str, float], ...]
+    products: tuple[tuple[str, float], ...]
+    change: dict[str, float]  # component -> mol gained per unit extent
+
+    @property
+    def equation(self) -> str:
+        """``A + 2 B -> C``."""
+        return " -> ".join(" + ".join(_term(token, count) for token, count in side) for side in (self.reactants, self.products))
+
+
+def _term(token: str, count: float) -> str:
+    return token if abs(count - 1.0) < 1e-9 else f"{count:g} {token}"
+
+
+@dataclass(frozen=True)
+class Firing:
+    """One rule at work in one mixture: extent ``[L]`` in mol of reaction."""
+
+    rule: Rule
+    reaction: BoundReaction
+    bound: dict[str, str]
+    extent: Array
+    pH: Array
+    share: tuple[float, float]
+
+    def formed(self, token: str) -> Array:
+        """mol of ``token`` that it made, ``[L]``."""
+        return sum((count for name, count in self.reaction.products if name == token), 0.0) * self.extent
+
+
+def bind_reaction(reaction: Reaction, binding: dict[str, str], stock: ChemicalStock) -> BoundReaction:
+    """Put species in the place of variables, and find coefficients by balance where the rule leaves them out.
+
+    Raises RuleError when no balanced equation exists.
+    """
+    left = [(_species_of(term, binding, stock), term.coefficient) for term in reaction.reactants]
+    right = [(_species_of(term, binding, stock), term.coefficient) for term in reaction.products]
+    if reaction.balance:
+        make_up = [[_make_up(token, stock) for token, _ in side] for side in (left, right)]
+        found = balance(*make_up)
+        counts = [float(value) for value in found]
+        left = [(token, count) for (token, _), count in zip(left, counts[: len(left)], strict=True)]
+        right = [(token, count) for (token, _), count in zip(right, counts[len(left) :], strict=True)]
+    reactants = tuple((token, 1.0 if count is None else count) for token, count in left)
+    products = tuple((token, 1.0 if count is None else count) for token, count in right)
+    change: dict[str, float] = {}
+    for sign, side in ((-1.0, reactants), (1.0, products)):
+        for token, count in side:
+            for component, inner in stock.components_of(token).items():
+                change[component] = change.get(component, 0.0) + sign * count * inner
+    return BoundReaction(reactants, products, {token: count for token, count in change.items() if abs(count) > 1e-12})
+
+
+def _species_of(term: ReactionTerm, binding: dict[str, str], stock: ChemicalStock) -> str:
+    token = binding.get(term.term, term.term)
+    if term.part == "ion":
+        substance = stock.index.substances.get(token)
+        if substance is None or not substance.ion:
+            raise RuleError(f"the graph does not say which ion '{token}' gives")
+        return substance.ion
+    return token
+
+
+def _make_up(token: str, stock: ChemicalStock) -> tuple[dict[str, float], int]:
+    if token == WATER:
+        return {"H": 2.0, "O": 1.0}, 0
+    if token == PROTON:
+        return {"H": 1.0}, 1
+    record = stock.index.species.get(token)
+    if record is not None:
+        return dict(record.atoms), record.charge
+    return dict(stock.index.substances[token].atoms), 0
+
+
+def _depends_on_pH(conditions: tuple[Condition, ...]) -> list[Measured]:
+    return [one for one in conditions if isinstance(one, Measured) and one.quantity == "pH"]
+
+
+class Reactor:
+    """Runs the changing rules on a mixture to a fixed point, in order of speed."""
+
+    def __init__(self, rules: tuple[Rule, ...], stock: ChemicalStock) -> None:
+        self.stock = stock
+        self.rules = tuple(rule for rule in rules if rule.does and not rule.off)
+        self._bound: dict[tuple[str, int, tuple[tuple[str, str], ...]], BoundReaction | None] = {}
+
+    def run(
+        self, mixture: Mixture, surroundings: Surroundings, *, slowest: str = "minutes"
+    ) -> tuple[Mixture, list[Firing]]:
+        """Fire all rules not slower than ``slowest`` until nothing changes; returns the end state and the record of firings."""
+        record: list[Firing] = []
+        for speed in SPEEDS[: SPEEDS.index(slowest) + 1]:
+            rules = [rule for rule in self.rules if SPEEDS.index(rule.speed) <= SPEEDS.index(speed)]
+            for _ in range(_ROUNDS):
+                before = len(record)
+                for rule in rules:
+                    mixture = self._try(rule, mixture, surroundings, record)
+                if len(record) == before:
+                    break
+        return mixture, record
+
+    def _try(self, rule: Rule, mixture: Mixture, surroundings: Surroundings, record: list[Firing]) -> Mixture:
+        view = View(mixture, surroundings)
+        for binding in list(view.bindings(rule)):
+            names = {variable: carrier.token for variable, carrier in binding.items()}
+            for number, reaction in enumerate(rule.does):
+                if view.mixture is not mixture:
+                    view = View(mixture, surroundings)
+                now = self._rebound(view, rule, names)
+                if now is None:
+                    break
+                conditions = (*rule.needs, *reaction.when)
+                mask = np.ones(mixture.lanes, dtype=bool)
+                for condition in conditions:
+                    mask &= view.holds(condition, now)
+                    if not mask.any():
+                        break
+                if not mask.any():
+                    continue
+                bound = self._bind(rule, number, names)
+                if bound is None:
+                    continue
+                changed = self._react(rule, reaction, bound, conditions, names, view, mask, surroundings, record)
+                mixture = changed if changed is not None else mixture
+        return mixture
+
+    def _rebound(self, view: View, rule: Rule, names: dict[str, str]) -> Binding | None:
+        now: Binding = {}
+        for one in rule.needs:
+            if isinstance(one, Bound):
+                found = [c for c in view.having((names[one.variable],), where=one.where) if c.token == names[one.variable]]
+                if not found:
+                    return None
+                now[one.variable] = found[0]
+        return now
+
+    def _bind(self, rule: Rule, number: int, names: dict[str, str]) -> BoundReaction | None:
+        key = (rule.id, number, tuple(sorted(names.items())))
+        if key not in self._bound:
+            try:
+                self._bound[key] = bind_reaction(rule.does[number], names, self.stock)
+            except RuleError:
+                self._bound[key] = None  # the linter lists the members of a class for which an equation does not balance
+        return self._bound[key]
+
+    def _react(
+        self,
+        rule: Rule,
+        reaction: Reaction,
+        bound: BoundReaction,
+        conditions: tuple[Condition, ...],
+        names: dict[str, str],
+        view: View,
+        mask: Mask,
+        surroundings: Surroundings,
+        record: list[Firing],
+    ) -> Mixture | None:
+        mixture = view.mixture
+        extent = np.full(mixture.lanes, np.inf)
+        scale = mixture.zeros()
+        for token, count in bound.reactants:
+            if token in _FREE:
+                continue
+            there = mixture.amount_of(token)
+            extent = np.minimum(extent, there / count)
+            scale = np.maximum(scale, there)
+        earlier = sum(
+            (one.extent for one in record if one.rule is rule and one.reaction is bound), mixture.zeros()
+        )
+        share = reaction.share[1]
+        extent = np.where(mask & np.isfinite(extent), extent, 0.0)
+        if share < 1.0:  # of all that was there before this rule began, not of what is left in each round
+            extent = np.maximum(share * (extent + earlier) - earlier, 0.0)
+        extent = np.where(extent > np.maximum(TRACE, _LEAST_CHANGE * scale), extent, 0.0)
+        if not extent.any():
+            return None
+        limits = _depends_on_pH(conditions)
+        uses_protons = abs(bound.change.get(PROTON, 0.0)) > 0
+        if limits and uses_protons:
+            extent = self._held_by_pH(mixture, bound, limits, extent, surroundings)
+            extent = np.where(extent > np.maximum(TRACE, _LEAST_CHANGE * scale), extent, 0.0)
+            if not extent.any():
+                return None
+        changed = applied(mixture, bound, extent)
+        record.append(Firing(rule, bound, names, extent, mixture.pH, reaction.share))
+        return changed
+
+    def _held_by_pH(
+        self, mixture: Mixture, bound: BoundReaction, limits: list[Measured], extent: Array, surroundings: Surroundings
+    ) -> Array:
+        """The largest extent, found on the equilibrium, at which the pH conditions of the rule still hold."""
+        active = np.flatnonzero(extent > 0)
+        part = mixture.take(active)
+        full = extent[active]
+
+        def kept(trial: Array) -> Mask:
+            view = View(applied(part, bound, trial), surroundings)
+            good = np.ones(len(active), dtype=bool)
+            for condition in limits:
+                good &= view.holds(condition, {})
+            return good
+
+        good = kept(full)
+        low, high = np.where(good, full, 0.0), full.copy()
+        for _ in range(_HALVINGS if not good.all() else 0):
+            middle = 0.5 * (low + high)
+            fine = kept(middle)
+            low = np.where(fine & ~good, middle, low)
+            high = np.where(~fine & ~good, middle, high)
+        result = np.zeros(mixture.lanes)
+        result[active] = np.where(good, full, low)
+        return result
+
+
+def applied(mixture: Mixture, bound: BoundReaction, extent: Array) -> Mixture:
+    """The mixture after a reaction of ``extent`` mol ``[L]``."""
+    amounts = dict(mixture.amounts)
+    for token, count in bound.change.items():
+        value = amounts.get(token, mixture.zeros()) + count * extent
+        amounts[token] = value if token == PROTON else np.where(np.abs(value) < 1e-13, 0.0, np.maximum(value, 0.0))
+    return mixture.with_amounts(amounts)
+
+
+def scaled_firing(firing: Firing, lanes: slice) -> Firing:
+    """The firing seen in some of the lanes only."""
+    return replace(firing, extent=firing.extent[lanes], pH=firing.pH[lanes])

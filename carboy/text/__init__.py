@@ -1,0 +1,1 @@
+"""Text into model: quantities, formulas, equations, portions, case files, the rule language."""

@@ -1,0 +1,200 @@
+"""Aims and checks of a procedure: ``dissolved mercury in jug below 0.2 mg/L``, ``pH in tank between 7 and 9``.
+
+::
+
+    goal     = ( "pH" | ["dissolved" | "total"] subject ) ["in" vessel] window ["in" vessel]
+    check    = goal | "temperature" ["in" vessel] window
+    window   = "below" figure | "above" figure | "between" a "and" b | a "-" b
+
+The subject becomes a key of the report (``Hg``, ``Cr(VI)``, ``CN``), or the symbol of an element of which several
+states are kept apart (``Cr``: all
+of them together). Without a word before it the total is meant. Concentrations come in mg/L or mol/L; ``ppm`` is taken
+as mg/L, as the tables of limits for waste water do.
+"""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any, Literal, Protocol
+
+from carboy.errors import InputError
+from carboy.model.plan import Goal
+from carboy.text.formulas import elements
+from carboy.text.passages import Passage, closest, passage_of
+from carboy.text.quantities import read_pH, read_quantity
+
+_COMPARISON = re.compile(
+    r"(?:^|\s+)(?:(?:of|is|stays|must be|=)\s+)?(?P<word>below|under|less than|at most|no more than|not more than"
+    r"|not above|up to|max\.?|<=|<|≤|above|over|more than|at least|no less than|not less than|not below|min\.?|>=|>|≥"
+    r"|between|from|of|is|(?=[-\d.]))",
+    re.IGNORECASE,
+)
+_QUANTITY = re.compile(r"\s*(?P<quantity>dissolved|total|pH|temperature)(?!\w)\s*", re.IGNORECASE)
+_PLACE = re.compile(r"\s*\b(?:in|of)\s+(?:the\s+)?(?P<vessel>\S.*?)\s*$", re.IGNORECASE)
+_ROMAN = ("I", "II", "III", "IV", "V", "VI", "VII", "VIII")
+_VALENT = ("mono", "di", "tri", "tetra", "penta", "hexa", "hepta", "octa")
+_VALENCE = re.compile(rf"(?P<prefix>{'|'.join(_VALENT)})valent\s+(?P<element>\w+)", re.IGNORECASE)
+
+
+class SubjectLookup(Protocol):
+    """What the graph knows of elements and ions."""
+
+    def report_keys(self, text: str) -> tuple[str, ...]:
+        """Keys of the report that ``text`` covers; () if none."""
+
+    def suggest(self, text: str, n: int = 3) -> Sequence[str]:
+        """Known names like ``text``, best first."""
+
+
+@dataclass(frozen=True)
+class Target:
+    """What a goal or check says: ``quantity`` "dissolved", "total", "pH" or "temperature", the report key, the vessel,
+    the window.
+
+    ``unit`` is mg/L or mol/L, degC, or "" for a pH. ``vessel_place`` is where the vessel's name stands (for errors),
+    None if none is named.
+    """
+
+    quantity: Literal["dissolved", "total", "pH", "temperature"]
+    subject: str
+    vessel: str
+    vessel_place: tuple[int, int] | None
+    low: float | None
+    high: float | None
+    unit: str
+
+
+def parse_target(
+    text: str | Passage, names: SubjectLookup, *, with_temperature: bool = False, file: str = ""
+) -> Target:
+    """Read a goal or (``with_temperature``) a check. ``names`` knows the report keys. Raises InputError."""
+    passage = passage_of(text, file)
+    plain, end = passage.plain, len(passage.plain.rstrip())
+    what = "a check" if with_temperature else "a goal"
+    if end == 0:
+        passage.fail(f"{what} is missing here, such as 'pH in tank between 7 and 9'", 0, 0)
+    found = _QUANTITY.match(plain, 0, end)
+    word = found["quantity"].lower() if found else "total"
+    quantity: Any = "pH" if word == "ph" else word
+    begin = found.end() if found else len(plain) - len(plain.lstrip())
+    if quantity == "temperature" and not with_temperature:
+        passage.fail(
+            "a goal is about a pH or an amount in solution; a temperature can be a 'check' of a step", *passage.word(0)
+        )
+    # "is" and "of" count only where nothing clearer is said, and the subject comes first
+    clear = [m for m in _COMPARISON.finditer(plain, max(begin - 1, 0), end) if m["word"].lower() not in ("of", "is")]
+    spoken_first = sorted(clear, key=lambda m: not m["word"])  # "in tank 2 below 1 mg/L": the 2 is no window
+    joint = spoken_first[0] if spoken_first else None
+    if joint is None:
+        passage.fail(f"{what} needs a window, such as 'below 0.2 mg/L' or 'between 7 and 9'", *_last_word(passage, end))
+    left = (begin, max(begin, joint.start()))
+    right = joint.start("word")
+    place: tuple[int, int] | None = None
+    if at := _PLACE.search(plain, *left):
+        place = at.span("vessel")
+        left = (left[0], at.start())
+    low, high, unit, stop = _window(passage, right, end, quantity, what)
+    rest = re.compile(r"\s*in\s+(?:the\s+)?(?P<vessel>\S.*?)\s*$", re.IGNORECASE).match(plain, stop, end)
+    if rest and place is None:
+        place = rest.span("vessel")
+    elif plain[stop:end].strip():
+        passage.fail(f"'{plain[stop:end].strip()}' cannot be placed here", *_stripped(plain, stop, end))
+    subject = ""
+    if quantity in ("dissolved", "total"):
+        subject = _subject(passage, *_stripped(plain, *left), names, what)
+    elif plain[slice(*left)].strip():
+        passage.fail(f"'{plain[slice(*left)].strip()}' cannot be placed after '{quantity}'", *_stripped(plain, *left))
+    vessel = passage.text[slice(*place)].strip() if place else ""
+    return Target(quantity, subject, vessel, place, low, high, unit)
+
+
+def parse_goal(text: str | Passage, names: SubjectLookup, *, file: str = "") -> Goal:
+    """``dissolved mercury in jug below 0.2 mg/L`` as a Goal.
+
+    Whether the vessel exists is for the reader of the case. Raises InputError.
+    """
+    passage = passage_of(text, file)
+    target = parse_target(passage, names)
+    assert target.quantity != "temperature"
+    return Goal(
+        text=passage.text.strip(),
+        quantity=target.quantity,
+        subject=target.subject,
+        vessel=target.vessel,
+        low=target.low,
+        high=target.high,
+        unit=target.unit,
+    )
+
+
+def _window(
+    passage: Passage, at: int, end: int, quantity: str, what: str
+) -> tuple[float | None, float | None, str, int]:
+    """The window's ends (None for an open one), its unit, and where it ends."""
+    if quantity == "pH":
+        reading = read_pH(passage, at, end)
+    elif quantity == "temperature":
+        reading = read_quantity(passage, at, end, ("temperature",), "a temperature", signed=True)
+    else:
+        reading = read_quantity(passage, at, end, ("strength",), "a concentration")
+    if reading is None:
+        start, stop = passage.word(at, end)
+        passage.fail(f"{what} needs a figure here", start, stop)
+    opened = passage.plain[at:end].lstrip().lower()
+    upper_only = bool(re.match(r"below|under|less|at most|no more|not more|not above|up to|max|<|≤", opened))
+    lower_only = bool(re.match(r"above|over|more|at least|no less|not less|not below|min|>|≥", opened))
+    low = None if upper_only else reading.interval.low
+    high = None if lower_only or math.isinf(reading.interval.high) else reading.interval.high
+    if low is not None and low == high:
+        passage.fail(
+            f"{what} needs a window, such as 'below ...' or 'between ... and ...', not one figure",
+            reading.start,
+            reading.end,
+        )
+    factors = {"g/L": (1000.0, "mg/L"), "mol/L": (1.0, "mol/L"), "mass ppm": (1.0, "mg/L")}
+    if quantity in ("pH", "temperature"):
+        return low, high, reading.unit, reading.end
+    if reading.unit not in factors:
+        passage.fail("a concentration in a goal is given in mg/L or mol/L", reading.start, reading.end)
+    factor, unit = factors[reading.unit]
+    scaled = [None if value is None else float(f"{value * factor:.12g}") for value in (low, high)]
+    return scaled[0], scaled[1], unit, reading.end
+
+
+def _subject(passage: Passage, start: int, end: int, names: SubjectLookup, what: str) -> str:
+    if start >= end:
+        passage.fail(f"{what} must say of what, such as 'dissolved mercury'", *passage.word(0))
+    words = " ".join(passage.plain[start:end].split())
+    keys = names.report_keys(words)
+    if not keys and (spelled := _VALENCE.fullmatch(words)):
+        state = _ROMAN[_VALENT.index(spelled["prefix"].lower())]
+        keys = names.report_keys(f"{spelled['element']}({state})")
+    if len(keys) == 1:
+        return keys[0]
+    roots = {key.partition("(")[0] for key in keys}
+    if len(roots) == 1:  # an element in all its states
+        return roots.pop()
+    if keys:
+        passage.fail(
+            f"'{passage.text[start:end]}' covers several things ({', '.join(keys)}); write a goal for each", start, end
+        )
+    known = [element.name for element in elements().values()]
+    near = closest(words, known, 2, cutoff=75.0) or tuple(names.suggest(words, 2))
+    message = f"'{passage.text[start:end]}' is nothing that is counted by itself; name an element or an ion"
+    raise InputError(message, span=passage.span(start, end), suggestions=near)
+
+
+def _stripped(text: str, start: int, end: int) -> tuple[int, int]:
+    while start < end and text[start].isspace():
+        start += 1
+    while end > start and text[end - 1].isspace():
+        end -= 1
+    return start, end
+
+
+def _last_word(passage: Passage, end: int) -> tuple[int, int]:
+    start = passage.plain.rfind(" ", 0, end) + 1
+    return start, end

@@ -1,0 +1,183 @@
+"""The two calls: ``combine`` bottles, ``vet`` a written procedure. Both return a :class:`~carboy.model.report.Report`."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from functools import cached_property, lru_cache
+from pathlib import Path
+
+import numpy as np
+
+from carboy.bench.walk import Walk, Walker
+from carboy.chemistry.mixture import Mixture
+from carboy.chemistry.stock import WATER, ChemicalStock
+from carboy.errors import InputError
+from carboy.hazards.goals import goal_reports
+from carboy.hazards.judge import SIGNAL_ORDER, Judge
+from carboy.hazards.steps import step_report
+from carboy.knowledge.index import load_index
+from carboy.knowledge.names import Names
+from carboy.model.knowledge import Index
+from carboy.model.plan import Case, Setting, VesselSpec
+from carboy.model.report import Finding, Report, Verdict
+from carboy.model.rule import Rule
+from carboy.reasoning.firing import Reactor
+from carboy.rulebook.book import load_rules
+from carboy.text.cases import combine_case, read_case
+
+CAUTIONS = (
+    "This is a screening aid, not a permit. Labels can be wrong, and what the tool does not find is not proof of safety.",
+    "The safety data sheets, the rules of the site, local codes and a qualified person decide.",
+    "Treating waste may need a permit; much of it leaves only by a licensed contractor.",
+)
+OTHER_ORDER = "Pour in the other order: vetted the same way, that clears this danger."
+
+Progress = Callable[[int, int], None]
+
+
+class Laboratory:
+    """The graph, the rules and the engine over them, loaded once."""
+
+    def __init__(self, index: Index | None = None, rules: tuple[Rule, ...] | None = None) -> None:
+        self.index = load_index() if index is None else index
+        self.rules = load_rules() if rules is None else rules
+
+    @cached_property
+    def names(self) -> Names:
+        return Names(self.index)
+
+    @cached_property
+    def stock(self) -> ChemicalStock:
+        return ChemicalStock(self.index)
+
+    @cached_property
+    def reactor(self) -> Reactor:
+        return Reactor(self.rules, self.stock)
+
+    @cached_property
+    def judge(self) -> Judge:
+        return Judge(self.stock, self.rules)
+
+    def walk(self, case: Case, progress: Progress | None = None) -> Walk:
+        """Carry out a case on the bench model."""
+        return Walker(self.stock, self.reactor, progress).walk(case)
+
+    def vet(self, case: Case, progress: Progress | None = None) -> Report:
+        """The report on a case."""
+        walk = self.walk(case, progress)
+        findings = self.judge.findings(walk)
+        return self._report(walk, findings)
+
+    def combine(self, portions: tuple[str, ...], setting: Setting | None = None, vessel: VesselSpec | None = None) -> Report:
+        """The report on portions poured together one after the other, and on the other order where there are two."""
+        case = combine_case(portions, self.names, setting, vessel)
+        walk = self.walk(case)
+        findings = self.judge.findings(walk)
+        if len(portions) == 2:
+            swapped = combine_case(portions[::-1], self.names, setting, vessel)
+            turned = self.judge.findings(self.walk(swapped))
+            findings = compare_orders(findings, turned)
+        return self._report(walk, findings)
+
+    def _report(self, walk: Walk, findings: list[Finding]) -> Report:
+        unsettled = [note for trace in walk.steps for note in trace.notes if "converge" in note]
+        assumptions = [*walk.assumptions, *self._range_words(walk), *(note for trace in walk.steps for note in trace.notes)]
+        assumptions += self._beyond(walk)
+        questions = [*walk.questions, *self._questions(walk, findings)]
+        return Report(
+            title=walk.case.title,
+            verdict=verdict_of(findings, bool(walk.unrecognised) or bool(unsettled)),
+            findings=findings,
+            steps=[step_report(trace, self.stock) for trace in walk.steps],
+            goals=goal_reports(walk, self.stock),
+            unrecognised=walk.unrecognised,
+            assumptions=list(dict.fromkeys(assumptions)),
+            questions=list(dict.fromkeys(questions)),
+            cautions=list(CAUTIONS),
+        )
+
+    def _range_words(self, walk: Walk) -> list[str]:
+        return [f"{key}: {low:.3g} to {high:.3g} is followed." for key, (low, _, high) in walk.ranges.variables.items()]
+
+    def _beyond(self, walk: Walk) -> list[str]:
+        """What the calculation cannot vouch for: strong brines, liquids with next to no water."""
+        words = []
+        for trace in walk.steps:
+            mixture: Mixture = trace.after
+            if mixture.solved is None and mixture.amounts:
+                if mixture.total(WATER).max() <= 0 and mixture.dissolvable:
+                    words.append(f"Step {trace.number}: no water, so rules and amounts speak alone.")
+            elif mixture.solved is not None and np.any(mixture.solved.outside_activity_range):
+                words.append(
+                    f"Step {trace.number}: ionic strength {float(mixture.solved.ionic_strength.max()):.2g} mol/kg is beyond the range of the activity model; "
+                    "directions hold, figures near a limit do not."
+                )
+        return words
+
+    def _questions(self, walk: Walk, findings: list[Finding]) -> list[str]:
+        if not walk.ranges.variables or all(finding.holds == "throughout" for finding in findings):
+            return []
+        return [f"Measure this to settle what holds only in part: {key}." for key in walk.ranges.variables]
+
+
+def compare_orders(written: list[Finding], turned: list[Finding]) -> list[Finding]:
+    """Mark the findings of two bottles by the order of pouring that they belong to; what only the other order brings is added."""
+
+    def key(finding: Finding) -> tuple[str, tuple[str, ...]]:
+        return finding.kind, tuple(finding.species)
+
+    here = {key(finding): finding for finding in written if finding.step == 2}
+    there = {key(finding): finding for finding in turned if finding.step == 2}
+    result: list[Finding] = []
+    other_is_safe = not any(finding.signal == "danger" for finding in there.values())
+    for finding in written:
+        twin = there.get(key(finding))
+        if finding.step == 2:
+            same = twin is not None and twin.signal == finding.signal
+            finding.order = "either order" if same else "as written"
+            if finding.signal == "danger" and other_is_safe:
+                finding.controls.insert(0, OTHER_ORDER)
+        result.append(finding)
+    for mark, finding in there.items():
+        mine = here.get(mark)
+        if mine is None or SIGNAL_ORDER[finding.signal] < SIGNAL_ORDER[mine.signal]:
+            finding.order = "other order"
+            result.append(finding)
+    return result
+
+
+def verdict_of(findings: list[Finding], cannot_say: bool) -> Verdict:
+    """Refuse outranks cannot say, which outranks conditional. A danger that only one order of pouring brings is a condition."""
+    standing = [f for f in findings if f.signal == "danger" and f.order != "other order" and OTHER_ORDER not in f.controls]
+    if standing:
+        return "refuse"
+    if cannot_say:
+        return "cannot say"
+    conditional = any(f.signal == "danger" or (f.signal == "warning" and f.order != "other order") for f in findings)
+    return "conditional" if conditional else "no objection"
+
+
+@lru_cache(maxsize=1)
+def laboratory() -> Laboratory:
+    """The laboratory over the graph and rules that ship with the package."""
+    return Laboratory()
+
+
+def combine(*portions: str, setting: Setting | None = None, vessel: VesselSpec | None = None) -> Report:
+    """May these bottles go together? Each portion is text as read off a label.
+
+    Raises InputError where a portion cannot be read.
+    """
+    if len(portions) < 2:
+        raise InputError("combine needs at least two portions")
+    return laboratory().combine(portions, setting, vessel)
+
+
+def vet(case: str | Path | Case, *, progress: Progress | None = None) -> Report:
+    """Is this procedure safe in this order, and does it reach its aim? ``case`` is a path to a case file or a Case.
+
+    Raises InputError where the file cannot be read.
+    """
+    lab = laboratory()
+    plan = case if isinstance(case, Case) else read_case(case, lab.names)
+    return lab.vet(plan, progress)

@@ -1,0 +1,131 @@
+"""Problems for the solver and checks of its answers that share no code with it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+
+import numpy as np
+import pytest
+
+from carboy.chemistry.equilibrium import Solved, solve
+from carboy.chemistry.network import Network, NetworkFactory
+from tests.chemistry.aqueous_records import COMPONENTS, EQUILIBRIA, SPECIES
+
+KG_PER_MOL = 0.01801528
+MOL_PER_KG = 1.0 / KG_PER_MOL
+FACTORY = NetworkFactory(EQUILIBRIA, SPECIES)
+
+
+def totals_of(network: Network, *mixtures: Mapping[str, float]) -> np.ndarray:
+    """[L, C] from one mapping a lane."""
+    made = np.zeros((len(mixtures), len(network.components)))
+    for lane, mixture in enumerate(mixtures):
+        for token, amount in mixture.items():
+            made[lane, network.component_index[token]] = amount
+    return made
+
+
+def solved(
+    *mixtures: Mapping[str, float], water_mol: float = MOL_PER_KG, temperature_C: float = 25.0, **options: object
+) -> Solved:
+    """The mixtures (mol by component) as lanes of one call."""
+    tokens = {token for mixture in mixtures for token in mixture}
+    network = FACTORY.network(tokens, temperature_C)
+    headspace = options.pop("headspace_L", None)
+    return solve(
+        network,
+        totals_of(network, *mixtures),
+        np.full(len(mixtures), water_mol),
+        headspace_L=None if headspace is None else np.full(len(mixtures), headspace),
+        **options,  # type: ignore[arg-type]
+    )
+
+
+def neutral(mixture: Mapping[str, float]) -> dict[str, float]:
+    """The mixture with sodium or chloride added until its charges cancel."""
+    made = dict(mixture)
+    excess = sum(COMPONENTS[token] * amount for token, amount in made.items())
+    ion = "Na+" if excess < 0 else "Cl-"
+    made[ion] = made.get(ion, 0.0) + abs(excess)
+    return made
+
+
+def of(answer: Solved, token: str, lane: int = 0) -> float:
+    """mol of a dissolved species."""
+    return float(answer.amounts[lane, answer.network.species_index[token]])
+
+
+def solid(answer: Solved, name: str, lane: int = 0) -> float:
+    """mol of a solid."""
+    return float(answer.solids[lane, answer.network.solids.index(name)])
+
+
+def gas(answer: Solved, name: str, lane: int = 0) -> float:
+    """mol of a gas."""
+    return float(answer.gas[lane, answer.network.gases.index(name)])
+
+
+def pressure(answer: Solved, name: str, lane: int = 0) -> float:
+    """Partial pressure of a gas, atm."""
+    return float(answer.pressures[lane, answer.network.gases.index(name)])
+
+
+def dissolved(answer: Solved, component: str, lane: int = 0) -> float:
+    """mol of a component in all its dissolved species."""
+    network = answer.network
+    return float(answer.amounts[lane] @ network.nu[:, network.component_index[component]])
+
+
+def check(answer: Solved, totals: np.ndarray, water_mol: np.ndarray, *, available_atm: float | None = None) -> None:
+    """Mass, charge, water, mass action, saturation and gas pressure of every lane, from the arrays of the answer
+    alone.
+    """
+    network = answer.network
+    assert answer.converged.all(), [reason for reason in answer.reasons if reason]
+    mass = answer.amounts @ network.nu + answer.solids @ network.solid_nu + answer.gas @ network.gas_nu
+    gross = answer.amounts @ np.abs(network.nu) + answer.solids @ np.abs(network.solid_nu)
+    gross += answer.gas @ np.abs(network.gas_nu) + np.abs(totals)
+    assert np.all(np.abs(mass - totals) <= 1e-9 * gross + 1e-300)
+    charges = totals @ network.component_charge
+    assert np.all(
+        np.abs(answer.amounts @ network.charge - charges) <= 1e-8 * (gross @ np.abs(network.component_charge)) + 1e-300
+    )
+    kg = answer.water_kg
+    on_floor = kg <= 1.000001 * np.maximum(totals[:, 1:].sum(axis=1) / 50.0, 1e-9)
+    water = kg / KG_PER_MOL + answer.amounts @ network.nu_water + answer.solids @ network.solid_nu_water
+    water += answer.gas @ network.gas_nu_water
+    assert np.all((np.abs(water - water_mol) <= 1e-8 * water_mol) | on_floor)
+    assert np.all(answer.outside_activity_range[on_floor])
+    molality = answer.amounts / kg[:, None]
+    strength = 0.5 * molality @ network.charge**2
+    assert np.allclose(strength, answer.ionic_strength, rtol=1e-7, atol=1e-10)
+    for lane in range(totals.shape[0]):
+        i, m = strength[lane], molality[lane].sum()
+        held = min(i, 0.394979339)
+        davies = -0.509 * (np.sqrt(held) / (1.0 + np.sqrt(held)) - 0.3 * held)
+        log_gamma = np.where(network.charge == 0.0, 0.1 * min(i, 5.0), davies * network.charge**2)
+        log_water = np.log10(1.0 - 0.017 * min(m, 20.0)) - 0.017 / 0.66 / np.log(10.0) * np.clip(m - 20.0, 0.0, 40.0)
+        present = totals[lane] != 0.0
+        present[0] = True
+        there = (network.nu[:, ~present] == 0.0).all(axis=1)
+        log_a = np.where(present, answer.log_activity[lane], 0.0)
+        wanted = network.log_beta + network.nu @ log_a + network.nu_water * log_water - log_gamma
+        big = there & (wanted > -250.0)
+        assert np.allclose(np.log10(molality[lane, big]), wanted[big], atol=1e-6)
+        assert np.all(answer.amounts[lane, ~there] == 0.0)
+        index = network.solid_log_beta + network.solid_nu @ log_a + network.solid_nu_water * log_water
+        can = (network.solid_nu[:, ~present] == 0.0).all(axis=1)
+        assert np.all(index[can] <= 1e-6)
+        held_solids = answer.solids[lane] > 1e-12 * gross[lane].max()
+        assert np.all(np.abs(index[held_solids]) <= 1e-6)
+        assert np.all(answer.solids[lane] >= 0.0)
+        assert np.all(answer.solids[lane, ~can] == 0.0)
+        pressures = 10.0 ** (network.gas_log_beta + network.gas_nu @ log_a + network.gas_nu_water * log_water)
+        can_gas = (network.gas_nu[:, ~present] == 0.0).all(axis=1)
+        assert np.allclose(answer.pressures[lane], np.where(can_gas, pressures, 0.0), rtol=1e-5, atol=1e-300)
+        if available_atm is not None:
+            assert answer.pressures[lane].sum() <= available_atm * (1.0 + 1e-5)
+            if answer.bubbling[lane]:
+                assert answer.pressures[lane].sum() == pytest.approx(available_atm, rel=1e-5)
+                shares = answer.pressures[lane] / answer.pressures[lane].sum()
+                assert np.allclose(answer.gas[lane], shares * answer.gas[lane].sum(), rtol=1e-6, atol=1e-300)
