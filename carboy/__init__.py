@@ -1,3 +1,50 @@
-"""carboy: vets the mixing and treatment of laboratory chemical waste before a cap is opened."""
+"""carboy: vets the mixing and treatment of laboratory chemical waste before a cap is opened.
+
+``combine`` and ``vet`` are the two calls; both give a :class:`Report`. They are imported on first use, so that
+``import carboy`` costs next to nothing.
+"""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
 
 __version__ = "0.1.0"
+
+if TYPE_CHECKING:
+    from carboy.errors import CarboyError as CarboyError
+    from carboy.errors import InputError as InputError
+    from carboy.model.plan import Case as Case
+    from carboy.model.plan import Setting as Setting
+    from carboy.model.plan import VesselSpec as VesselSpec
+    from carboy.model.report import Report as Report
+    from carboy.vetting import combine as combine
+    from carboy.vetting import vet as vet
+
+# public name -> the module that holds it
+_HOMES = {
+    "Case": "carboy.model.plan",
+    "CarboyError": "carboy.errors",
+    "InputError": "carboy.errors",
+    "Report": "carboy.model.report",
+    "Setting": "carboy.model.plan",
+    "VesselSpec": "carboy.model.plan",
+    "combine": "carboy.vetting",
+    "vet": "carboy.vetting",
+}
+
+__all__ = ["Case", "CarboyError", "InputError", "Report", "Setting", "VesselSpec", "__version__", "combine", "vet"]
+
+
+def __getattr__(name: str) -> Any:
+    home = _HOMES.get(name)
+    if home is None:
+        raise AttributeError(f"module 'carboy' has no attribute '{name}'")
+    from importlib import import_module
+
+    value = getattr(import_module(home), name)
+    globals()[name] = value
+    return value
+
+
+def __dir__() -> list[str]:
+    return sorted({*globals(), *_HOMES})

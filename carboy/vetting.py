@@ -135,7 +135,7 @@ def compare_orders(written: list[Finding], turned: list[Finding]) -> list[Findin
         if finding.step == 2:
             same = twin is not None and twin.signal == finding.signal
             finding.order = "either order" if same else "as written"
-            if finding.signal == "danger" and other_is_safe:
+            if finding.signal == "danger" and other_is_safe and passes_by(finding):
                 finding.controls.insert(0, OTHER_ORDER)
         result.append(finding)
     for mark, finding in there.items():
@@ -144,6 +144,12 @@ def compare_orders(written: list[Finding], turned: list[Finding]) -> list[Findin
             finding.order = "other order"
             result.append(finding)
     return result
+
+
+def passes_by(finding: Finding) -> bool:
+    """Whether a hazard belongs to the way of pouring: it stands at contact or along the path, and no longer at the end, which is the same
+    in every order."""
+    return finding.kind not in ("remobilised", "incomplete") and finding.fractions[1] < 1.0
 
 
 def verdict_of(findings: list[Finding], cannot_say: bool) -> Verdict:

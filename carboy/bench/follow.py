@@ -14,7 +14,6 @@ from carboy.reasoning.firing import Firing, Reactor
 _FINE = 41  # points of a path while there are few lanes
 _COARSE = 11
 _MANY = 12  # lanes of ranges above which the path is followed more coarsely
-_DRY = 0.002  # water fraction below which nothing dissolves and no heat is computed
 _CONTACT_SHARES = np.array([0.03, 0.1, 0.25, 0.5, 0.75, 0.9, 0.97])  # share of the vessel's liquid where the stream falls in
 
 
@@ -89,8 +88,8 @@ def _reacted(
             unknown += missing
     heat, missing = _reaction_heat(book, firings, together)
     heat = heat + before - book.of_speciation(mixture)
-    wet = together.water_fraction > _DRY
-    heat = np.where(wet, heat, 0.0)
+    if together.neat:  # solids side by side: nothing dissolves
+        heat = together.zeros()
     capacity = np.maximum(book.heat_capacity(together), 1e-6)
     reached = together.temperature_C + heat / capacity
     return Course(mixture, together, firings, fractions, heat, reached, tuple(dict.fromkeys([*unknown, *missing])))

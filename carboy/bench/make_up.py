@@ -8,6 +8,7 @@ from functools import cached_property
 import numpy as np
 
 from carboy.bench.ranges import Ranges
+from carboy.chemistry.roots import bracketed_root
 from carboy.chemistry.heat import HeatBook
 from carboy.chemistry.mixture import WATER_MOLAR_MASS, Array, Mixture
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
@@ -19,6 +20,7 @@ WATER_DENSITY = 0.997  # g/mL at 25 degC, CRC Handbook (from memory)
 DISSOLVED_SALT_DENSITY = 2.5  # g/mL, apparent, for solutes whose solutions have no density in the graph; common practice
 UNKNOWN_LIQUID_DENSITY = 0.9  # g/mL for an organic liquid without a density in the graph; common practice
 MOLAR_VOLUME = 24.465  # L/mol of gas at 25 degC and 1 atm
+_PH_TOLERANCE = 0.003
 _PURE = 0.99  # a "concentrated" material purer than this is the neat substance
 
 
@@ -92,6 +94,8 @@ class Bench:
         if item.strength.unit != "neat" or not item.reference.startswith("substance:"):
             return None
         substance = self.index.substances[item.reference.split(":", 1)[1]]
+        if portion.unit in ("g", "mol") and substance.state == "s":
+            return substance
         if portion.unit in ("g", "mol") and substance.state != "aq":
             return substance if not self._sold_dilute(substance) else None
         if substance.state == "g" and portion.unit == "L":
@@ -171,9 +175,7 @@ class Bench:
             made.mixture.amounts[WATER] = made.mixture.total(WATER) + rest / WATER_MOLAR_MASS
         else:
             solvent = self.index.substances.get(portion.solvent.split(":", 1)[-1])
-            if solvent is None:
-                made.unrecognised.append(portion.solvent_words)
-            else:
+            if solvent is not None:  # an unknown solvent is among the unrecognised ingredients
                 self._put(solvent, rest / self.stock.molar_mass(solvent.id), made, companions=False)
         made.mixture.volume_L = litres
         made.mixture.mass_g = grams
@@ -325,16 +327,15 @@ class Bench:
 
     def _fit_protons(self, content: Mixture, target: Array) -> None:
         """Set the proton excess so that the speciation has the pH of the label; a counter-ion that does nothing keeps it neutral."""
+        if not self.ranges.fixed:
+            return  # the first reading only lists the ranges
         known = content.total(PROTON)
         span = np.maximum(20.0 * content.volume_L, 1e-6)
-        low, high = known - span, known + span
-        for _ in range(60):
-            middle = 0.5 * (low + high)
-            trial = content.with_amounts({**content.amounts, PROTON: middle})
-            acid = trial.pH < target
-            high = np.where(acid, middle, high)
-            low = np.where(acid, low, middle)
-        found = 0.5 * (low + high)
+
+        def error(excess: Array) -> Array:
+            return target - content.with_amounts({**content.amounts, PROTON: excess}).pH  # rises with the excess
+
+        found = bracketed_root(error, known - span, known + span, tolerance=_PH_TOLERANCE)
         anion, cation = self._of_class("unspecified-anion"), self._of_class("unspecified-cation")
         added = found - known
         content.amounts[PROTON] = found

@@ -24,6 +24,11 @@ class Ranges:
         self._values: dict[str, Array] | None = None
         self.lanes = 1
 
+    @property
+    def fixed(self) -> bool:
+        """Whether the lanes are laid out."""
+        return self._values is not None
+
     def draw(self, key: str, low: float, high: float, nominal: float | None = None) -> Array:
         """The value of one uncertain number in every lane. ``key`` says in plain words whose number it is."""
         if not np.isfinite(high):

@@ -236,8 +236,8 @@ class Walker:
             after, firings = self.reactor.run(added.take(np.arange(added.lanes)), self._surroundings(state, None))
             self._record(firings, state, number, walk)
         else:
-            if sealed and state.air_mol is None:
-                state.air_mol = self._air(state, before)
+            if sealed:
+                state.air_mol = self._air(state, before, also_L=added.volume_L)  # opened to pour, closed at once
             path = along(
                 before, added, self.reactor, surroundings, capacity_L=state.capacity_L if sealed else None, air_mol=state.air_mol
             )
@@ -286,17 +286,15 @@ class Walker:
                         amounts[component] = amounts.get(component, after.zeros()) - count * left
             amounts = {token: value if token == PROTON else np.maximum(value, 0.0) for token, value in amounts.items()}
             content = after.with_amounts(amounts)
-        content = content.take(np.arange(content.lanes))
-        if after.water_fraction.max() > 0:
-            content.neat = {}
-        state.content = content
+        state.content = content = content.take(np.arange(content.lanes))
         for token in (*content.amounts, *after.solids, *content.labelled):
             state.earlier[token] = self.stock.classes.get(token, frozenset())
         if not np.all(after.converged):
             trace.notes.append("The equilibrium of this step did not converge over the whole of the stated ranges.")
 
-    def _air(self, state: VesselState, content: Mixture) -> Array:
-        room = np.maximum(state.capacity_L - content.volume_L, 0.0)
+    def _air(self, state: VesselState, content: Mixture, also_L: Array | float = 0.0) -> Array:
+        """mol of air that a vessel shuts in when it is closed at one atmosphere."""
+        room = np.maximum(state.capacity_L - content.volume_L - also_L, 0.0)
         kelvin = content.temperature_C + 273.15
         return (ATMOSPHERE_KPA - water_vapour_kPa(content.temperature_C)) * room / (GAS_CONSTANT_KPA * kelvin)
 
@@ -391,14 +389,15 @@ class Walker:
         holder = walk.vessels.get(cake_name) or self._new_vessel(VesselSpec(name=cake_name), walk, walk.ranges.lanes, state.capacity_L)
         clear = self._part(content, stays, content.volume_L * (1 - kept), np.maximum(content.mass_g - grams, 0.0) * (1 - kept), 1 - kept)
         sludge = self._part(content, cake, np.maximum(content.volume_L * kept, grams / 2000), grams + np.maximum(content.mass_g - grams, 0.0) * kept, kept)
+        state.content = empty(self.stock, content.lanes, float(content.temperature_C[0]))
+        came_from, was_here = state.pours, dict(state.earlier)
+        state.pours, state.earlier, state.labels = {}, {}, []
         for target, part in ((jug, clear), (holder, sludge)):
             target.content = part if not target.filled else poured_together(target.content, part)
-            target.pours = {token: frozenset({number}) for token in part.amounts}
+            target.pours = {token: came_from.get(token, frozenset({number})) for token in part.amounts}
             walk.record.moved(state.spec.name, target.spec.name, tuple(part.amounts))
         jug.earlier = {token: self.stock.classes.get(token, frozenset()) for token in (*clear.amounts, *clear.solids)}
-        holder.earlier = dict(state.earlier)
-        state.content = empty(self.stock, content.lanes, float(content.temperature_C[0]))
-        state.pours, state.earlier, state.labels = {}, {}, []
+        holder.earlier = was_here
         surroundings = self._surroundings(jug, None)
         walk.steps.append(
             StepTrace(number, f"{step.kind} {step.vessel} into {filtrate_name}", filtrate_name, None, None, "", None, None, None, jug.content, surroundings,

@@ -47,12 +47,12 @@ def debye_hueckel_slope(temperature_C: float) -> float:
 
 def ln_gamma_unit_charge(ionic_strength: FloatArray, slope: float) -> tuple[FloatArray, FloatArray]:
     """ln of the activity coefficient for z^2 = 1, and its derivative by I. Shapes as ``ionic_strength`` (mol/kg)."""
-    held = ionic_strength >= DAVIES_HELD_FROM
-    strength = np.minimum(np.maximum(ionic_strength, 0.0), DAVIES_HELD_FROM)
+    strength = np.minimum(ionic_strength, DAVIES_HELD_FROM)  # where the slope is zero by itself
     root = np.sqrt(strength)
-    value = root / (1.0 + root) - DAVIES_LINEAR * strength
-    derivative = np.where(held, 0.0, 0.5 / (np.maximum(root, 1e-6) * (1.0 + root) ** 2) - DAVIES_LINEAR)
-    return -_LN10 * slope * value, -_LN10 * slope * derivative
+    above = 1.0 + root
+    value = (-_LN10 * slope) * (root / above - DAVIES_LINEAR * strength)
+    derivative = (-_LN10 * slope) * (0.5 / (np.maximum(root, 1e-6) * above**2) - DAVIES_LINEAR)
+    return value, derivative
 
 
 def ln_gamma_neutral(ionic_strength: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -65,7 +65,11 @@ def ln_gamma_neutral(ionic_strength: FloatArray) -> tuple[FloatArray, FloatArray
 def ln_water_activity(sum_molality: FloatArray) -> tuple[FloatArray, FloatArray]:
     """ln of the activity of water, and its derivative by the sum of molalities (mol/kg)."""
     linear = 1.0 - WATER_SLOPE * np.minimum(sum_molality, WATER_LINEAR_TO)
-    slope = -WATER_SLOPE / (1.0 - WATER_SLOPE * WATER_LINEAR_TO)
-    beyond = np.clip(sum_molality - WATER_LINEAR_TO, 0.0, WATER_HELD_FROM - WATER_LINEAR_TO)
-    derivative = np.where(sum_molality < WATER_LINEAR_TO, -WATER_SLOPE / linear, slope)
-    return np.log(linear) + slope * beyond, np.where(sum_molality >= WATER_HELD_FROM, 0.0, derivative)
+    derivative = -WATER_SLOPE / linear
+    value = np.log(linear)
+    beyond = sum_molality > WATER_LINEAR_TO
+    if beyond.any():
+        past = np.minimum(sum_molality, WATER_HELD_FROM) - WATER_LINEAR_TO
+        value = np.where(beyond, value + derivative * past, value)
+        derivative = np.where(sum_molality >= WATER_HELD_FROM, 0.0, derivative)
+    return value, derivative

@@ -23,7 +23,9 @@ from carboy.chemistry.mass_action import (
     BoolArray,
     Constraints,
     IntArray,
+    Lanes,
     Medium,
+    State,
     Terms,
     Vessel,
     ln_pressures,
@@ -92,7 +94,7 @@ def solve(  # noqa: PLR0913
         if start is not None and start.network is network:
             solution.from_neighbour(start)
         for pace in _PACES:
-            left = np.flatnonzero(~solution.ended)
+            left = np.flatnonzero([reason != "" for reason in solution.reasons])
             if left.size == 0:
                 break
             solution.attempt(left, pace)
@@ -101,10 +103,10 @@ def solve(  # noqa: PLR0913
 
 # Tried in turn on the lanes that are left: more rough passes, shorter steps, stronger damping, other starts.
 _PACES = (
-    Pace(passes=20, rounds=12, turns=50, rate=0.8, longest=8.0),
-    Pace(passes=100, rounds=0, turns=120, rate=0.3, longest=3.0),
-    Pace(passes=200, rounds=0, turns=250, rate=0.2, longest=1.5, shift=-10.0),
-    Pace(passes=400, rounds=30, turns=400, rate=0.1, longest=1.0, shift=9.0),
+    Pace(passes=16, rounds=12, turns=50, rate=0.8, longest=8.0, close=1e-3),
+    Pace(passes=100, rounds=0, turns=120, rate=0.3, longest=3.0, close=1e-5),
+    Pace(passes=200, rounds=0, turns=250, rate=0.2, longest=1.5, close=1e-7, shift=-10.0),
+    Pace(passes=400, rounds=30, turns=400, rate=0.1, longest=1.0, close=1e-6, shift=9.0),
 )
 
 
@@ -118,7 +120,8 @@ class _Solution:
         self.lanes, self.scale = make_lanes(network, totals, water_mol, vessel)
         count = totals.shape[0]
         self.state = first_state(self.lanes)
-        self.ended = np.zeros(count, dtype=bool)
+        self.on_floor = np.zeros(count, dtype=bool)
+        self.reasons = ["not attempted"] * count
         self.iterations = np.zeros(count, dtype=np.intp)
 
     def attempt(self, which: IntArray, pace: Pace) -> None:
@@ -135,8 +138,7 @@ class _Solution:
         present = lanes.allowed & (state.phases / lanes.most > np.maximum(-excess, 0.0))
         ended, turns = finish(self.terms, lanes, state, present)
         self.iterations[which] += turns
-        self.ended[which] = ended
-        self.state.put(which, state)
+        self._keep(which, lanes, state, ended)
 
     def from_neighbour(self, start: Solved) -> None:
         """Finish from a solution nearby; lanes for which that fails are left to the full way."""
@@ -158,17 +160,28 @@ class _Solution:
         state.phases = np.where(lanes.allowed, phases, 0.0)
         ended, turns = finish(self.terms, lanes, state, state.phases > 0.0, most_turns=25)
         self.iterations[which] += turns
-        self.ended[which] = ended
+        self._keep(which, lanes, state, ended)
+
+    def _keep(self, which: IntArray, lanes: Lanes, state: State, ended: BoolArray) -> None:
+        """Take over the state of some lanes, judged afresh by its residuals."""
         self.state.put(which, state)
+        relative, excess, medium_error, left_kg = residuals(self.terms, lanes, state)
+        self.on_floor[which] = left_kg < lanes.least_water * (1.0 + 1e-9)
+        balance = np.abs(relative).max(axis=1)
+        over = np.where(lanes.allowed, excess, -1.0).max(axis=1)
+        held = lanes.allowed & (np.abs(state.phases) > 1e-9 * lanes.most)
+        under = np.where(held, np.where(state.phases < 0.0, np.inf, -excess), -1.0).max(axis=1)
+        for place, lane in enumerate(which):
+            measures = (float(part[place]) for part in (balance, over, under, medium_error))
+            self.reasons[lane] = _reason(bool(ended[place]), *measures)
 
     def outcome(self) -> Solved:
-        """The answer in the caller's units, judged afresh by its residuals."""
+        """The answer in the caller's units."""
         network, terms, lanes, state = self.network, self.terms, self.lanes, self.state
         scale = self.scale[:, None]
         species, solids = len(network.species), len(network.solids)
         medium = Medium.at(terms, state.strength, state.molality)
         amounts = term_amounts(terms, lanes, state, medium) * scale
-        relative, excess, medium_error, left_kg = residuals(terms, lanes, state)
         phases = np.maximum(state.phases, 0.0)
         pressures = np.exp(ln_pressures(terms, lanes, state, medium))
         if self.sealed:
@@ -176,15 +189,6 @@ class _Solution:
         else:
             total = np.maximum(pressures.sum(axis=1, keepdims=True), 1e-300)
             gas = pressures / total * phases[:, solids:] * scale
-        balance = np.abs(relative).max(axis=1, initial=0.0)
-        over = np.where(lanes.allowed, excess, -1.0).max(axis=1)
-        held = lanes.allowed & (np.abs(state.phases) > 1e-9 * lanes.most)
-        under = np.where(held, np.where(state.phases < 0.0, np.inf, -excess), -1.0).max(axis=1)
-        reasons = [
-            _reason(*(float(part[lane]) for part in (balance, over, under, medium_error)))
-            for lane in range(lanes.number.size)
-        ]
-        on_floor = left_kg < lanes.least_water * (1.0 + 1e-9)
         return Solved(
             network=network,
             amounts=amounts[:, :species],
@@ -197,10 +201,10 @@ class _Solution:
             log_activity=np.where(lanes.absent, -np.inf, state.x / LN10),
             saturation=np.where(lanes.allowed[:, :solids], ln_saturation(terms, lanes, state, medium) / LN10, -np.inf),
             bubbling=phases[:, solids] > 0.0,
-            converged=np.array([reason == "" for reason in reasons], dtype=bool),
-            reasons=reasons,
+            converged=np.array([reason == "" for reason in self.reasons], dtype=bool),
+            reasons=self.reasons,
             iterations=self.iterations,
-            outside_activity_range=(state.strength > TRUSTED_IONIC_STRENGTH) | on_floor,
+            outside_activity_range=(state.strength > TRUSTED_IONIC_STRENGTH) | self.on_floor,
         )
 
 
@@ -222,7 +226,7 @@ def _check(
         raise ValueError("the ambient pressure must be above zero")
 
 
-def _reason(balance: float, over: float, under: float, medium_error: float) -> str:
+def _reason(ended: bool, balance: float, over: float, under: float, medium_error: float) -> str:
     """Why a lane is not a solution, or nothing."""
     if not np.isfinite(balance + over + medium_error):
         return "the iteration went beyond the range of numbers"
@@ -232,6 +236,8 @@ def _reason(balance: float, over: float, under: float, medium_error: float) -> s
         return f"a solid or gas remains above saturation (log ratio {over / LN10:.1e})"
     if under > SUPERSATURATION:
         return "a solid or gas is held that would go back into solution"
+    if not ended:
+        return "the last stage did not settle"
     if medium_error > 1e-7:
         return f"the activity coefficients did not settle ({medium_error:.1e})"
     return ""

@@ -28,32 +28,36 @@ class HeatBook:
 
     def of_speciation(self, mixture: Mixture) -> Array:
         """kJ ``[L]`` of the mixture's species against its components at infinite dilution: acid/base steps, complexes, solids, gases, and
-        what concentrated acids and bases still have to give on dilution. Constants without an enthalpy count as athermal."""
+        what concentrated acids and bases still have to give on dilution. Constants without an enthalpy count as athermal.
+
+        A dilution table already holds the heat of ionisation of its own electrolyte (hydrogensulfate in sulfuric acid), so species made of
+        its two ions alone count only beyond the amount that the table covers.
+        """
+        held = self._undiluted(mixture)
         total = mixture.zeros()
         for group in (mixture.aqueous, mixture.solids, mixture.gases):
             for token, amount in group.items():
                 made = self.stock.formation.get(token)
                 if made is not None and made.enthalpy_formation is not None:
-                    total = total + made.enthalpy_formation * amount
-        return total + self._undiluted(mixture)
-
-    def _undiluted(self, mixture: Mixture) -> Array:
-        """kJ held by electrolytes that are not yet dilute, beyond infinite dilution."""
+                    covered = sum((n for table, n in held if self._own_pair(token, table)), mixture.zeros())
+                    total = total + made.enthalpy_formation * np.maximum(amount - covered, 0.0)
+        ions = sum((n for _, n in held), mixture.zeros())
         water = mixture.total(WATER)
-        left = {token: mixture.total(token).copy() for token in mixture.amounts}
-        held: list[tuple[Enthalpy, Array]] = []
-        ions = mixture.zeros()
-        for table in self.stock.index.dilution:
-            n = self._share(table, left, mixture)
-            held.append((table, n))
-            ions = ions + n
-        total = mixture.zeros()
+        ratio = np.divide(water, ions, out=np.zeros_like(water), where=ions > 0)
         for table, n in held:
             if np.any(n > 0):
-                ratio = np.divide(water, ions, out=np.zeros_like(water), where=ions > 0)
                 grid = sorted(table.points)
                 total = total + n * np.interp(ratio, [point[0] for point in grid], [point[1] for point in grid])
         return total
+
+    def _own_pair(self, token: str, table: Enthalpy) -> bool:
+        parts = {part for part in self.stock.components_of(token) if part != WATER}
+        return len(parts) > 1 and parts <= {part for part in self.stock.yield_of(table.electrolyte) if part != WATER}
+
+    def _undiluted(self, mixture: Mixture) -> list[tuple[Enthalpy, Array]]:
+        """mol ``[L]`` of each electrolyte with a dilution table that the ions can make up, in the order of the tables."""
+        left = {token: mixture.total(token).copy() for token in mixture.amounts}
+        return [(table, self._share(table, left, mixture)) for table in self.stock.index.dilution]
 
     def _share(self, table: Enthalpy, left: dict[str, Array], mixture: Mixture) -> Array:
         """mol of an electrolyte that the ions left can make up; takes them out of ``left``."""

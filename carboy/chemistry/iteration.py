@@ -38,9 +38,10 @@ BALANCE = 1e-9  # of the gross terms
 SUPERSATURATION = 1e-6 * np.log(10.0)  # in ln
 _TRACE = 1e-12  # mol of a phase, of the most that could form, below which its sign does not matter
 _LEAST_CENTRE = 1e-9
-_SHRINK = 0.15
-_TIE = 0.03
-_CLOSE = 1e-2  # relative error of balances and complementarity at which the interior point hands over
+_PATIENCE = 8  # turns of the finish without a change of phases
+_LAST_STEP = 1e-7  # of an ln activity; the error after a Newton step is of the order of its square
+_SHRINK = 0.05  # of the centring, from turn to turn
+_TIE = 0.02  # of the error of the balances, below which the centring does not go
 
 
 @dataclass(frozen=True)
@@ -52,6 +53,7 @@ class Pace:
     turns: int  # of the interior point, at most
     rate: float  # share by which ionic strength and water follow at each turn
     longest: float  # largest step of an ln activity
+    close: float  # relative error of balances and complementarity at which the interior point hands over
     shift: float = 0.0  # of the first guess of ln a(H+)
 
 
@@ -180,7 +182,7 @@ def interior_point(terms: Terms, lanes: Lanes, state: State, pace: Pace) -> IntA
         off = np.where(lanes.allowed, held.excess + slack, 0.0)
         gaps = state.phases * slack
         gap = (gaps / lanes.most).max(axis=1)
-        done = (error < _CLOSE) & (gap < _CLOSE) & (np.abs(off).max(axis=1) < _CLOSE)
+        done = (error < 10.0 * pace.close) & (gap < pace.close) & (np.abs(off).max(axis=1) < pace.close)
         if turn and done.any():
             whole.put(live[done], state.take(done))
             turns[live[done]] = turn
@@ -260,8 +262,8 @@ def _admit(rows: FloatArray, phases: FloatArray, present: BoolArray, new: int) -
     """Add a phase to those present in one lane; where it is made of the same things as they are, one of them makes
     room.
 
-    ``rows`` [K, C]. The one that leaves is the first to be used up as the new one forms (the ratio test of linear
-    programming).
+    ``rows`` [K, C + 1] are the components and water of one mol. The one that leaves is the first to be used up as the
+    new one forms (the ratio test of linear programming).
     """
     old = np.flatnonzero(present)
     present[new] = True
@@ -292,16 +294,18 @@ class Elimination:
     free: FloatArray  # [L, C, C]: column c: change of all ln activities with that of free component c; zero for pivots
     pivot: FloatArray  # [L, A, C]: 1 at the pivot of each reduced phase
     reduced: FloatArray  # [L, A, M]: the reduced phases as sums of solids
+    hydration: FloatArray  # [L, M]: a sum of solids that takes up one H2O and nothing else; zero where there is none
 
     @classmethod
-    def of(cls, solid_nu: FloatArray, present: BoolArray, order: FloatArray, weight: FloatArray) -> Elimination:
+    def of(cls, terms: Terms, present: BoolArray, order: FloatArray, weight: FloatArray) -> Elimination:
         """Eliminate the solids of ``present`` [L, M], those of the largest ``order`` [L, M] first.
 
-        The pivot is the component of least ``weight`` [L, C]. Solids that depend on earlier ones are struck from
-        ``present``.
+        The pivot is the component of least ``weight`` [L, C]. A solid that differs from earlier ones by water alone, a
+        hydrate beside its anhydrous form, fixes the activity of water; one that does not even differ by that is struck
+        from ``present``.
         """
         lanes, solids = present.shape
-        size = solid_nu.shape[1]
+        solid_nu, size = terms.solid_nu, terms.size
         most = int(present.sum(axis=1).max(initial=0))
         every = np.arange(lanes)
         sequence = np.argsort(np.where(present, -order, np.inf), axis=1)[:, :most]
@@ -311,13 +315,19 @@ class Elimination:
         for step in range(most):
             reduced[every, step, sequence[:, step]] = here[:, step]
         pivot = np.zeros((lanes, most, size))
+        hydration = np.zeros((lanes, solids))
         for step in range(most):
             row = rows[:, step]
             usable = np.abs(row) > 1e-9
             column = np.where(usable, weight, np.inf).argmin(axis=1)
             found = usable[every, column]
             lost = here[:, step] & ~found
-            present[every[lost], sequence[lost, step]] = False
+            for lane in np.flatnonzero(lost):
+                water = float(reduced[lane, step] @ terms.solid_water)
+                if abs(water) > 1e-9 and not hydration[lane].any():
+                    hydration[lane] = reduced[lane, step] / water
+                else:
+                    present[lane, sequence[lane, step]] = False
             divisor = np.where(found, row[every, column], 1.0)
             rows[:, step] = np.where(found[:, None], row / divisor[:, None], 0.0)
             reduced[:, step] = np.where(found[:, None], reduced[:, step] / divisor[:, None], 0.0)
@@ -332,11 +342,11 @@ class Elimination:
         free = -pivot.swapaxes(1, 2) @ np.where(taken[:, None, :], 0.0, rows)
         place = np.arange(size)
         free[:, place, place] += ~taken
-        return cls(free, pivot, reduced)
+        return cls(free, pivot, reduced, hydration)
 
     def take(self, which: BoolArray) -> Elimination:
         """These lanes only."""
-        return Elimination(self.free[which], self.pivot[which], self.reduced[which])
+        return Elimination(self.free[which], self.pivot[which], self.reduced[which], self.hydration[which])
 
 
 def finish(
@@ -371,7 +381,7 @@ def finish(
         if elimination is None:
             weight = np.where(lanes.absent, np.inf, pairs[:, square, square])
             filled = state.phases[:, :solids] / lanes.most[:, :solids]
-            elimination = Elimination.of(terms.solid_nu, present[:, :solids], filled, weight)
+            elimination = Elimination.of(terms, present[:, :solids], filled, weight)
             state.phases[~present] = 0.0
         free, pivot, reduced = elimination.free, elimination.pivot, elimination.reduced
         bubbling, bubbled = present[:, -1], np.where(present[:, -1], state.phases[:, -1], 0.0)
@@ -382,24 +392,33 @@ def finish(
             pairs += bubbled[:, None, None] * spread
         kg = np.exp(state.ln_water)
         both = amounts @ terms.sums
-        sums = np.delete(both, np.s_[size : 2 * size], axis=1)
-        dissolved = sums[:, :size] + bubbled[:, None] * row
-        strength_now, molality_now = 0.5 * sums[:, size] / kg, sums[:, size + 3] / kg
-        # Solids from the balances of their pivots.
-        pivots = vector_matrix(lanes.totals - dissolved, pivot.swapaxes(1, 2))
-        state.phases[:, :solids] = vector_matrix(pivots, reduced)
-        water_of_reduced = reduced @ terms.solid_water
-        in_phases = state.phases[:, :solids] @ terms.solid_water + bubbled * row_water
-        # The balances without solids; totals and dissolved are reduced apart, so that small differences stay exact.
-        reduced_totals = vector_matrix(lanes.totals, free)
+        in_species, sums = both[:, :size], both[:, 2 * size :]  # by component; z^2, neutral, water, aqueous
+        dissolved = in_species + bubbled[:, None] * row
+        strength_now, molality_now = 0.5 * sums[:, 0] / kg, sums[:, 3] / kg
+        in_phases = bubbled * row_water
+        balance_totals, balance_dissolved = lanes.totals, dissolved
+        gross = both[:, size : 2 * size] + np.abs(bubbled[:, None] * row)
+        with_solids = pivot.shape[1] > 0
+        if with_solids:
+            # Solids from the balances of their pivots.
+            pivots = vector_matrix(lanes.totals - dissolved, pivot.swapaxes(1, 2))
+            state.phases[:, :solids] = vector_matrix(pivots, reduced)
+            water_of_reduced = reduced @ terms.solid_water
+            in_phases = in_phases + state.phases[:, :solids] @ terms.solid_water
+            # The balances without solids; totals and dissolved are reduced apart, so that small differences stay exact.
+            balance_totals, balance_dissolved = vector_matrix(lanes.totals, free), vector_matrix(dissolved, free)
+            gross = vector_matrix(gross, np.abs(free))
         right = np.zeros((count, n))
-        right[:, :size] = reduced_totals - vector_matrix(dissolved, free)
-        gross = np.abs(reduced_totals) + vector_matrix(
-            both[:, size : 2 * size] + np.abs(bubbled[:, None] * row), np.abs(free)
-        )
+        right[:, :size] = balance_totals - balance_dissolved
+        gross = gross + np.abs(balance_totals)
         error = (np.abs(right[:, :size]) / np.maximum(gross, 1e-300)).max(axis=1)
-        water_off = lanes.water - kg / KG_PER_MOL_WATER - sums[:, size + 2] - in_phases
-        floor = KG_PER_MOL_WATER * (water_off + kg / KG_PER_MOL_WATER) < lanes.least_water
+        water_off = lanes.water - kg / KG_PER_MOL_WATER - sums[:, 2] - in_phases
+        hydrates = elimination.hydration.any(axis=1)
+        floor = ~hydrates & (KG_PER_MOL_WATER * (water_off + kg / KG_PER_MOL_WATER) < lanes.least_water)
+        if hydrates.any():
+            # Where a hydrate and its anhydrous form are both there, the balance of water says how much of each.
+            state.phases[:, :solids] += np.where(hydrates, water_off, 0.0)[:, None] * elimination.hydration
+            water_off = np.where(hydrates, 0.0, water_off)
         # The matrix in all components: d ln(term) = features . (dx, -ion' dI, -neutral' dI, water' dM, dlnw).
         down = -medium.ion_slope[:, None] * pairs[:, :, size] - medium.neutral_slope[:, None] * pairs[:, :, size + 1]
         matrix = np.zeros((count, n, n))
@@ -407,7 +426,7 @@ def finish(
         matrix[:, :size, at_b] = row
         matrix[:, :size, at_i] = down[:, :size]
         matrix[:, :size, at_m] = medium.water_slope[:, None] * pairs[:, :size, size + 2]
-        matrix[:, :size, at_w] = sums[:, :size]
+        matrix[:, :size, at_w] = in_species
         matrix[:, at_b, :size] = row
         matrix[:, at_b, at_m] = medium.water_slope * row_water
         right[:, at_b] = -held.excess[:, -1]
@@ -424,23 +443,28 @@ def finish(
         matrix[:, at_w, at_b] = row_water
         matrix[:, at_w, at_i] = down[:, size + 2]
         matrix[:, at_w, at_m] = medium.water_slope * pairs[:, size + 2, size + 2]
-        matrix[:, at_w, at_w] = kg / KG_PER_MOL_WATER + sums[:, size + 2]
+        matrix[:, at_w, at_w] = kg / KG_PER_MOL_WATER + sums[:, 2]
         right[:, at_w] = water_off
-        # To free components: columns by dx = free dy + given + by_water dM, rows by the transpose.
-        excess = held.excess[:, :solids]
-        given = -vector_matrix(matrix_vector(reduced, np.where(present[:, :solids], excess, 0.0)), pivot)
-        by_water = -medium.water_slope[:, None] * vector_matrix(water_of_reduced, pivot)
-        balances = matrix[:, :size].copy()
-        matrix[:, at_w] -= vector_matrix(vector_matrix(water_of_reduced, pivot), balances)
-        right_balances = matrix_vector(balances[:, :, :size], given)
-        right[:, :size] -= vector_matrix(right_balances, free)
-        right[:, at_b:at_w] -= matrix_vector(matrix[:, at_b:at_w, :size], given)
-        right[:, at_w] -= (matrix[:, at_w, :size] * given).sum(axis=1)
-        matrix[:, :size] = free.swapaxes(1, 2) @ balances
-        matrix[:, :, at_m] += matrix_vector(matrix[:, :, :size], by_water)
-        matrix[:, :, :size] = matrix[:, :, :size] @ free
+        if with_solids:
+            # To free components: columns by dx = free dy + given + by_water dM, rows by the transpose.
+            excess = held.excess[:, :solids]
+            given = -vector_matrix(matrix_vector(reduced, np.where(present[:, :solids], excess, 0.0)), pivot)
+            water_at_pivots = vector_matrix(water_of_reduced, pivot)
+            by_water = -medium.water_slope[:, None] * water_at_pivots
+            balances = matrix[:, :size].copy()
+            matrix[:, at_w] -= vector_matrix(water_at_pivots, balances)
+            water_row = matrix[:, at_w].copy()
+            right[:, :size] -= vector_matrix(matrix_vector(balances[:, :, :size], given), free)
+            right[:, at_b:] -= matrix_vector(matrix[:, at_b:, :size], given)
+            matrix[:, :size] = free.swapaxes(1, 2) @ balances
+            matrix[:, :, at_m] += matrix_vector(matrix[:, :, :size], by_water)
+            matrix[:, :, :size] = matrix[:, :, :size] @ free
         matrix[:, at_w] *= KG_PER_MOL_WATER
         right[:, at_w] *= KG_PER_MOL_WATER
+        if hydrates.any():
+            matrix[hydrates, at_w] = 0.0
+            matrix[hydrates, at_w, at_m] = medium.water_slope[hydrates]
+            right[hydrates, at_w] = -(elimination.hydration * excess).sum(axis=1)[hydrates]
         if floor.any():
             matrix[floor, at_w] = 0.0
             matrix[floor, at_w, at_w] = 1.0
@@ -466,14 +490,18 @@ def finish(
         step = column_scale * _solve(matrix, right)
         if not np.isfinite(step).all():
             step = np.nan_to_num(step, nan=0.0, posinf=1.0, neginf=-1.0)
-        step[:, :size] = matrix_vector(free, step[:, :size]) + given + by_water * step[:, at_m, None]
+        if with_solids:
+            step[:, :size] = matrix_vector(free, step[:, :size]) + given + by_water * step[:, at_m, None]
         longest = np.abs(step[:, :size]).max(axis=1)
         part = np.minimum(1.0, 3.0 / np.maximum(longest, 1e-300))
         part = np.minimum(part, 0.7 / np.maximum(np.abs(step[:, at_w]), 1e-300))
-        close = (longest < 1e-7) & (error < 1e-8) & (medium_error < 1e-9)
+        close = (longest < _LAST_STEP) & (error < 0.1 * _LAST_STEP) & (medium_error < 0.1 * _LAST_STEP)
         state.x += part[:, None] * step[:, :size]
-        gained = vector_matrix(matrix_vector(balances, part[:, None] * step), pivot.swapaxes(1, 2))
-        state.phases[:, :solids] -= vector_matrix(gained, reduced)
+        if with_solids:
+            gained = vector_matrix(matrix_vector(balances, part[:, None] * step), pivot.swapaxes(1, 2))
+            state.phases[:, :solids] -= vector_matrix(gained, reduced)
+            released = np.where(hydrates, (water_row * step).sum(axis=1) * part, 0.0)
+            state.phases[:, :solids] -= released[:, None] * elimination.hydration
         state.phases[:, -1] = np.where(bubbling, bubbled + part * step[:, at_b], 0.0)
         state.strength = np.clip(
             state.strength + part * step[:, at_i], 0.2 * state.strength, 5.0 * state.strength + 0.1
@@ -488,16 +516,19 @@ def finish(
         come = lanes.allowed & ~present & (held.excess > np.where(close, 0.1 * SUPERSATURATION, 0.1)[:, None])
         go = present & (state.phases < -_TRACE * lanes.most)
         change = come.any(axis=1) | go.any(axis=1)
-        settle = near & (turn > last_change) & change
+        # A lane that gets nowhere lacks a phase, as a rule.
+        stuck = (turn - last_change >= _PATIENCE) & come.any(axis=1)
+        settle = ((near & (turn > last_change)) | stuck) & change
         if settle.any():
             for lane in np.flatnonzero(settle):
-                if go[lane].any():
+                if go[lane].any() and not stuck[lane]:
                     worst = int(np.argmin(np.where(go[lane], state.phases[lane] / lanes.most[lane], np.inf)))
                     present[lane, worst] = False
                     state.phases[lane, worst] = 0.0
                 else:
                     worst = int(np.argmax(np.where(come[lane], held.excess[lane], -np.inf)))
-                    rows = np.vstack([terms.solid_nu, held.gas_row[lane]])
+                    waters = np.append(terms.solid_water, held.gas_water[lane])
+                    rows = np.column_stack([np.vstack([terms.solid_nu, held.gas_row[lane]]), waters])
                     _admit(rows, state.phases[lane], present[lane], worst)
                 last_change[lane] = turn
             elimination = None

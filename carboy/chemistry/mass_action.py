@@ -199,10 +199,9 @@ def make_lanes(network: Network, totals: FloatArray, water_mol: FloatArray, vess
 
 def _most(nu: FloatArray, totals: FloatArray) -> FloatArray:
     """[L, rows]: total over coefficient of the scarcest component other than H+."""
-    shares = np.full((totals.shape[0], nu.shape[0]), np.inf)
-    for column in range(1, nu.shape[1]):
-        rows = np.flatnonzero(nu[:, column] > 0.0)
-        shares[:, rows] = np.minimum(shares[:, rows], totals[:, column, None] / nu[rows, column])
+    uses = nu > 0.0
+    uses[:, 0] = False
+    shares = np.where(uses, totals[:, None, :] / np.where(uses, nu, 1.0), np.inf).min(axis=2)
     return np.where(np.isfinite(shares), shares, 1.0)
 
 

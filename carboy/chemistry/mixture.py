@@ -82,7 +82,8 @@ class Mixture:
             if token != PROTON:
                 np.maximum(totals[:, column], 0.0, out=totals[:, column])
         start = self.hint if self.hint is not None and self.hint.network is network else None
-        return solve(network, totals, self.total(WATER), headspace_L=self.headspace_L, start=start)
+        water = np.maximum(self.total(WATER), 0.0)  # a dry salt that takes up water may ask for more than the first drop brings
+        return solve(network, totals, water, headspace_L=self.headspace_L, start=start)
 
     @property
     def pH(self) -> Array:
@@ -183,7 +184,7 @@ class Mixture:
 
     @property
     def water_kg(self) -> Array:
-        return self.total(WATER) * WATER_MOLAR_MASS / 1000.0
+        return np.maximum(self.total(WATER), 0.0) * WATER_MOLAR_MASS / 1000.0
 
     @property
     def water_fraction(self) -> Array:

@@ -1,1 +1,1 @@
-"""Package."""
+"""The commands: each is parsing, one public call, one renderer."""

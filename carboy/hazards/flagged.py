@@ -9,6 +9,7 @@ import numpy as np
 
 from carboy.bench.trace import Course, StepTrace
 from carboy.chemistry.mixture import TRACE, Array
+from carboy.chemistry.relations import part_of
 from carboy.chemistry.stock import ChemicalStock
 from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Scale, courses, graded
 from carboy.hazards.numbers import figures
@@ -120,7 +121,7 @@ def _weight_of_firing(flag: Flag, firing: Firing, course: Course, stock: Chemica
     made = dict(firing.reaction.products)
     used = dict(firing.reaction.reactants)
     term = flag.weighed_by or (flag.terms[0] if flag.terms else "")
-    token = firing.bound.get(term, term)
+    token = named_by(term, firing.bound, stock)
     if token in made or token in used:
         moles = (made.get(token) or used[token]) * firing.extent
         return moles * stock.molar_mass(token), moles
@@ -138,9 +139,11 @@ def class_drafts(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock
             flag = raised.flag
             if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
                 continue
-            if flag.kind in ("heat", "foam", "remobilised") or (flag.kind == "pressure" and trace.cover != "sealed"):
+            if flag.kind in ("heat", "foam", "remobilised") or (where == "contact" and flag.kind in _END_STATE_ONLY):
                 continue
-            if flag.kind in GAS_KINDS and flag.terms and all(f"{_gas_of(term, raised.bound)}(g)" in stock.formation for term in flag.terms):
+            if flag.kind == "pressure" and (trace.cover != "sealed" or where == "contact" or any(one.kind == "pressure" for one in computed)):
+                continue
+            if flag.kind in GAS_KINDS and flag.terms and all(f"{_gas_of(term, raised.bound, stock)}(g)" in stock.formation for term in flag.terms):
                 continue  # a gas whose amount is computed, and is too little for a line
             draft = _class_draft(raised, where, trace, course, stock, scale, standing)
             if draft is None:
@@ -152,8 +155,16 @@ def class_drafts(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock
     return list(drafts.values())
 
 
-def _gas_of(term: str, bound: dict[str, str]) -> str:
-    return bound.get(term, term).removesuffix("(g)")
+def named_by(term: str, bound: dict[str, str], stock: ChemicalStock) -> str:
+    """The token that a flag's term stands for: a species, a bound variable, or a relation of one (``?m.metal``)."""
+    variable, _, part = term.partition(".")
+    if variable not in bound:
+        return term
+    return part_of(bound[variable], part, stock) or bound[variable]
+
+
+def _gas_of(term: str, bound: dict[str, str], stock: ChemicalStock) -> str:
+    return named_by(term, bound, stock).removesuffix("(g)")
 
 
 def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock) -> dict[tuple[str, tuple[tuple[str, str], ...]], float]:
@@ -180,7 +191,7 @@ def _lend(raised: Raised, where: str, computed: list[Draft], stock: ChemicalStoc
         if draft.kind != raised.flag.kind or draft.where != where:
             continue
         if raised.flag.kind in GAS_KINDS:
-            mine = {f"{_gas_of(term, raised.bound)}(g)" for term in raised.flag.terms}
+            mine = {f"{_gas_of(term, raised.bound, stock)}(g)" for term in raised.flag.terms}
             if not mine.intersection(draft.tokens):
                 continue
         if raised.flag.kind == "remobilised" and raised.flag.terms and not _same_element(raised, draft, stock):
@@ -202,7 +213,7 @@ def _same_element(raised: Raised, draft: Draft, stock: ChemicalStock) -> bool:
         record = stock.index.species.get(token)
         return set() if record is None else {element for element in record.atoms if element not in ("H", "O", "C", "N", "S", "Cl", "I")}
 
-    mine = set().union(*(elements(raised.bound.get(term, term)) for term in raised.flag.terms))
+    mine = set().union(*(elements(named_by(term, raised.bound, stock)) for term in raised.flag.terms))
     theirs = set().union(*(elements(token) for token in draft.tokens))
     return not mine or bool(mine & theirs)
 
@@ -240,7 +251,7 @@ def _class_draft(  # noqa: PLR0913
     levels = course.table(levels)
     if not levels.any():
         return None
-    terms = tuple(raised.bound.get(term, term) for term in flag.terms) or tuple(dict.fromkeys(raised.bound.values()))
+    terms = tuple(named_by(term, raised.bound, stock) for term in flag.terms) or tuple(dict.fromkeys(raised.bound.values()))
     names = {variable: name_of(token, stock) for variable, token in raised.bound.items()}
     subject = flag.words or ", ".join(name_of(term, stock) for term in terms)
     weight = float(grams.max())

@@ -134,7 +134,11 @@ def _standing(trace: StepTrace, course: Course, token: str, limit_atm: float, wh
     molecules, leaving, pressure = (np.zeros(course.mixture.lanes) for _ in range(3))
     ones = np.ones(course.points)
     for mixture, along_path in ((trace.before, ones), (trace.added, course.fractions)):
-        if mixture is None or not mixture.amounts or mixture.neat:
+        if mixture is None or not mixture.amounts:
+            continue
+        if mixture.neat:
+            if _gives_by_itself(mixture, token):
+                leaving, pressure = leaving + np.inf, pressure + np.inf
             continue
         own = load(mixture, token)
         weight = np.tile(along_path if where == "path" else ones, mixture.lanes)
@@ -145,6 +149,17 @@ def _standing(trace: StepTrace, course: Course, token: str, limit_atm: float, wh
         leaving = leaving + np.repeat(own.leaving(limit_atm), course.points) * weight
         pressure = np.maximum(pressure, np.repeat(own.pressure, course.points))
     return molecules, leaving, pressure
+
+
+def _gives_by_itself(mixture: Mixture, token: str) -> bool:
+    """Whether a neat liquid or gas fumes with ``token`` of its own (glacial acetic acid with its vapour)."""
+    wanted = {part: count for part, count in mixture.stock.components_of(token).items() if part != WATER}
+    for name in mixture.neat:
+        if mixture.stock.index.substances[name].state in ("l", "g"):
+            brought = mixture.stock.yield_of(name)
+            if all(brought.get(part, 0.0) * np.sign(count) >= abs(count) - 1e-9 for part, count in wanted.items()):
+                return True
+    return False
 
 
 @dataclass(frozen=True)
@@ -197,7 +212,9 @@ def _levels(stick: Yardstick, now: Load, leaving: Array, scale: Scale, sealed: b
         severe = severe & (over > stick.ppm)
     if stick.kind == "flammable-gas" and sealed:
         severe = severe | (over >= scale["closed-vessel-flammable-fraction"] * stick.ppm)
-    return np.where(severe & stick.danger, DANGER, levels), air
+    if not stick.danger:  # only a short-term limit is published: the amount alone tells what is grave
+        severe = leaving >= scale["unlimited-gas-danger"]
+    return np.where(severe, DANGER, levels), air
 
 
 def _draft(  # noqa: PLR0913

@@ -119,6 +119,9 @@ class Judge:
         for sort, equation, left, right in draft.equations:
             token = draft.tokens[0] if draft.kind != "remobilised" else right[0]
             target = self.stock.dissolved_form.get(token, token)
+            if target in self.index.species and self.stock.kind(target) == "component":
+                nodes += record.sources(vessel, target)  # made by a rule or brought by a label as it is
+                continue
             drawn = consumed_for(self.stock, target, max(float(draft.amount.max()) if draft.amount is not None else 0.0, 1e-12))
             watching = rule if sort == "equilibrium" and draft.rules and not draft.rules[0].does else "equilibrium"
             nodes.append(record.fired(vessel, watching, equation, drawn, {target: 1.0}, number, sort="equilibrium", shown=(left, right)))

@@ -14,7 +14,7 @@ from carboy.model.report import Measure
 from carboy.reasoning.equation import formation_equation
 from carboy.text.formulas import molar_mass
 
-_GONE = 0.01  # share of the solid that must have gone back before it is told
+_NOTE_SHARE = 0.1  # of the limit: below it a metal going back is not worth a line
 
 
 def element_of(report_key: str) -> str:
@@ -66,11 +66,21 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
                 held = np.maximum(held, first[:, None])
             volume = course.table(mixture.volume_L)
             back = np.minimum(np.maximum(held - solid, 0.0), free)
-            back = np.where(back > _GONE * held, back, 0.0)
+            dose = course.fractions if where == "path" and trace.added is not None else np.zeros(course.points)
+            came = 0.0
+            if trace.added is not None and where == "path":
+                own = sum((trace.added.dissolved(token) * counts[token] for token in tokens), trace.added.zeros())
+                came = own[:, None] * dose[None, :]
+            least = np.minimum.accumulate(free, axis=1)
+            if before is not None:
+                start = sum((before.dissolved(token) * counts[token] for token in tokens), before.zeros())
+                least = np.minimum(least, start[:, None])
+            risen = free > scale["markedly-worse-factor"] * (least + came)
+            back = np.where(risen, back, 0.0)
             strength = np.divide(back * weight * 1000, volume, out=np.zeros_like(back), where=volume > 0)
             dissolved = np.divide(free * weight * 1000, volume, out=np.zeros_like(back), where=volume > 0)
             magnitude = limit.value.magnitude
-            levels = graded(strength, _GONE * magnitude, magnitude, scale["remobilised-danger-factor"] * magnitude)
+            levels = graded(strength, _NOTE_SHARE * magnitude, magnitude, scale["remobilised-danger-factor"] * magnitude)
             if not levels.any():
                 continue
             lane = int(np.argmax(strength[0]))

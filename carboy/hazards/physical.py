@@ -65,9 +65,9 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     gas = course.mixture.zeros()
     most: dict[str, float] = {}
     for token, amount in course.mixture.gases.items():
-        if stock.dissolved_form.get(token, token) not in slow:
-            gas = gas + amount
-            most[token] = float(amount.max())
+        pace = scale["foam-share-of-slow-gas"] if stock.dissolved_form.get(token, token) in slow else 1.0
+        gas = gas + pace * amount
+        most[token] = pace * float(amount.max())
     litres = course.table(gas) * MOLAR_VOLUME
     if not np.any(litres > 0):
         return []

@@ -1,4 +1,6 @@
-"""Checked facts -> the compiled index: composition and balance of everything, equilibria in components, names, closed hierarchy."""
+"""Checked facts -> the compiled index: composition and balance of everything, equilibria in components, names, closed
+hierarchy.
+"""
 
 from __future__ import annotations
 
@@ -144,7 +146,9 @@ class _Compiler:
             weight = self._value(node, ":atomicWeight")
             known = read.get(symbol)
             if known is None or known.weight != (weight.magnitude if weight else None):
-                self._report(node, "the formula reader takes this line otherwise; keep each element on one line as in the others")
+                self._report(
+                    node, "the formula reader takes this line otherwise; keep each element on one line as in the others"
+                )
 
     def _classes(self) -> tuple[dict[str, ChemicalClass], dict[str, tuple[str, ...]]]:
         classes, synonyms = {}, {}
@@ -176,7 +180,7 @@ class _Compiler:
     # --- species
 
     def _declared_species(self) -> None:
-        """Components, solids and gases; components first, because their names may be ligands in the tokens of others."""
+        """Components, solids, gases; components first, because their names may be ligands in the tokens of others."""
         nodes = self.facts.of_type(":Component", ":Solid", ":Gas")
         nodes.sort(key=lambda node: node.type != ":Component")
         for node in nodes:
@@ -290,7 +294,9 @@ class _Compiler:
                 continue
             if item.product in printed:
                 first = nodes[item.product]
-                self._report(node, f"{item.product} is formed twice; the first is in {first.problem('').place}: {first.name}")
+                self._report(
+                    node, f"{item.product} is formed twice; the first is in {first.problem('').place}: {first.name}"
+                )
                 continue
             printed[item.product], nodes[item.product] = item, node
         components = {token for token, item in self.species.items() if item.component}
@@ -355,7 +361,11 @@ class _Compiler:
         for token, item in list(self.species.items()):
             if not item.component and token not in equilibria and item.phase in ("s", "g"):
                 self.species[token] = Species(
-                    **{name: getattr(item, name) for name in item.__struct_fields__ if name not in ("component", "report_key")},
+                    **{
+                        name: getattr(item, name)
+                        for name in item.__struct_fields__
+                        if name not in ("component", "report_key")
+                    },
                     component=True,
                     report_key=item.report_key or token,
                 )
@@ -373,8 +383,10 @@ class _Compiler:
             other, ratio = part.ref(":substance"), part.number(":molPerMol")
             if other is not None and ratio is not None:
                 companions[other.local] = ratio
+        ion = node.ref(":ion")
         return Substance(
             id=key,
+            ion=ion.local if ion is not None else "",
             name=node.text("skos:prefLabel"),
             formula=node.text(":formula"),
             atoms=atoms,
@@ -426,7 +438,9 @@ class _Compiler:
         }
         if any(abs(value) > 1e-6 for value in left_over.values()):
             table = ", ".join(f"{symbol} {value:+g}" for symbol, value in left_over.items() if abs(value) > 1e-6)
-            self._report(node, f":dissolvesInto '{text}' is not balanced with {node.text(':formula')} and water: {table}")
+            self._report(
+                node, f":dissolvesInto '{text}' is not balanced with {node.text(':formula')} and water: {table}"
+            )
         total = yields.get(_WATER, 0.0) + water
         if abs(total) > 1e-9:
             yields[_WATER] = total
@@ -511,7 +525,9 @@ class _Compiler:
         def local(key: str) -> str:
             return ", ".join(ref.local for ref in node.refs(key))
 
-        return Enthalpy(local(":electrolyte"), local(":cation"), local(":anion"), tuple(sorted(points)), local(":source"))
+        return Enthalpy(
+            local(":electrolyte"), local(":cation"), local(":anion"), tuple(sorted(points)), local(":source")
+        )
 
     def _thresholds(self) -> dict[str, Threshold]:
         found = {}

@@ -21,7 +21,7 @@ class PrintedEquilibrium:
     enthalpy: Value | None = None
 
 
-class NotReducible(Exception):
+class NotReducibleError(Exception):
     """A formation cannot be brought to components; the text says why."""
 
 
@@ -30,9 +30,9 @@ def reduce_to_components(
 ) -> tuple[dict[str, Equilibrium], dict[str, str]]:
     """Substitute every species that is no component by its own formation: (product -> equilibrium, product -> why not).
 
-    From ``log10 K = sum(nu_i log10 a_i)`` follows the product's activity; a solid or gas among the reactants is substituted like
-    a dissolved species, because its activity obeys its own equilibrium. Enthalpies add in the same way and are None
-    as soon as one link has none.
+    From ``log10 K = sum(nu_i log10 a_i)`` follows the product's activity; a solid or gas among the reactants is
+    substituted like a dissolved species, because its activity obeys its own equilibrium. Enthalpies add in the same
+    way and are None as soon as one link has none.
     """
     by_product = {item.product: item for item in printed}
     done: dict[str, Equilibrium] = {}
@@ -42,14 +42,16 @@ def reduce_to_components(
         if product in done:
             return done[product]
         if product in faults:
-            raise NotReducible(f"it needs {product}, which cannot be reduced to components itself")
+            raise NotReducibleError(f"it needs {product}, which cannot be reduced to components itself")
         if product in trail:
-            raise NotReducible("its reactions go in a circle: " + " <- ".join((*trail[trail.index(product) :], product)))
+            raise NotReducibleError(
+                "its reactions go in a circle: " + " <- ".join((*trail[trail.index(product) :], product))
+            )
         item = by_product[product]
         net = item.equation.net
         side = net.get(product, 0.0)
         if abs(side) != 1:
-            raise NotReducible(f"{product} must stand in its reaction once, with coefficient 1")
+            raise NotReducibleError(f"{product} must stand in its reaction once, with coefficient 1")
         coefficients: dict[str, float] = {}
         log10_beta = side * item.log10_k.magnitude
         enthalpy = None if item.enthalpy is None else side * item.enthalpy.magnitude
@@ -61,7 +63,7 @@ def reduce_to_components(
                 coefficients[token] = coefficients.get(token, 0.0) + share
                 continue
             if token not in by_product:
-                raise NotReducible(f"{token} is neither a component nor formed by an equilibrium")
+                raise NotReducibleError(f"{token} is neither a component nor formed by an equilibrium")
             link = reduce(token, (*trail, product))
             log10_beta += share * link.log10_beta
             enthalpy = (
@@ -86,13 +88,14 @@ def reduce_to_components(
     for product in by_product:
         try:
             reduce(product, ())
-        except NotReducible as reason:
+        except NotReducibleError as reason:
             faults[product] = str(reason)
     return {product: done[product] for product in by_product if product in done}, faults
 
 
 def components_of(amounts: Mapping[str, float], index: Index) -> dict[str, float]:
-    """Amounts of species (mol) -> amounts of components (mol; of H+ and H2O they may be negative): ``OH-`` is ``H2O - H+``.
+    """Amounts of species (mol) -> amounts of components (mol; of H+ and H2O they may be negative): ``OH-`` is ``H2O -
+    H+``.
 
     Raises KeyError for a token that is neither a component nor formed by an equilibrium.
     """

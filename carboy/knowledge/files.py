@@ -16,14 +16,18 @@ SHAPES = "shapes.ttl"
 # Code that decides what the compiled index holds; a change there must not meet an index compiled before it.
 _PACKAGE = Path(__file__).resolve().parent.parent
 _COMPILING_CODE = (
-    *(f"knowledge/{name}.py" for name in ("cas", "compile", "equilibria", "folding", "loading", "naming", "vocabulary")),
+    *(
+        f"knowledge/{name}.py"
+        for name in ("cas", "compile", "equilibria", "folding", "loading", "naming", "vocabulary")
+    ),
     "text/formulas.py",
     "model/knowledge.py",
 )
 
 
 def read_files(path: Path | None = None) -> dict[str, bytes]:
-    """Name relative to the folder (with ``/``) -> bytes of every Turtle file, sorted by name; ``path`` None is the shipped kb/.
+    """Name relative to the folder (with ``/``) -> bytes of every Turtle file, sorted by name; ``path`` None is the
+    shipped kb/.
 
     Raises KnowledgeError for a folder without schema.ttl or a file that cannot be read.
     """
@@ -37,7 +41,9 @@ def read_files(path: Path | None = None) -> dict[str, bytes]:
 
 
 def digest(files: Mapping[str, bytes]) -> str:
-    """BLAKE2b of names and contents, of the carboy version and of the compiling code: equal only if the index would be equal."""
+    """BLAKE2b of names and contents, of the carboy version and of the compiling code: equal only if the index would
+    be equal.
+    """
     state = hashlib.blake2b(carboy.__version__.encode(), digest_size=20)
     for name in _COMPILING_CODE:
         code = _PACKAGE / name

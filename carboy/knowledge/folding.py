@@ -1,4 +1,5 @@
-"""Folding of names: what may differ between two spellings of one name is taken out, what tells two things apart is kept.
+"""Folding of names: what may differ between two spellings of one name is taken out, what tells two things apart is
+kept.
 
 Taken out: case, spaces, hyphens, apostrophes, Unicode forms, British or American spelling. Kept: every letter that
 carries chemistry (sulfide, sulfite) and oxidation numbers (``mercury(II)``).
@@ -9,7 +10,9 @@ from __future__ import annotations
 import re
 import unicodedata
 
-_GREEK = str.maketrans({"α": "alpha", "β": "beta", "γ": "gamma", "δ": "delta", "ε": "epsilon", "ω": "omega", "λ": "lambda"})
+_GREEK = str.maketrans(
+    {"α": "alpha", "β": "beta", "γ": "gamma", "δ": "delta", "ε": "epsilon", "ω": "omega", "λ": "lambda"}
+)
 _DASHES = str.maketrans(dict.fromkeys("‐‑‒–—−", "-"))
 _ROMAN = {1: "i", 2: "ii", 3: "iii", 4: "iv", 5: "v", 6: "vi", 7: "vii", 8: "viii"}
 _NUMERAL = r"(?:viii|vii|vi|iv|v|iii|ii|i|0)"
@@ -18,6 +21,7 @@ _IN_WORDS = re.compile(rf"(?<=[a-z])[\s-]+({_NUMERAL})(?=[\s-]|$)")
 _AS_CHARGE = re.compile(r"\(\s*([1-8])\s*\+\s*\)")
 # spelling: British forms to the ones that most labels have
 _SPELLINGS = (
+    (re.compile(r"['’‘´`]s\b"), ""),  # Fehling's solution is Fehling solution
     (re.compile("sulph"), "sulf"),
     (re.compile("aluminium"), "aluminum"),
     (re.compile("caesium"), "cesium"),

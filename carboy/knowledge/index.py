@@ -1,11 +1,12 @@
 """The compiled index: loaded from the cache if the files are unchanged, else compiled from Turtle.
 
-The cache is MessagePack of plain data (nothing of it can run), named by the digest of the files and led by a digest of itself.
-It may be deleted at any time; what cannot be read or written is passed over.
+The cache is MessagePack of plain data (nothing of it can run), named by the digest of the files and led by a digest
+of itself. It may be deleted at any time; what cannot be read or written is passed over.
 """
 
 from __future__ import annotations
 
+import gc
 import hashlib
 import os
 import tempfile
@@ -30,7 +31,7 @@ def cache_folder() -> Path:
     chosen = os.environ.get("CARBOY_CACHE")
     if chosen:
         return Path(chosen)
-    from platformdirs import user_cache_dir  # costs some milliseconds
+    from platformdirs import user_cache_dir  # noqa: PLC0415 - 30 ms
 
     return Path(user_cache_dir("carboy", appauthor=False))
 
@@ -51,11 +52,13 @@ def load_index(path: Path | None = None) -> Index:
 
 
 def graph(path: Path | None = None) -> Graph:
-    """The whole rdflib graph (facts and vocabulary), for queries and export. Raises KnowledgeProblems if a file is no Turtle."""
-    from rdflib import Graph
+    """The whole rdflib graph (facts and vocabulary), for queries and export. Raises KnowledgeProblems if a file is no
+    Turtle.
+    """
+    from rdflib import Graph  # noqa: PLC0415 - 0.15 s, not for a check that finds the cache
 
-    from carboy.knowledge.loading import parse_turtle
-    from carboy.knowledge.vocabulary import NAMESPACES
+    from carboy.knowledge.loading import parse_turtle  # noqa: PLC0415 - brings rdflib
+    from carboy.knowledge.vocabulary import NAMESPACES  # noqa: PLC0415
 
     graphs, problems = parse_turtle(read_files(path))
     if problems:
@@ -70,8 +73,8 @@ def graph(path: Path | None = None) -> Graph:
 
 
 def _compile(files: dict[str, bytes]) -> Index:
-    from carboy.knowledge.compile import compile_index  # brings rdflib, 0.15 s
-    from carboy.knowledge.loading import load_facts
+    from carboy.knowledge.compile import compile_index  # noqa: PLC0415 - brings rdflib
+    from carboy.knowledge.loading import load_facts  # noqa: PLC0415
 
     facts, problems = load_facts(files)
     if facts is None:
@@ -91,10 +94,15 @@ def _read(file: Path) -> Index | None:
     check, body = content[:_CHECK_SIZE], content[_CHECK_SIZE:]
     if hashlib.blake2b(body, digest_size=_CHECK_SIZE).digest() != check:
         return None
+    collecting = gc.isenabled()
+    gc.disable()  # ten thousand fresh records, none of them garbage
     try:
         return msgspec.msgpack.decode(body, type=Index)
     except msgspec.MsgspecError:
         return None
+    finally:
+        if collecting:
+            gc.enable()
 
 
 def _write(folder: Path, name: str, index: Index) -> None:

@@ -55,7 +55,9 @@ class Ref:
 
 @dataclass(slots=True)
 class Node:
-    """A thing, a statement without a name, or a part in square brackets, with its checked properties (shortened names)."""
+    """A thing, a statement without a name, or a part in square brackets, with its checked properties (shortened
+    names).
+    """
 
     name: str
     type: str
@@ -94,7 +96,7 @@ Object = str | float | Ref | Node
 
 @dataclass(slots=True)
 class Facts:
-    """What the files say, checked against the vocabulary: things by shortened IRI, statements without a name by type."""
+    """What the files say, checked against the vocabulary: things by shortened IRI, nameless statements."""
 
     vocabulary: Vocabulary
     things: dict[str, Node] = field(default_factory=dict)
@@ -124,7 +126,7 @@ def parse_turtle(files: Mapping[str, bytes]) -> tuple[dict[str, Graph], list[Pro
             at = max(0, min(getattr(error, "_i", 0), len(text) - 1))
             reason = str(getattr(error, "_why", "not Turtle"))
             problems.append(Problem(name, "", f"no valid Turtle: {reason}", span=Span(text, at, at + 1, name)))
-        except Exception as error:  # noqa: BLE001 - rdflib raises many kinds for a bad IRI or number
+        except Exception as error:
             problems.append(Problem(name, "", f"no valid Turtle: {error}"))
         else:
             graphs[name] = graph
@@ -132,18 +134,23 @@ def parse_turtle(files: Mapping[str, bytes]) -> tuple[dict[str, Graph], list[Pro
 
 
 def load_facts(files: Mapping[str, bytes]) -> tuple[Facts | None, list[Problem]]:
-    """Everything of the files except schema.ttl and shapes.ttl, checked. Facts is None only if schema.ttl itself cannot be read."""
+    """Everything of the files except schema.ttl and shapes.ttl, checked. Facts is None only if schema.ttl itself
+    cannot be read.
+    """
     graphs, problems = parse_turtle(files)
+    facts, more = check_graphs(graphs, files)
+    return facts, in_order([*problems, *more])
+
+
+def check_graphs(graphs: Mapping[str, Graph], files: Mapping[str, bytes]) -> tuple[Facts | None, list[Problem]]:
+    """As :func:`load_facts`, of files that have been parsed."""
     if SCHEMA not in graphs:
-        return None, [*problems, Problem(SCHEMA, "", "the vocabulary cannot be read")]
-    vocabulary = read_vocabulary(
-        (shorten(str(s)), shorten(str(p)), shorten(str(o))) for s, p, o in graphs[SCHEMA]
-    )
+        return None, [Problem(SCHEMA, "", "the vocabulary cannot be read")]
+    vocabulary = read_vocabulary((shorten(str(s)), shorten(str(p)), shorten(str(o))) for s, p, o in graphs[SCHEMA])
     texts = {name: files[name].decode("utf-8") for name in graphs if name not in (SCHEMA, SHAPES)}
     loader = _Loader(vocabulary, {name: graphs[name] for name in texts}, texts)
     loader.run()
-    problems += loader.problems
-    return loader.facts, in_order(problems)
+    return loader.facts, loader.problems
 
 
 class _Loader:
@@ -284,17 +291,14 @@ class _Loader:
                 self.problems.append(here.problem(f"{key} is given twice{other}"))
                 del held[1:]
 
-    def _read_object(
-        self, file: str, graph: Graph, owner: Node, form: Property, value: object
-    ) -> Object | None:
+    def _read_object(self, file: str, graph: Graph, owner: Node, form: Property, value: object) -> Object | None:
         """One object, checked against the range of its property; None (and a Problem) if it does not fit."""
         problem: str
         if isinstance(value, Literal):
             return self._read_literal(owner, form, value)
         if isinstance(value, BNode):
-            kinds = [kind for kind in PART_TYPES if kind in form.ranges]
-            if kinds:
-                return self._read_part(file, graph, owner, form, kinds[0], value)
+            if form.ranges & set(PART_TYPES):
+                return self._read_part(file, graph, owner, form, value)
             problem = f"{form.name} takes no square brackets"
         else:
             ref = Ref(shorten(str(value)))
@@ -312,8 +316,9 @@ class _Loader:
         if value.ill_typed:
             self.problems.append(owner.problem(f"{form.name}: '{value}' is no {shorten(str(value.datatype))}"))
             return None
-        numeric = isinstance(value.value, int) and not isinstance(value.value, bool) or (
-            value.datatype is not None and shorten(str(value.datatype)) in (DECIMAL, "xsd:double", "xsd:float", "xsd:integer")
+        numeric = (isinstance(value.value, int) and not isinstance(value.value, bool)) or (
+            value.datatype is not None
+            and shorten(str(value.datatype)) in (DECIMAL, "xsd:double", "xsd:float", "xsd:integer")
         )
         if numeric and DECIMAL in form.ranges:
             number = float(value)
@@ -336,7 +341,8 @@ class _Loader:
         self.problems.append(owner.problem(f"{form.name} takes {need}, not '{value}'"))
         return None
 
-    def _read_part(self, file: str, graph: Graph, owner: Node, form: Property, kind: str, subject: BNode) -> Node:
+    def _read_part(self, file: str, graph: Graph, owner: Node, form: Property, subject: BNode) -> Node:
+        kind = next(kind for kind in PART_TYPES if kind in form.ranges)
         part = Node(f"{owner.name} {form.name}", kind, file, owner.span)
         self._read_properties(file, graph, subject, part)
         self._check_complete(part, owner=owner, form=form)
@@ -373,8 +379,12 @@ class _Loader:
         formed = {ref.name for node in self.facts.statements for ref in node.refs(":forms")}
         for name, node in self.facts.things.items():
             if node.type == SPECIES and name not in formed:
-                self.problems.append(node.problem("is neither declared (:Component, :Solid, :Gas) nor formed by an equilibrium"))
-        missing: dict[tuple[str, str], list[Node]] = {}  # (message, name) -> who refers to it; one Problem for all of them
+                self.problems.append(
+                    node.problem("is neither declared (:Component, :Solid, :Gas) nor formed by an equilibrium")
+                )
+        missing: dict[
+            tuple[str, str], list[Node]
+        ] = {}  # (message, name) -> who refers to it; one Problem for all of them
         for owner, form, ref, ranges in self.references:
             if UNIT in ranges:
                 if ref.name not in self.vocabulary.units:
@@ -384,14 +394,18 @@ class _Loader:
                 continue
             type_name = self.types.get(ref.name)
             if type_name is None:
-                missing.setdefault((f"{form.name} refers to {ref.name}, which is not defined", ref.name), []).append(owner)
+                missing.setdefault((f"{form.name} refers to {ref.name}, which is not defined", ref.name), []).append(
+                    owner
+                )
             elif not self.vocabulary.classes.get(type_name, frozenset()) & ranges:
                 self.problems.append(
                     owner.problem(f"{form.name} takes {' or '.join(sorted(ranges))}, but {ref.name} is a {type_name}")
                 )
         for (message, name), owners in missing.items():
             prefix = name.partition(":")[0] + ":"
-            candidates = self.vocabulary.units if prefix == "unit:" else [key for key in self.types if key.startswith(prefix)]
+            candidates = (
+                self.vocabulary.units if prefix == "unit:" else [key for key in self.types if key.startswith(prefix)]
+            )
             near = get_close_matches(name, candidates, 1, cutoff=0.75)
             hint = f"; did you mean {near[0]}?" if near else ""
             others = f" (and in {len(owners) - 1} more places)" if len(owners) > 1 else ""
@@ -417,4 +431,6 @@ def _object_key(item: Object) -> tuple[int, float, str]:
 
 
 def _flat(values: list[Object]) -> str:
-    return " ".join(f"{item:020.9f}" if isinstance(item, float) else getattr(item, "name", str(item)) for item in values)
+    return " ".join(
+        f"{item:020.9f}" if isinstance(item, float) else getattr(item, "name", str(item)) for item in values
+    )

@@ -1,7 +1,9 @@
-"""From what stands on a label to what the index knows: names, formulas, CAS numbers, hydrates; and suggestions for the rest.
+"""From what stands on a label to what the index knows: names, formulas, CAS numbers, hydrates; and suggestions for
+the rest.
 
-Nothing is guessed: a text is taken for a thing only if its folded name, its formula or its number is in the index, or a rule of this
-module brings it there (water of crystallisation, "solution", the form of a solid). Near spellings are suggestions only.
+Nothing is guessed: a text is taken for a thing only if its folded name, its formula or its number is in the index, or
+a rule of this module brings it there (water of crystallisation, "solution", the form of a solid). Near spellings are
+suggestions only.
 """
 
 from __future__ import annotations
@@ -21,16 +23,40 @@ from carboy.text.formulas import as_token, elements, hill_formula, is_formula, p
 
 Kind = Literal["substance", "material", "species", "unrecognised"]
 
-_WATER = {"hemi": 0.5, "mono": 1.0, "sesqui": 1.5, "di": 2.0, "tri": 3.0, "tetra": 4.0, "penta": 5.0, "hexa": 6.0, "hepta": 7.0}
+_WATER = {
+    "hemi": 0.5,
+    "mono": 1.0,
+    "sesqui": 1.5,
+    "di": 2.0,
+    "tri": 3.0,
+    "tetra": 4.0,
+    "penta": 5.0,
+    "hexa": 6.0,
+    "hepta": 7.0,
+}
 _WATER |= {"octa": 8.0, "ennea": 9.0, "nona": 9.0, "deca": 10.0, "undeca": 11.0, "dodeca": 12.0, "octadeca": 18.0}
-_HYDRATE_WORD = re.compile(rf"[\s,-]*\b(?P<count>{'|'.join(sorted(_WATER, key=len, reverse=True))})?-?hydrate\b", re.IGNORECASE)
+_HYDRATE_WORD = re.compile(
+    rf"[\s,-]*\b(?P<count>{'|'.join(sorted(_WATER, key=len, reverse=True))})?-?hydrate\b", re.IGNORECASE
+)
 _HYDRATE_FORMULA = re.compile(r"\s*[·.*•⋅∙(x×]\s*(?P<count>\d+(?:\.\d+)?|½)?\s*H[2₂]O\)?\s*$")
 _CAS_LABEL = re.compile(r"cas(?:[\s-]*(?:no|nr|number|rn|registry number)\.?)?[\s:#]*(?=\d)", re.IGNORECASE)
-# words that say in which form a thing comes, not what it is; "fuming", "glacial", "white" and the like do, so they are not here
-_SOLUTION_WORDS = ("aqueous solution", "water solution", "solution in water", "in water", "solutions", "solution", "soln", "aqueous", "aq")
+# words that say in which form a thing comes, not what it is; "fuming", "glacial", "white" and the like do, so they
+# are not here
+_SOLUTION_WORDS = (
+    "aqueous solution",
+    "water solution",
+    "solution in water",
+    "in water",
+    "solutions",
+    "solution",
+    "soln",
+    "aqueous",
+    "aq",
+)
 _FORM_WORDS = (
-    "powder", "dust", "granules", "granulated", "granular", "filings", "turnings", "chips", "shavings", "foil", "wire", "ribbon", "rod",
-    "sheet", "pellets", "pieces", "lumps", "chunks", "crystals", "crystalline", "flakes", "beads", "prills", "shot", "sticks", "metal",
+    "powder", "dust", "granules", "granulated", "granular", "filings", "turnings", "chips", "shavings", "foil",
+    "wire", "ribbon", "rod", "sheet", "pellets", "pieces", "lumps", "chunks", "crystals", "crystalline", "flakes",
+    "beads", "prills", "shot", "sticks", "metal",
     "gas", "anhydrous", "pure", "reagent", "reagent grade", "technical", "technical grade",
     "laboratory grade", "analytical grade", "acs",
 )  # fmt: skip
@@ -40,9 +66,10 @@ _FORM_WORDS = (
 class Match:
     """What a text means.
 
-    ``id`` is a substance id, material id or species token by ``kind`` ("" if unrecognised). ``extra_water``: mol water of
-    crystallisation per formula unit beyond what the substance of the index has; it adds to molar mass and yields.
-    ``dropped`` are words that were passed over ("solution", "powder"), ``notes`` sentences for the assumptions of a report.
+    ``id`` is a substance id, material id or species token by ``kind`` ("" if unrecognised). ``extra_water``: mol
+    water of crystallisation per formula unit beyond what the substance of the index has; it adds to molar mass and
+    yields. ``dropped`` are words that were passed over ("solution", "powder"), ``notes`` sentences for the
+    assumptions of a report.
     """
 
     kind: Kind
@@ -72,8 +99,8 @@ class Names:
     # --- substances, materials, species
 
     def resolve(self, text: str) -> Match:
-        """What ``text`` means, in this order: CAS number, formula with its case, name, species token, formula without case,
-        name with the words of form taken off, hydrate of a known substance.
+        """What ``text`` means, in this order: CAS number, formula with its case, name, species token, formula without
+        case, name with the words of form taken off, hydrate of a known substance.
 
         An unknown name or number gives a Match of kind "unrecognised". Raises InputError for a CAS number whose check
         digit is wrong.
@@ -123,12 +150,14 @@ class Names:
         return (self._target(key, text) if key else None) or self._target(f"smiles:{text}", text)
 
     def _ion(self, token: str, atoms: dict[str, float], charge: int, text: str) -> Match | None:
-        """An ion written as people do (``Fe3+``, ``CH3COO-``): its token, or the component with these atoms and charge."""
+        """An ion written as people do (``Fe3+``, ``CH3COO-``): its token, or the component with these atoms and
+        charge.
+        """
         if token in self.index.species:
             return Match("species", token, text)
-        for token, item in self.index.species.items():
+        for known, item in self.index.species.items():
             if item.component and item.charge == charge and item.atoms == atoms:
-                return Match("species", token, text)
+                return Match("species", known, text)
         return None
 
     def _by_parts(self, text: str) -> Match | None:
@@ -161,7 +190,7 @@ class Names:
         if found is None or found.kind != "substance":
             return None
         if count is None:
-            note = f"The water of crystallisation of '{text}' is not stated; it is counted as {self.display(found.target)}."
+            note = f"The water of crystallisation of '{text}' is not stated; counted as {self.display(found.target)}."
             return replace(found, text=text, notes=(note,))
         water = self._own_water(found)
         if water and count < water:  # "copper sulfate" may stand for its usual hydrate
@@ -180,8 +209,10 @@ class Names:
         return self._target(f"formula:{base}", match.text)
 
     def suggest(self, text: str, n: int = 3) -> tuple[str, ...]:
-        """Up to ``n`` names of substances and materials that are spelled nearly like ``text``, nearest first; they may be none."""
-        from rapidfuzz import fuzz, process
+        """Up to ``n`` names of substances and materials that are spelled nearly like ``text``, nearest first; they
+        may be none.
+        """
+        from rapidfuzz import fuzz, process  # noqa: PLC0415 - only where a name was not found
 
         compact = plain_formula("".join(text.split()))
         same_letters = [
@@ -198,7 +229,9 @@ class Names:
         isomers = []
         if is_formula(compact):
             wanted = hill_formula(parse_formula(compact).atoms)
-            isomers = [f"substance:{key}" for key, item in self.index.substances.items() if hill_formula(item.atoms) == wanted]
+            isomers = [
+                f"substance:{key}" for key, item in self.index.substances.items() if hill_formula(item.atoms) == wanted
+            ]
         targets = dict.fromkeys([*same_letters, *isomers, *(self._names[key] for key, _, _ in near)])
         return tuple(dict.fromkeys(self.display(target) for target in targets))[:n]
 
@@ -226,16 +259,25 @@ class Names:
         for token in (text, f"{plain_formula(text)}(g)"):
             if token in self.index.gases:
                 return token
-        return self._other("gas", text)
+        named = self._other("gas", text) or self._other("gas", f"{text} gas")
+        if named is None:
+            match = self._plain(text)
+            if match and match.kind == "substance":
+                token = f"{plain_formula(self.index.substances[match.id].formula)}(g)"
+                named = token if token in self.index.gases else None
+        return named
 
     def report_keys(self, text: str) -> tuple[str, ...]:
-        """Report keys that ``mercury``, ``Hg``, ``chromium(VI)``, ``Cr(VI)`` or ``cyanide`` cover, in steady order; () if none.
+        """Report keys that ``mercury``, ``Hg``, ``chromium(VI)``, ``Cr(VI)`` or ``cyanide`` cover, in steady order;
+        () if none.
 
         An element covers all its oxidation states; the name of a component or of a class of components covers these.
         """
         wanted = fold(text)
         # molecules that are their own component answer to their names, not to those of elements
-        components = [c for c in self.index.species.values() if c.component and c.report_key and c.report_key != c.token]
+        components = [
+            c for c in self.index.species.values() if c.component and c.report_key and c.report_key != c.token
+        ]
         exact = {c.report_key for c in components if c.report_key == text}
         if exact and not any(item.symbol == text for item in elements().values()):
             return tuple(sorted(exact))
@@ -256,11 +298,12 @@ class Names:
         match = self._plain(text)
         if match and match.id in self.index.species:
             return (self.index.species[match.id].report_key,) if self.index.species[match.id].component else ()
-        key = self.chemical_class(text)
+        wanted_class = self.chemical_class(text)
+        if wanted_class is None:
+            return ()
+        above = self.index.ancestors
         return tuple(
-            sorted({c.report_key for c in components if any(key in self.index.ancestors.get(own, ()) for own in c.classes)})
-            if key
-            else ()
+            sorted({c.report_key for c in components if any(wanted_class in above.get(own, ()) for own in c.classes)})
         )
 
     def _other(self, kind: str, text: str) -> str | None:
@@ -282,7 +325,9 @@ def _singular(word: str) -> Iterator[str]:
 
 
 def _variants(text: str) -> Iterator[tuple[str, list[str]]]:
-    """The text, and the text with words of form and solution taken off its ends, turned round at a comma, in the singular."""
+    """The text, and the text with words of form and solution taken off its ends, turned round at a comma, in the
+    singular.
+    """
     seen = {text}
     queue: list[tuple[str, list[str]]] = [(text, [])]
     while queue:

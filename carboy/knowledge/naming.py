@@ -1,8 +1,9 @@
 """The table of names of the index, built when it is compiled.
 
-Keys: a folded name of a substance or material as it is; others with a mark in front: ``formula:`` (as written, plain), ``lower:`` (the
-same in lower case), ``hill:`` (by atoms), ``cas:``, ``smiles:``, ``container:``, ``class:``, ``gas:`` (folded names).
-A name that fits two things is a fault; a formula or SMILES that fits two (isomers, mixtures) is left out, so that it is asked back.
+Keys: a folded name of a substance or material as it is; others with a mark in front: ``formula:`` (as written, plain),
+``lower:`` (the same in lower case), ``hill:`` (by atoms), ``cas:``, ``smiles:``, ``container:``, ``class:``, ``gas:``
+(folded names). A name that fits two things is a fault; a formula or SMILES that fits two (isomers, mixtures) is left
+out, so that it is asked back.
 """
 
 from __future__ import annotations
@@ -14,7 +15,7 @@ from carboy.model.knowledge import ChemicalClass, Container, Gas, Material, Subs
 from carboy.text.formulas import Atoms, hill_formula, is_formula, plain_formula
 
 
-class NameClash(Exception):
+class NameClashError(Exception):
     """A name fits two things."""
 
     def __init__(self, name: str, first: str, second: str) -> None:
@@ -23,18 +24,20 @@ class NameClash(Exception):
 
 
 def composition_key(atoms: Atoms) -> str:
-    """Key of a formula whose order of writing does not matter, "" where it may (any carbon compound: AgOCN is not AgCNO)."""
+    """Key of a formula whose order of writing does not matter, "" where it may (any carbon compound: AgOCN is not
+    AgCNO).
+    """
     return "" if "C" in atoms else "hill:" + hill_formula(atoms)
 
 
-def build_names(
+def build_names(  # noqa: PLR0913, PLR0917 - one for each kind of thing
     substances: Mapping[str, Substance],
     materials: Mapping[str, Material],
     containers: Mapping[str, Container],
     classes: Mapping[str, ChemicalClass],
     gases: Mapping[str, Gas],
     class_synonyms: Mapping[str, Iterable[str]],
-) -> tuple[dict[str, str], list[NameClash]]:
+) -> tuple[dict[str, str], list[NameClashError]]:
     """All names -> what they mean, and the clashes."""
     table = _Table()
     for item in substances.values():
@@ -66,7 +69,9 @@ def build_names(
 
 
 def _add_formulas(table: _Table, substances: Mapping[str, Substance]) -> None:
-    """Formulas of substances that no name has taken; of several with one formula the plain one (zinc, not zinc powder) or none."""
+    """Formulas of substances that no name has taken; of several with one formula the plain one (zinc, not zinc
+    powder) or none.
+    """
     by_key: dict[str, list[str]] = {}
     for item in substances.values():
         formula = plain_formula(item.formula)
@@ -92,9 +97,9 @@ def _add_formulas(table: _Table, substances: Mapping[str, Substance]) -> None:
 class _Table:
     def __init__(self) -> None:
         self.names: dict[str, str] = {}
-        self.clashes: list[NameClash] = []
+        self.clashes: list[NameClashError] = []
 
     def add(self, key: str, target: str, name: str) -> None:
         known = self.names.setdefault(key, target)
         if known != target:
-            self.clashes.append(NameClash(name, known, target))
+            self.clashes.append(NameClashError(name, known, target))

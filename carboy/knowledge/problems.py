@@ -12,7 +12,8 @@ from carboy.span import Span
 
 @dataclass(frozen=True, slots=True)
 class Problem:
-    """One fault. ``file`` is relative to kb/; ``node`` names the thing (``sub:acetone``); ``span`` its place, where known.
+    """One fault. ``file`` is relative to kb/; ``node`` names the thing (``sub:acetone``); ``span`` its place, where
+    known.
 
     An "error" makes the graph unusable; a "note" is worth a look (an unused source).
     """
@@ -35,10 +36,12 @@ class Problem:
 
 def in_order(problems: Iterable[Problem]) -> list[Problem]:
     """Errors before notes, then by file and place."""
-    return sorted(problems, key=lambda item: (item.severity, item.file, item.span.start if item.span else -1, item.message))
+    return sorted(
+        problems, key=lambda item: (item.severity, item.file, item.span.start if item.span else -1, item.message)
+    )
 
 
-class KnowledgeProblems(KnowledgeError):
+class KnowledgeProblems(KnowledgeError):  # noqa: N818 - it carries several
     """All errors that were found in kb/, in the order of files. ``problems`` has them one by one."""
 
     def __init__(self, problems: Iterable[Problem]) -> None:

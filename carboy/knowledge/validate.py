@@ -5,9 +5,11 @@ from __future__ import annotations
 from collections.abc import Mapping
 from pathlib import Path
 
+from rdflib import RDF, Graph, URIRef
+
 from carboy.knowledge.compile import compile_index
 from carboy.knowledge.files import SCHEMA, SHAPES, read_files
-from carboy.knowledge.loading import Facts, load_facts, parse_turtle
+from carboy.knowledge.loading import Facts, check_graphs, parse_turtle
 from carboy.knowledge.problems import Problem, in_order
 from carboy.knowledge.vocabulary import SOURCE, expand, shorten
 
@@ -18,22 +20,20 @@ def check_knowledge(path: Path | None = None) -> list[Problem]:
     Raises KnowledgeError or DataFilesMissing only if there is no such folder.
     """
     files = read_files(path)
-    facts, problems = load_facts(files)
+    graphs, problems = parse_turtle(files)
+    facts, more = check_graphs(graphs, files)
+    problems += more
     if facts is not None:
-        problems = [*problems, *compile_index(facts)[1], *check_shapes(files), *_unused_sources(facts)]
+        problems += [*compile_index(facts)[1], *check_shapes(graphs), *_unused_sources(facts)]
     return in_order(problems)
 
 
-def check_shapes(files: Mapping[str, bytes]) -> list[Problem]:
+def check_shapes(graphs: Mapping[str, Graph]) -> list[Problem]:
     """What the SHACL shapes of shapes.ttl find in the union of all files; a folder without shapes.ttl has none."""
-    if SHAPES not in files:
-        return []
-    from pyshacl import validate  # slow to import
-    from rdflib import RDF, Graph, URIRef
-
-    graphs, _ = parse_turtle(files)
     if SHAPES not in graphs:
         return []
+    from pyshacl import validate  # noqa: PLC0415 - slow to import
+
     whole = Graph(bind_namespaces="none")
     homes: dict[object, str] = {}
     for name, part in graphs.items():
@@ -55,7 +55,9 @@ def check_shapes(files: Mapping[str, bytes]) -> list[Problem]:
         about = shorten(str(focus)) if isinstance(focus, URIRef) else ""
         if not about:  # a part or a statement without a name: show what it hangs on
             owner = next((s for s in whole.subjects(None, focus) if isinstance(s, URIRef)), None)
-            about = shorten(str(owner)) if owner is not None else str(whole.value(focus, URIRef(expand(":reaction"))) or "")
+            about = (
+                shorten(str(owner)) if owner is not None else str(whole.value(focus, URIRef(expand(":reaction"))) or "")
+            )
         text = f"{shorten(str(along))}: {message}" if isinstance(along, URIRef) else str(message)
         found.append(
             Problem(homes.get(focus, ""), about, text, "note" if severity.endswith(("Warning", "Info")) else "error")

@@ -66,7 +66,9 @@ def local_name(name: str) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Property:
-    """One predicate: where it may stand, what may stand after it. All names are shortened (``:idlh``, ``skos:prefLabel``)."""
+    """One predicate: where it may stand, what may stand after it. All names are shortened (``:idlh``,
+    ``skos:prefLabel``).
+    """
 
     name: str
     domains: frozenset[str]
@@ -78,8 +80,9 @@ class Property:
 
 @dataclass(frozen=True, slots=True)
 class Vocabulary:
-    """``classes``: class -> its superclasses and itself; ``requires``: class -> properties; ``units``: ``unit:PPM`` -> "ppm";
-    ``prefixes``: class -> prefix of its things."""
+    """``classes``: class -> its superclasses and itself; ``requires``: class -> properties; ``units``: ``unit:PPM``
+    -> "ppm"; ``prefixes``: class -> prefix of its things.
+    """
 
     properties: dict[str, Property]
     classes: dict[str, frozenset[str]]

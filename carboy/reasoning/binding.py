@@ -120,7 +120,9 @@ class View:
         everywhere = np.ones(mixture.lanes, dtype=bool)
         match condition:
             case Bound(variable=variable):
-                return binding[variable].amount > TRACE
+                carrier = binding[variable]
+                fits = carrier in self.having(condition.classes, condition.but_not, condition.where)
+                return carrier.amount > TRACE if fits else ~everywhere
             case Present(term=term, negated=negated, where=where):
                 if term in self.stock.index.species and self.stock.kind(term) in ("aqueous", "gas", "water"):
                     there = mixture.amount_of(term) > TRACE

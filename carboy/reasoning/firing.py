@@ -11,7 +11,8 @@ from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.errors import RuleError
 from carboy.model.rule import Bound, Condition, Measured, Reaction, ReactionTerm, Rule
 from carboy.reasoning.binding import Binding, Mask, Surroundings, View
-from carboy.rulebook.balance import balance
+from carboy.chemistry.balance import balance, imbalance
+from carboy.chemistry.relations import part_of
 
 SPEEDS = ("at once", "minutes", "hours", "days")
 _FREE = (PROTON, WATER, "OH-")  # terms that never run out by count: the equilibria and the pH conditions limit them
@@ -59,16 +60,19 @@ def bind_reaction(reaction: Reaction, binding: dict[str, str], stock: ChemicalSt
 
     Raises RuleError when no balanced equation exists.
     """
-    left = [(_species_of(term, binding, stock), term.coefficient) for term in reaction.reactants]
-    right = [(_species_of(term, binding, stock), term.coefficient) for term in reaction.products]
+    left = [(species_of(term, binding, stock), term.coefficient) for term in reaction.reactants]
+    right = [(species_of(term, binding, stock), term.coefficient) for term in reaction.products]
+    make_up = [[_make_up(token, stock) for token, _ in side] for side in (left, right)]
     if reaction.balance:
-        make_up = [[_make_up(token, stock) for token, _ in side] for side in (left, right)]
-        found = balance(*make_up)
-        counts = [float(value) for value in found]
-        left = [(token, count) for (token, _), count in zip(left, counts[: len(left)], strict=True)]
-        right = [(token, count) for (token, _), count in zip(right, counts[len(left) :], strict=True)]
-    reactants = tuple((token, 1.0 if count is None else count) for token, count in left)
-    products = tuple((token, 1.0 if count is None else count) for token, count in right)
+        fixed = {place: count for place, (_, count) in enumerate([*left, *right]) if count is not None}
+        counts = [float(value) for value in balance(*make_up, fixed=fixed)]
+    else:
+        counts = [1.0 if count is None else count for _, count in [*left, *right]]
+        amounts = [list(zip(part, side, strict=True)) for part, side in zip((counts[: len(left)], counts[len(left) :]), make_up, strict=True)]
+        if imbalance(*amounts):
+            raise RuleError(f"'{reaction.text}' does not balance with {', '.join(binding.values())}")
+    reactants = tuple((token, count) for (token, _), count in zip(left, counts[: len(left)], strict=True))
+    products = tuple((token, count) for (token, _), count in zip(right, counts[len(left) :], strict=True))
     change: dict[str, float] = {}
     for sign, side in ((-1.0, reactants), (1.0, products)):
         for token, count in side:
@@ -77,14 +81,13 @@ def bind_reaction(reaction: Reaction, binding: dict[str, str], stock: ChemicalSt
     return BoundReaction(reactants, products, {token: count for token, count in change.items() if abs(count) > 1e-12})
 
 
-def _species_of(term: ReactionTerm, binding: dict[str, str], stock: ChemicalStock) -> str:
+def species_of(term: ReactionTerm, binding: dict[str, str], stock: ChemicalStock) -> str:
+    """The species that a term stands for once its variable is bound. Raises RuleError where the graph lacks the relation asked for."""
     token = binding.get(term.term, term.term)
-    if term.part == "ion":
-        substance = stock.index.substances.get(token)
-        if substance is None or not substance.ion:
-            raise RuleError(f"the graph does not say which ion '{token}' gives")
-        return substance.ion
-    return token
+    related = part_of(token, term.part, stock)
+    if related is None:
+        raise RuleError(f"the graph gives no '{term.part}' of '{token}'")
+    return related
 
 
 def _make_up(token: str, stock: ChemicalStock) -> tuple[dict[str, float], int]:
@@ -117,26 +120,26 @@ class Reactor:
         record: list[Firing] = []
         for speed in SPEEDS[: SPEEDS.index(slowest) + 1]:
             rules = [rule for rule in self.rules if SPEEDS.index(rule.speed) <= SPEEDS.index(speed)]
+            view = View(mixture, surroundings)
             for _ in range(_ROUNDS):
                 before = len(record)
                 for rule in rules:
-                    mixture = self._try(rule, mixture, surroundings, record)
+                    view = self._try(rule, view, record)
                 if len(record) == before:
                     break
+            mixture = view.mixture
         return mixture, record
 
-    def _try(self, rule: Rule, mixture: Mixture, surroundings: Surroundings, record: list[Firing]) -> Mixture:
-        view = View(mixture, surroundings)
+    def _try(self, rule: Rule, view: View, record: list[Firing]) -> View:
+        """One rule in one vessel; the view after it."""
         for binding in list(view.bindings(rule)):
             names = {variable: carrier.token for variable, carrier in binding.items()}
             for number, reaction in enumerate(rule.does):
-                if view.mixture is not mixture:
-                    view = View(mixture, surroundings)
                 now = self._rebound(view, rule, names)
                 if now is None:
                     break
                 conditions = (*rule.needs, *reaction.when)
-                mask = np.ones(mixture.lanes, dtype=bool)
+                mask = np.ones(view.mixture.lanes, dtype=bool)
                 for condition in conditions:
                     mask &= view.holds(condition, now)
                     if not mask.any():
@@ -146,9 +149,10 @@ class Reactor:
                 bound = self._bind(rule, number, names)
                 if bound is None:
                     continue
-                changed = self._react(rule, reaction, bound, conditions, names, view, mask, surroundings, record)
-                mixture = changed if changed is not None else mixture
-        return mixture
+                changed = self._react(rule, reaction, bound, conditions, names, view, mask, record)
+                if changed is not None:
+                    view = View(changed, view.surroundings)
+        return view
 
     def _rebound(self, view: View, rule: Rule, names: dict[str, str]) -> Binding | None:
         now: Binding = {}
@@ -178,10 +182,9 @@ class Reactor:
         names: dict[str, str],
         view: View,
         mask: Mask,
-        surroundings: Surroundings,
         record: list[Firing],
     ) -> Mixture | None:
-        mixture = view.mixture
+        mixture, surroundings = view.mixture, view.surroundings
         extent = np.full(mixture.lanes, np.inf)
         scale = mixture.zeros()
         for token, count in bound.reactants:

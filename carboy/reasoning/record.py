@@ -78,6 +78,10 @@ class Record:
                 self._sources.setdefault((vessel, token), set()).add(node)
         return node
 
+    def sources(self, vessel: str, token: str) -> list[Node]:
+        """The events that supply a component in a vessel."""
+        return sorted(self._sources.get((vessel, token), ()))
+
     def events_of(self, rule: str, step: int) -> list[Node]:
         """The firings of a rule in a step."""
         return [node for node, event in self._events.items() if event.sort == "firing" and event.rule == rule and event.step == step]

@@ -8,8 +8,8 @@ from itertools import product
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.model.knowledge import Index
 from carboy.model.rule import Bound, Rule, Where
-from carboy.rulebook.balance import Formula
-from carboy.rulebook.parts import part_of
+from carboy.chemistry.balance import Formula
+from carboy.chemistry.relations import part_of
 
 _PHASE = {"dissolved": "aq", "solid": "s", "liquid": "l", "gas": "g"}
 

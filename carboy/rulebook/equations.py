@@ -7,7 +7,7 @@ from itertools import islice
 
 from carboy.errors import RuleError
 from carboy.model.rule import Reaction, ReactionTerm, Rule
-from carboy.rulebook.balance import balance, imbalance
+from carboy.chemistry.balance import balance, imbalance
 from carboy.rulebook.composition import Composition
 from carboy.rulebook.problems import Problem
 

@@ -472,7 +472,7 @@ class _CaseReader:
             if share not in (None, 1.0):
                 passage.fail("a share can be taken of a bottle only; give an amount", start, end)
             return self.from_vessel(source, None, passage)
-        reading = read_quantity(passage, start, end, ("volume", "mass"), "the part of a bottle")
+        reading = read_quantity(passage, start, end, ("volume", "mass"), "an amount")
         if reading is None or passage.plain[reading.end : end].strip():
             at, stop = passage.word(reading.end if reading else start, end)
             passage.fail(
@@ -715,14 +715,14 @@ class _CaseReader:
         for key in ("species", "rule", "words", "known_failure"):
             if key in entries:
                 values[key] = entries[key].worded(f"'{key}'").text.strip()
-        for key, known in (
-            ("kind", get_args(Kind)),
-            ("signal", get_args(Signal)),
-            ("moment", get_args(Moment)),
-            ("verdict", get_args(Verdict)),
+        for key, what, known in (
+            ("kind", "kind of finding", get_args(Kind)),
+            ("signal", "signal word", get_args(Signal)),
+            ("moment", "moment", get_args(Moment)),
+            ("verdict", "verdict", get_args(Verdict)),
         ):
             if key in entries:
-                values[key] = self.word(entries[key], known, key)
+                values[key] = self.word(entries[key], known, what)
         for key in ("absent", "met"):
             if key in entries:
                 values[key] = self.truth(entries[key], key)

@@ -1,8 +1,8 @@
 """Chemical formulas and equations: reading, composition, molar mass, balance, display.
 
-Two readings of a charge exist. Species *tokens* of kb/ and rules/ put the number after the sign (``Hg+2``, ``SO4-2``), so that
-digits before a sign always count atoms (``N3-``, ``NH4+``). People also write ``Fe3+``, ``SO42-`` and ``SO4^2-``;
-:func:`parse_formula` resolves these, :func:`parse_token` does not.
+Two readings of a charge exist. Species *tokens* of kb/ and rules/ put the number after the sign (``Hg+2``,
+``SO4-2``), so that digits before a sign always count atoms (``N3-``, ``NH4+``). People also write ``Fe3+``, ``SO42-``
+and ``SO4^2-``; :func:`parse_formula` resolves these, :func:`parse_token` does not.
 """
 
 from __future__ import annotations
@@ -24,7 +24,19 @@ _SUBSCRIPTS = str.maketrans("₀₁₂₃₄₅₆₇₈₉₊₋", "0123456789+
 _SUPERSCRIPTS = {**dict(zip("⁰¹²³⁴⁵⁶⁷⁸⁹", "0123456789", strict=True)), "⁺": "+", "⁻": "-"}
 _TO_SUBSCRIPT = str.maketrans("0123456789", "₀₁₂₃₄₅₆₇₈₉")
 _TO_SUPERSCRIPT = str.maketrans("0123456789+-", "⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻")
-_SINGLE = {"−": "-", "–": "-", "‐": "-", "‑": "-", "•": "·", "∙": "·", "⋅": "·", "・": "·", "‧": "·", "*": "·", ":": "·"}
+_SINGLE = {
+    "−": "-",
+    "–": "-",
+    "‐": "-",
+    "‑": "-",
+    "•": "·",
+    "∙": "·",
+    "⋅": "·",
+    "・": "·",
+    "‧": "·",
+    "*": "·",
+    ":": "·",
+}
 _FRACTIONS = {"½": "0.5", "¼": "0.25", "¾": "0.75"}
 _BRACKETS = {"(": ")", "[": "]", "{": "}"}
 
@@ -42,7 +54,9 @@ _USUAL_ANION_CHARGE = {"O": 2, "S": 2, "Se": 2, "Te": 2, "P": 3, "As": 3, "Sb": 
 
 @dataclass(frozen=True, slots=True)
 class Element:
-    """One line of kb/elements.ttl. ``weight`` is the abridged standard atomic weight, g/mol; None where there is none."""
+    """One line of kb/elements.ttl. ``weight`` is the abridged standard atomic weight, g/mol; None where there is
+    none.
+    """
 
     symbol: str
     name: str
@@ -106,11 +120,11 @@ def molar_mass(atoms: Atoms) -> float:
 def parse_formula(text: str, groups: Mapping[str, Atoms] | None = None) -> Formula:
     """Read a formula as people write it.
 
-    Brackets may be nested; hydrates are joined by a middle dot, ``.``, ``*`` or ``:``; subscripts and superscripts may be Unicode.
-    A charge may be ``Hg+2``, ``SO4^2-``, ``SO4²⁻``, ``Fe3+``, ``SO42-``. Where digits could be atoms or charge: after one
-    cation element they are the charge (``Fe3+``), after one anion element only if that is its usual charge (``S2-``, but ``I3-``),
-    of two digits the second is the charge unless they follow H or C (``SO42-``, ``NO3-``).
-    ``groups`` are further symbols with their atoms. Raises InputError with the place of the fault.
+    Brackets may be nested; hydrates are joined by a middle dot, ``.``, ``*`` or ``:``; subscripts and superscripts
+    may be Unicode. A charge may be ``Hg+2``, ``SO4^2-``, ``SO4²⁻``, ``Fe3+``, ``SO42-``. Where digits could be atoms
+    or charge: after one cation element they are the charge (``Fe3+``), after one anion element only if that is its
+    usual charge (``S2-``, but ``I3-``), of two digits the second is the charge unless they follow H or C (``SO42-``,
+    ``NO3-``). ``groups`` are further symbols with their atoms. Raises InputError with the place of the fault.
     """
     return _parse(text, groups or {}, token=False)
 
@@ -167,7 +181,9 @@ def split_token(token: str) -> tuple[str, int]:
 
 
 def as_token(text: str) -> str:
-    """A formula as people write it -> its token: ``SO4^2-``, ``SO₄²⁻`` and ``SO42-`` give ``SO4-2``. Raises InputError."""
+    """A formula as people write it -> its token: ``SO4^2-``, ``SO₄²⁻`` and ``SO42-`` give ``SO4-2``. Raises
+    InputError.
+    """
     formula = parse_formula(text)
     plain = _normalise(text)[0]
     state = _STATE.search(plain)
@@ -176,7 +192,9 @@ def as_token(text: str) -> str:
 
 
 def pretty_formula(text: str) -> str:
-    """The token or formula with subscripts and superscripts: ``SO4-2`` -> ``SO₄²⁻``. Names of other kinds are given back unchanged."""
+    """The token or formula with subscripts and superscripts: ``SO4-2`` -> ``SO₄²⁻``. Names of other kinds are given
+    back unchanged.
+    """
     plain, _ = _normalise(text)
     state = _STATE.search(plain)
     body = plain[: state.start()] if state else plain
@@ -238,9 +256,7 @@ def parse_equation(text: str, *, file: str = "") -> Equation:
         message = "an equation needs '=' or '->' once"
         raise InputError(message, span=Span(text, 0, max(1, len(text)), file))
     arrow = arrows[0]
-    return Equation(
-        text, _parse_side(text, 0, arrow.start(), file), _parse_side(text, arrow.end(), len(text), file)
-    )
+    return Equation(text, _parse_side(text, 0, arrow.start(), file), _parse_side(text, arrow.end(), len(text), file))
 
 
 def token_composition(token: str) -> Composition:
@@ -251,7 +267,9 @@ def token_composition(token: str) -> Composition:
     return formula.atoms, formula.charge
 
 
-def imbalance(net: Mapping[str, float], composition: Callable[[str], Composition] = token_composition) -> dict[str, float]:
+def imbalance(
+    net: Mapping[str, float], composition: Callable[[str], Composition] = token_composition
+) -> dict[str, float]:
     """Element symbol or "charge" -> surplus on the right (mol); empty if balanced within 1e-6."""
     total: dict[str, float] = {}
     for token, coefficient in net.items():
@@ -261,9 +279,7 @@ def imbalance(net: Mapping[str, float], composition: Callable[[str], Composition
     return {symbol: value for symbol, value in total.items() if abs(value) > 1e-6}
 
 
-def check_balance(
-    equation: Equation, composition: Callable[[str], Composition] = token_composition, *, file: str = ""
-) -> None:
+def check_balance(equation: Equation, composition: Callable[[str], Composition] = token_composition) -> None:
     """Raise InputError with a table of both sides if elements or charge are not balanced."""
     if not imbalance(equation.net, composition):
         return
@@ -285,7 +301,7 @@ def check_balance(
 def pretty_equation(text: str) -> str:
     """The equation with its formulas as :func:`pretty_formula` shows them and ⇌ or → between the sides."""
     equation = parse_equation(text)
-    arrow = " → " if ">" in text and "<" not in text or "→" in text else " ⇌ "
+    arrow = " → " if (">" in text and "<" not in text) or "→" in text else " ⇌ "
 
     def side(terms: Mapping[str, float]) -> str:
         return " + ".join(
@@ -303,10 +319,14 @@ def _parse_side(text: str, start: int, stop: int, file: str) -> dict[str, float]
             position += len(piece)
             continue
         word = piece.strip()
-        span = Span(text, position + len(piece) - len(piece.lstrip()), max(position + len(piece.rstrip()), position + 1), file)
+        span = Span(
+            text, position + len(piece) - len(piece.lstrip()), max(position + len(piece.rstrip()), position + 1), file
+        )
         match = _TERM.fullmatch(word)
         if match is None:
-            reason = "a term is missing here" if not word else f"'{word}' is no term; write '2 Na+' with ' + ' between terms"
+            reason = (
+                "a term is missing here" if not word else f"'{word}' is no term; write '2 Na+' with ' + ' between terms"
+            )
             raise InputError(reason, span=span)
         number = _to_float(match["number"]) if match["number"] else 1.0
         if number <= 0:
@@ -330,7 +350,9 @@ def _to_float(number: str) -> float:
 
 
 def _normalise(text: str) -> tuple[str, list[int]]:
-    """Plain characters, and for each the index of the character of ``text`` it came from. Spaces go; superscripts get a ``^``."""
+    """Plain characters, and for each the index of the character of ``text`` it came from. Spaces go; superscripts get
+    a ``^``.
+    """
     out: list[str] = []
     where: list[int] = []
     raised = False
@@ -347,7 +369,9 @@ def _normalise(text: str) -> tuple[str, list[int]]:
 
 
 def _split_dots(text: str) -> list[str]:
-    """The units of a formula with water or double salts. A ``.`` is a separator unless it is the point of a decimal subscript."""
+    """The units of a formula with water or double salts. A ``.`` is a separator unless it is the point of a decimal
+    subscript.
+    """
     pieces: list[str] = []
     for part in text.split("·"):
         start = 0
@@ -393,11 +417,13 @@ def _strip_charge(text: str, *, token: bool) -> tuple[str, int]:
 
 
 def _ambiguous_charge(body: str, sign: int) -> tuple[str, int]:
-    """``body`` as people write it before a single sign: its last digit may be a charge (``Fe3`` +, ``SO42`` -) or atoms (``NO3`` -)."""
+    """``body`` as people write it before a single sign: its last digit may be a charge (``Fe3`` +, ``SO42`` -) or
+    atoms (``NO3`` -).
+    """
     single = re.fullmatch(r"(?P<symbol>[A-Z][a-z]?)(?P<count>\d?)(?P<last>\d)", body)
     if single and not single["count"]:
         last = int(single["last"])
-        meant = sign > 0 and single["symbol"] != "H" or _USUAL_ANION_CHARGE.get(single["symbol"]) == last
+        meant = (sign > 0 and single["symbol"] != "H") or _USUAL_ANION_CHARGE.get(single["symbol"]) == last
         return (single["symbol"], sign * last) if meant and last else (body, sign)
     end = re.search(r"(?P<before>[A-Z][a-z]?|[)\]])(?P<digits>\d{2,3})$", body)
     if end and end["before"] not in ("C", "H") and end["digits"][-1] in "1234":

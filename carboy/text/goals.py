@@ -36,6 +36,7 @@ _QUANTITY = re.compile(r"\s*(?P<quantity>dissolved|total|pH|temperature)(?!\w)\s
 _PLACE = re.compile(r"\s*\b(?:in|of)\s+(?:the\s+)?(?P<vessel>\S.*?)\s*$", re.IGNORECASE)
 _ROMAN = ("I", "II", "III", "IV", "V", "VI", "VII", "VIII")
 _VALENT = ("mono", "di", "tri", "tetra", "penta", "hexa", "hepta", "octa")
+_STATED = re.compile(r"[A-Z][a-z]?\(-?[IV0]+\)")
 _VALENCE = re.compile(rf"(?P<prefix>{'|'.join(_VALENT)})valent\s+(?P<element>\w+)", re.IGNORECASE)
 
 
@@ -175,14 +176,17 @@ def _subject(passage: Passage, start: int, end: int, names: SubjectLookup, what:
     if len(keys) == 1:
         return keys[0]
     roots = {key.partition("(")[0] for key in keys}
-    if len(roots) == 1:  # an element in all its states
+    if len(roots) == 1 and set(keys) == set(names.report_keys(*roots)):  # an element in all its states
         return roots.pop()
+    stated = [key for key in keys if _STATED.fullmatch(key)]
+    if len(stated) == 1:  # "sulfide" is S(-II), and what else is called so is its kin
+        return stated[0]
     if keys:
         passage.fail(
             f"'{passage.text[start:end]}' covers several things ({', '.join(keys)}); write a goal for each", start, end
         )
     known = [element.name for element in elements().values()]
-    near = closest(words, known, 2, cutoff=75.0) or tuple(names.suggest(words, 2))
+    near = closest(words, known, 2, cutoff=75.0) or tuple(other for other in names.suggest(words, 2) if other != words)
     message = f"'{passage.text[start:end]}' is nothing that is counted by itself; name an element or an ion"
     raise InputError(message, span=passage.span(start, end), suggestions=near)
 

@@ -167,6 +167,8 @@ _STRAY = (
     "up",
     "least",
     "most",
+    "as",
+    "under",
 )
 _WATER = "substance:water"
 
@@ -361,10 +363,14 @@ class _Reader:
             at, until = self.passage.word(stop, end)
             self.fail(f"'{self.said(at, until)}' cannot be placed after the pH", at, until)
         first = found.start()
+        if self.text[first - 1] == "(" and self.text[stop : stop + 1] == ")" and not self.resolve(first - 1, stop + 1):
+            first, stop = first - 1, stop + 1  # "buffer (pH 7)"
         before = re.compile(r"(?:[\s,;]|\s(?:at|of|with)\s)+$").search(self.text, start, first)
         self.blank(before.start() if before else first, stop)
-        start, end = self.trim(start, end, ",;")
-        return interval, start, end
+        begin, until = self.trim(start, end, ",;")
+        if begin >= until:
+            self.fail("the pH is here, but not of what; write 'unknown, pH 2' if nothing else is known", start, end)
+        return interval, begin, until
 
     def check_brackets(self, start: int, end: int) -> None:
         opened: list[int] = []

@@ -175,13 +175,12 @@ def _header(source: _Source, begin: int, end: int, column: int) -> _Block:
         source.fail(message, begin, begin + len(word), closest(word, ("rule",)))
     identifier = identifier.strip()
     start = end - len(identifier)
+    if not identifier:
+        source.fail("the rule has no id", begin, end)
     if not _IDENTIFIER.fullmatch(identifier):
-        message = (
-            f"'{identifier}' is no id; an id is lower-case words joined by hyphens"
-            if identifier
-            else "the rule has no id"
-        )
-        source.fail(message, start if identifier else begin, end)
+        likely = re.sub(r"[^a-z0-9]+", "-", identifier.lower()).strip("-")
+        message = f"'{identifier}' is no id; an id is lower-case words joined by hyphens"
+        source.fail(message, start, end, (likely,) if likely else ())
     return _Block(begin, column, _Item(start, end, column))
 
 

@@ -10,6 +10,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
+from functools import cache
 from typing import NoReturn
 
 from carboy.errors import InputError
@@ -215,11 +216,17 @@ def _pattern(words: Iterable[str], *, whole: bool = True) -> re.Pattern[str]:
 
 
 _UNIT_ENDS = r"(?![\w³²µ°%/^⁻]|-[A-Za-z])\.?(?!\w)"
-_PATTERNS = {name: _pattern(words) for name, words in _WORDS_OF.items()}
-_BARE = {name: _pattern(words, whole=False) for name, words in _WORDS_OF.items()}
-_EQUIVALENT_BARE = _pattern(EQUIVALENTS, whole=False)
-_SIMPLE = _pattern(_SIMPLE_STRENGTHS)
-_REFUSED = _pattern(_REFUSED_STRENGTHS)
+
+
+@cache
+def _pattern_of(dimension: str, *, whole: bool = True) -> re.Pattern[str]:
+    """The pattern of a dimension's words; made when first needed, since most runs need few of them."""
+    return _pattern(EQUIVALENTS if dimension == "equivalents" else _WORDS_OF[dimension], whole=whole)
+
+
+@cache
+def _strength_pattern(*, refused: bool) -> re.Pattern[str]:
+    return _pattern(_REFUSED_STRENGTHS if refused else _SIMPLE_STRENGTHS)
 
 
 def _lookup(table: dict[str, Unit], word: str) -> Unit:
@@ -248,7 +255,7 @@ def read_unit(passage: Passage, at: int, end: int, dimension: str) -> tuple[Unit
     if dimension == "share":
         found = re.compile(r"%|percent\b|per cent\b").match(passage.plain, at, end)
         return (Unit("", 0.01), found.end()) if found else (Unit("", 1.0), at)
-    found = _PATTERNS[dimension].match(passage.plain, at, end)
+    found = _pattern_of(dimension).match(passage.plain, at, end)
     if found is None:
         return None
     return _lookup(_WORDS_OF[dimension], found.group()), found.end()
@@ -257,8 +264,7 @@ def read_unit(passage: Passage, at: int, end: int, dimension: str) -> tuple[Unit
 def _part(passage: Passage, at: int, end: int, dimension: str) -> tuple[Unit, int] | None:
     """A unit that may be followed by ``/``, ``-1`` and the like."""
     table = EQUIVALENTS if dimension == "equivalents" else _WORDS_OF[dimension]
-    pattern = _EQUIVALENT_BARE if dimension == "equivalents" else _BARE[dimension]
-    found = pattern.match(passage.plain, at, end)
+    found = _pattern_of(dimension, whole=False).match(passage.plain, at, end)
     if found is None:
         return None
     return _lookup(table, found.group()), found.end()
@@ -323,13 +329,13 @@ def read_strength_unit(passage: Passage, at: int, end: int) -> tuple[Unit, int] 
         if ratio:
             above, below, figure, where = ratio
             return Unit(name, above.factor / (below.factor * figure)), where
-    if found := _SIMPLE.match(text, at, end):
+    if found := _strength_pattern(refused=False).match(text, at, end):
         word = found.group().rstrip(".")
         unit, factor = _SIMPLE_STRENGTHS.get(word) or _SIMPLE_STRENGTHS[word.casefold()]
         # "N,N-dimethyl..." and "M-..." begin a name, they are no unit
         if not re.compile(r",\s?[A-Z]|-\w").match(text, found.end(), end):
             return Unit(unit, factor), found.end()
-    found = _REFUSED.match(text, at, end)
+    found = _strength_pattern(refused=True).match(text, at, end)
     if found and not re.compile(r"-\w").match(text, found.end(), end):
         passage.fail(_REFUSED_STRENGTHS[found.group().rstrip(".")], at, found.end())
     return None

@@ -318,6 +318,8 @@ NiH2(CN)4 ; 4 CN- + Ni+2 + 2 H+ = NiH2(CN)4 ; 40.7434 ;
 """
 
 SOLID = """
+Mirabilite ; Na2SO4:10H2O(s) = 2 Na+ + SO4-2 + 10 H2O ; -1.114 ; 79.4416
+Thenardite ; Na2SO4(s) = 2 Na+ + SO4-2 ; 0.3217 ; -9.121
 Galena ; PbS(s) + H+ = Pb+2 + HS- ; -13.97 ; 80
 Sphalerite ; ZnS(s) + H+ = HS- + Zn+2 ; -11.45 ; 30
 Greenockite ; CdS(s) + H+ = Cd+2 + HS- ; -14.36 ; 55

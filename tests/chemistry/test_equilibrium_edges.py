@@ -82,6 +82,45 @@ def test_two_forms_of_one_solid() -> None:
     assert answer.saturation[0, network.solids.index("Metacinnabar")] == pytest.approx(-0.6, abs=1e-5)
 
 
+def test_a_hydrate_beside_its_anhydrous_form() -> None:
+    """Na2SO4 with and without 10 H2O together fix the activity of water: 10 log a = -1.114 - 0.3217, a = 0.718.
+
+    With a = 1 - 0.017 sum(m) that is sum(m) = 16.6 mol/kg, and the balance of water says how much there is of each.
+    """
+    mixture = {"Na+": 12.0, "SO4-2": 4.0, "Cl-": 4.0}
+    totals = totals_of(FACTORY.network(mixture), mixture)
+    answer = solved(mixture)
+    check(answer, totals, np.array([MOL_PER_KG]))
+    assert solid(answer, "Mirabilite") > 0.1
+    assert solid(answer, "Thenardite") > 0.1
+    activity_of_water = 10.0 ** ((-1.114 - 0.3217) / 10.0)
+    molality = answer.amounts[0].sum() / answer.water_kg[0]
+    assert molality == pytest.approx((1.0 - activity_of_water) / 0.017, rel=1e-3)
+
+
+def test_a_little_solid_without_any_buffer() -> None:
+    """A trace of a strong base's worth of hydroxide in a strong salt: the proton balance is of terms of 1e-6 mol."""
+    mixture = neutral({"Zn+2": 0.4, "Al+3": 1.4e-5, "Cl-": 0.5})
+    totals = totals_of(FACTORY.network(mixture), mixture)
+    check(solved(mixture), totals, np.array([MOL_PER_KG]))
+
+
+def test_a_titration_in_one_call() -> None:
+    """41 lanes of a ten-component waste from acid to alkaline: all converge, in few turns, the pH rising throughout."""
+    waste = {
+        "Zn+2": 0.02, "Cu+2": 0.02, "Fe+3": 0.02, "Ni+2": 0.02, "Ca+2": 0.02, "Pb+2": 0.002, "Al+3": 0.01,
+        "SO4-2": 0.1, "CO3-2": 0.001, "Acetate-": 0.02, "NO3-": 0.2, "H+": 0.05,
+    }  # fmt: skip
+    waste = neutral(waste)
+    lanes = [{**waste, "Na+": waste.get("Na+", 0.0) + base, "H+": 0.05 - base} for base in np.linspace(0.0, 0.6, 41)]
+    answer = solved(*lanes, retain_gas=True)
+    assert answer.converged.all()
+    assert np.all(np.diff(answer.pH) > 0.0)
+    assert answer.iterations.max() < 60
+    assert answer.pH[0] < 2.5
+    assert answer.pH[-1] > 11.5
+
+
 def test_retained_gas_shows_the_pressure_it_would_have() -> None:
     mixture = {"Na+": 1.0, "CO3-2": 1.0, "H+": 2.0, "Cl-": 1.0}
     answer = solved(mixture, retain_gas=True)

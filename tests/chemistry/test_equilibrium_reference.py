@@ -57,10 +57,12 @@ PROBLEMS: dict[str, dict[str, float]] = {
         "Hg+2": 1e-3, "Cu+2": 2e-3, "Ag+": 1e-3, "Zn+2": 2e-3, "Pb+2": 1e-3, "Cd+2": 1e-3, "Ni+2": 1e-3, "HS-": 0.02,
     },
     "seven metals and too little sulfide": {
-        "Hg+2": 1e-3, "Cu+2": 2e-3, "Ag+": 1e-3, "Zn+2": 2e-3, "Pb+2": 1e-3, "Cd+2": 1e-3, "Ni+2": 1e-3, "HS-": 0.004, "NO3-": 0.02,
+        "Hg+2": 1e-3, "Cu+2": 2e-3, "Ag+": 1e-3, "Zn+2": 2e-3, "Pb+2": 1e-3, "Cd+2": 1e-3, "Ni+2": 1e-3, "HS-": 0.004,
+        "NO3-": 0.02,
     },
     "ten-component waste made alkaline": {
-        "Zn+2": 5e-3, "Cu+2": 5e-3, "Fe+3": 5e-3, "Ni+2": 5e-3, "Ca+2": 5e-3, "Pb+2": 1e-3, "SO4-2": 0.02, "CO3-2": 2e-3, "H+": -0.05,
+        "Zn+2": 5e-3, "Cu+2": 5e-3, "Fe+3": 5e-3, "Ni+2": 5e-3, "Ca+2": 5e-3, "Pb+2": 1e-3, "SO4-2": 0.02,
+        "CO3-2": 2e-3, "H+": -0.05,
     },
 }  # fmt: skip
 

@@ -20,8 +20,8 @@ STANDARDS = [
 ]
 
 
-# The standards are compared without ion pairs of Na+ and K+: MINTEQ's pairs were fitted with another activity model and lower these pH by
-# up to 0.15, which is a matter of data and not of the solver.
+# The standards are compared without ion pairs of Na+ and K+: MINTEQ's pairs were fitted with another activity model and
+# lower these pH by up to 0.15, which is a matter of data and not of the solver.
 WITHOUT_PAIRS = NetworkFactory(
     [row for row in EQUILIBRIA if row.kind != "aqueous" or not {"Na+", "K+"} & set(row.coefficients)], SPECIES
 )
@@ -35,8 +35,8 @@ def test_primary_ph_standards(mixture: dict[str, float], expected: float) -> Non
     assert answer.pH[0] == pytest.approx(expected, abs=0.05)
 
 
-# Textbook exercises (any general chemistry text, e.g. Harris, Quantitative Chemical Analysis; from memory). They are worked with
-# concentrations; -log10 of the activity differs by up to -log10 g = 0.11 at I = 0.1.
+# Textbook exercises (any general chemistry text, e.g. Harris, Quantitative Chemical Analysis; from memory). They are
+# worked with concentrations; -log10 of the activity differs by up to -log10 g = 0.11 at I = 0.1.
 EXERCISES = [
     ({"Acetate-": 0.1, "H+": 0.1}, 2.88),
     ({"Acetate-": 0.1, "Na+": 0.1}, 8.87),

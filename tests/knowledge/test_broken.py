@@ -5,11 +5,11 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from tests.knowledge.small_knowledge import BROKEN, small_files
 
 from carboy.knowledge.compile import compile_index
 from carboy.knowledge.loading import load_facts
 from carboy.knowledge.problems import Problem
+from tests.knowledge.small_knowledge import BROKEN, small_files
 
 
 def problems_of(*more: Path) -> list[Problem]:
@@ -45,7 +45,9 @@ def test_broken_file(file: Path) -> None:
 def test_place_is_the_line_of_the_subject() -> None:
     file = BROKEN / "cas-check-digit.ttl"
     (problem,) = problems_of(file)
-    line = 1 + next(n for n, text in enumerate(file.read_text(encoding="utf-8").splitlines()) if text.startswith("sub:thing"))
+    line = 1 + next(
+        n for n, text in enumerate(file.read_text(encoding="utf-8").splitlines()) if text.startswith("sub:thing")
+    )
     assert problem.place == f"cas-check-digit.ttl:{line}"
 
 
@@ -59,3 +61,29 @@ def test_a_file_that_is_not_utf8_is_a_problem(tmp_path: Path) -> None:
     file.write_bytes("# caf\u00e9".encode("latin-1"))
     (problem,) = problems_of(file)
     assert "not UTF-8" in problem.message
+
+
+def test_elements_must_be_readable_line_by_line() -> None:
+    files = small_files()
+    files["elements.ttl"] = files["elements.ttl"].replace(b":magnitude 22.99 ;", b":magnitude 23 ;")
+    facts, problems = load_facts(files)
+    assert facts is not None
+    found = [str(problem) for problem in (*problems, *compile_index(facts)[1])]
+    assert len(found) == 1
+    assert "el:Na: the formula reader takes this line otherwise" in found[0]
+
+
+def test_water_and_proton_must_be_components() -> None:
+    files = small_files()
+    line = b'sp:H2O a :Component ; skos:prefLabel "water" ; :reportKey "H2O" .'
+    assert line in files["base.ttl"]
+    files["base.ttl"] = files["base.ttl"].replace(line, b"")
+    facts, _ = load_facts(files)
+    assert facts is not None
+    assert any("sp:H2O: must be declared as a :Component" in str(problem) for problem in compile_index(facts)[1])
+
+
+def test_a_folder_without_readable_vocabulary_says_so() -> None:
+    facts, problems = load_facts({**small_files(), "schema.ttl": b"this is no Turtle"})
+    assert facts is None
+    assert any(problem.file == "schema.ttl" for problem in problems)

@@ -96,7 +96,8 @@ def test_few_old_indexes_are_kept(small_kb: Path, cache: Path) -> None:
 
 def test_broken_knowledge_raises_and_is_not_cached(small_kb: Path, cache: Path) -> None:
     (small_kb / "bad.ttl").write_text(
-        "@prefix : <urn:carboy:term:> .\n@prefix sub: <urn:carboy:substance:> .\nsub:a a :Substance .\nsub:b a :Thing .\n",
+        "@prefix : <urn:carboy:term:> .\n@prefix sub: <urn:carboy:substance:> .\n"
+        "sub:a a :Substance .\nsub:b a :Thing .\n",
         encoding="utf-8",
     )
     with pytest.raises(KnowledgeProblems) as caught:
@@ -118,7 +119,9 @@ def test_warm_load_imports_no_rdf_library(small_kb: Path, cache: Path) -> None:
         "import sys\nfrom pathlib import Path\nfrom carboy.knowledge.index import load_index\n"
         f"load_index(Path({str(small_kb)!r}))\nassert 'rdflib' not in sys.modules, 'rdflib was imported'\n"
     )
-    done = subprocess.run([sys.executable, "-c", code], check=False, capture_output=True, text=True, env=dict(os.environ))
+    done = subprocess.run(
+        [sys.executable, "-c", code], check=False, capture_output=True, text=True, env=dict(os.environ)
+    )
     assert done.returncode == 0, done.stderr
 
 

@@ -9,7 +9,7 @@ import pytest
 
 from carboy.knowledge.equilibria import PrintedEquilibrium, components_of, reduce_to_components
 from carboy.knowledge.index import load_index
-from carboy.knowledge.loading import load_facts
+from carboy.knowledge.loading import load_facts, parse_turtle
 from carboy.knowledge.validate import check_knowledge, check_shapes
 from carboy.model.knowledge import Index, Value
 from carboy.text.formulas import imbalance, parse_equation
@@ -45,9 +45,7 @@ def test_solid_written_as_dissolution(index: Index) -> None:
 
 
 def test_enthalpies_add_along_the_links() -> None:
-    done, faults = reduce_to_components(
-        [printed("B", "A = B", 2.0, 10.0), printed("C", "C = 2 B", -1.0, 5.0)], {"A"}
-    )
+    done, faults = reduce_to_components([printed("B", "A = B", 2.0, 10.0), printed("C", "C = 2 B", -1.0, 5.0)], {"A"})
     assert faults == {}
     assert done["C"].coefficients == {"A": 2}
     assert done["C"].log10_beta == pytest.approx(1.0 + 2 * 2.0)
@@ -108,7 +106,9 @@ def test_order_of_blank_nodes_is_steady() -> None:
     second, _ = load_facts(small_files())
     assert first is not None
     assert second is not None
-    assert [node.text(":reaction") for node in first.statements] == [node.text(":reaction") for node in second.statements]
+    assert [node.text(":reaction") for node in first.statements] == [
+        node.text(":reaction") for node in second.statements
+    ]
 
 
 def test_sound_knowledge_has_only_notes(small_kb: Path) -> None:
@@ -131,9 +131,10 @@ def test_unused_source_is_a_note(small_kb: Path) -> None:
     ("name", "message"),
     [
         ("missing-property", "a substance has one formula"),
-        ("value-without-source", "a value is incomplete"),
-        ("value-without-unit", "a value is incomplete"),
-        ("unknown-basis", "a value is incomplete"),
+        ("value-without-source", "a value has one source"),
+        ("value-without-unit", "a value has one unit"),
+        ("value-without-magnitude", "a value has one magnitude"),
+        ("unknown-basis", "basis says how the number was had"),
         ("unknown-state", "state is s, l, g or aq"),
         ("dangling-class", "a class is defined in kb/classes"),
         ("ingredient-order", "a material has ingredients"),
@@ -142,10 +143,11 @@ def test_unused_source_is_a_note(small_kb: Path) -> None:
     ],
 )
 def test_shapes_find_it_too(name: str, message: str) -> None:
-    files = small_files(BROKEN / f"{name}.ttl")
-    found = [str(problem) for problem in check_shapes(files)]
+    graphs, _ = parse_turtle(small_files(BROKEN / f"{name}.ttl"))
+    found = [str(problem) for problem in check_shapes(graphs)]
     assert any(message in problem for problem in found), found
 
 
 def test_shapes_pass_the_sound_base() -> None:
-    assert [str(problem) for problem in check_shapes(small_files()) if problem.severity == "error"] == []
+    graphs, _ = parse_turtle(small_files())
+    assert [str(problem) for problem in check_shapes(graphs) if problem.severity == "error"] == []

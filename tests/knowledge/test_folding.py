@@ -13,12 +13,18 @@ from carboy.knowledge.folding import fold
 @pytest.mark.parametrize(
     "spellings",
     [
-        ("mercury(II) nitrate", "Mercury (ii) Nitrate", "mercury II nitrate", "mercury-ii-nitrate", "mercury(2+) nitrate"),
+        (
+            "mercury(II) nitrate",
+            "Mercury (ii) Nitrate",
+            "mercury II nitrate",
+            "mercury-ii-nitrate",
+            "mercury(2+) nitrate",
+        ),
         ("sodium sulfide", "Sodium Sulphide", "sodium-sulfide", "SODIUM  SULFIDE"),
         ("aluminium chloride", "aluminum chloride"),
         ("caesium iodide", "cesium iodide"),
         ("sulfuric acid", "sulphuric acid"),
-        ("Fehling's solution", "Fehlings solution", "Fehling’s solution"),
+        ("Fehling's solution", "Fehling solution", "Fehling’s solution"),
         ("1,2-dichloroethane", "1,2-Dichloroethane", "1,2 dichloroethane"),
         ("α-pinene", "alpha-pinene", "alpha pinene"),
         ("Glaubersalz", "glaubersalz"),

@@ -25,11 +25,14 @@ cls:sulfide a skos:Concept ; skos:prefLabel "sulfide" .
 sp:HS- :class cls:sulfide .
 sp:CrO4-2 a :Component ; skos:prefLabel "chromate" ; :reportKey "Cr(VI)" .
 sp:Cr\\+3 a :Component ; skos:prefLabel "chromium(III) ion" ; :reportKey "Cr(III)" .
-sub:copper-ii-sulfate a :Substance ; skos:prefLabel "copper(II) sulfate" ; skos:altLabel "cupric sulfate" ; :formula "CuSO4" ; :state "s" .
-sub:copper-ii-sulfate-pentahydrate a :Substance ; skos:prefLabel "copper(II) sulfate pentahydrate" ; skos:altLabel "copper sulfate" , "blue vitriol" ;
+sub:copper-ii-sulfate a :Substance ; skos:prefLabel "copper(II) sulfate" ; skos:altLabel "cupric sulfate" ;
+  :formula "CuSO4" ; :state "s" .
+sub:copper-ii-sulfate-pentahydrate a :Substance ; skos:prefLabel "copper(II) sulfate pentahydrate" ;
+  skos:altLabel "copper sulfate" , "blue vitriol" ;
   :formula "CuSO4·5H2O" ; :state "s" .
 sub:aluminium a :Substance ; skos:prefLabel "aluminium" ; :formula "Al" ; :state "s" .
-sub:aluminium-chloride-hexahydrate a :Substance ; skos:prefLabel "aluminium chloride hexahydrate" ; :formula "AlCl3·6H2O" ; :state "s" .
+sub:aluminium-chloride-hexahydrate a :Substance ; skos:prefLabel "aluminium chloride hexahydrate" ;
+  :formula "AlCl3·6H2O" ; :state "s" .
 sub:cobalt a :Substance ; skos:prefLabel "cobalt" ; :formula "Co" ; :state "s" .
 sub:zinc a :Substance ; skos:prefLabel "zinc" ; :formula "Zn" ; :cas "7440-66-6" ; :state "s" .
 sub:zinc-powder a :Substance ; skos:prefLabel "zinc powder" ; :formula "Zn" ; :state "s" .
@@ -38,7 +41,8 @@ sub:sodium-sulfide a :Substance ; skos:prefLabel "sodium sulfide" ; :formula "Na
 sub:silver-cyanate a :Substance ; skos:prefLabel "silver cyanate" ; :formula "AgOCN" ; :state "s" .
 sub:propanal a :Substance ; skos:prefLabel "propanal" ; :formula "C3H6O" ; :state "l" .
 sub:sodium-nitrate a :Substance ; skos:prefLabel "sodium nitrate" ; :formula "NaNO3" ; :state "s" .
-mat:household-bleach a :Material ; skos:prefLabel "household bleach" ; skos:altLabel "bleach" ; :state "l" ; :source src:a-book ;
+mat:household-bleach a :Material ; skos:prefLabel "household bleach" ; skos:altLabel "bleach" ; :state "l" ;
+  :source src:a-book ;
   :part [ :substance sub:sodium-nitrate ; :low 1 ; :typical 2 ; :high 3 ] .
 con:hdpe a :Container ; skos:prefLabel "HDPE" ; skos:altLabel "high-density polyethylene" .
 con:aluminium a :Container ; skos:prefLabel "aluminium" .
@@ -129,7 +133,8 @@ def test_materials(names: Names) -> None:
 
 
 @pytest.mark.parametrize(
-    ("text", "token"), [("HS-", "HS-"), ("Cr3+", "Cr+3"), ("CrO4^2-", "CrO4-2"), ("CrO₄²⁻", "CrO4-2"), ("CrO42-", "CrO4-2")]
+    ("text", "token"),
+    [("HS-", "HS-"), ("Cr3+", "Cr+3"), ("CrO4^2-", "CrO4-2"), ("CrO₄²⁻", "CrO4-2"), ("CrO42-", "CrO4-2")],
 )
 def test_species(names: Names, text: str, token: str) -> None:
     match = names.resolve(text)

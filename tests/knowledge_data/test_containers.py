@@ -24,7 +24,9 @@ def test_unsuitable_pairs(container: str, attacker: str) -> None:
     assert attacks[attacker] == "unsuitable"
 
 
-@pytest.mark.parametrize(("container", "attacker"), [("hdpe", "strong-base"), ("hdpe", "glass-etcher"), ("ptfe", "nitric-acid")])
+@pytest.mark.parametrize(
+    ("container", "attacker"), [("hdpe", "strong-base"), ("hdpe", "glass-etcher"), ("ptfe", "nitric-acid")]
+)
 def test_usual_vessels_are_not_accused(container: str, attacker: str) -> None:
     assert attacker not in {item.attacker for item in load_index().containers[container].attacks}
 
@@ -33,4 +35,5 @@ def test_attackers_are_known() -> None:
     index = load_index()
     for container in index.containers.values():
         for attack in container.attacks:
-            assert attack.attacker in index.classes or attack.attacker in index.substances, (container.id, attack.attacker)
+            known = attack.attacker in index.classes or attack.attacker in index.substances
+            assert known, (container.id, attack.attacker)

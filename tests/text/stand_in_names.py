@@ -51,7 +51,8 @@ _KEYS = {
     "chromium(vi)": ("Cr(VI)",),
     "chromium": ("Cr(III)", "Cr(VI)"),
     "cyanide": ("CN",),
-    "sulfide": ("S(-II)",),
+    "sulfide": ("S(-II)", "S(polysulfide)"),
+    "sulfur": ("S(-II)", "S(VI)", "S(polysulfide)"),
     "heavy metal": ("Cu", "Hg"),
 }
 _HYDRATES = {
@@ -91,4 +92,5 @@ class StandInNames:
     def report_keys(self, text: str) -> tuple[str, ...]:
         folded = text.casefold()
         exact = {key.casefold(): (key,) for keys in _KEYS.values() for key in keys}
-        return _KEYS.get(folded) or exact.get(folded) or ()
+        element = {"cr": "chromium", "s": "sulfur"}.get(folded, folded)
+        return _KEYS.get(element) or exact.get(folded) or ()

@@ -9,6 +9,8 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from carboy.errors import InputError
+from carboy.knowledge.index import load_index
+from carboy.knowledge.names import Names
 from carboy.model.plan import Ingredient, Interval, Portion, Strength
 from carboy.span import Span
 from carboy.text.portions import parse_portion
@@ -57,7 +59,14 @@ ONE_INGREDIENT = [
     ("200 mL conc. nitric acid", 0.2, "L", "substance:nitric-acid", strength("concentrated"), ""),
     ("200 mL of nitric acid, concentrated", 0.2, "L", "substance:nitric-acid", strength("concentrated"), ""),
     ("200 mL of dilute nitric acid", 0.2, "L", "substance:nitric-acid", strength("dilute"), ""),
-    ("1 L of saturated sodium chloride solution", 1.0, "L", "substance:sodium-chloride", strength("saturated"), "solution"),
+    (
+        "1 L of saturated sodium chloride solution",
+        1.0,
+        "L",
+        "substance:sodium-chloride",
+        strength("saturated"),
+        "solution",
+    ),
     ("1 L of sodium chloride solution", 1.0, "L", "substance:sodium-chloride", UNKNOWN, "solution"),
     ("1 L of sodium chloride of unknown strength", 1.0, "L", "substance:sodium-chloride", UNKNOWN, ""),
     ("1 L of a 10 % solution of NaOH", 1.0, "L", "substance:sodium-hydroxide", strength("w/w", 0.1), "solution"),
@@ -79,8 +88,9 @@ ONE_INGREDIENT = [
 ]
 
 
-@pytest.mark.parametrize(("text", "amount", "unit", "reference", "of", "form"), ONE_INGREDIENT)
-def test_one_ingredient(text: str, amount: float, unit: str, reference: str, of: Strength, form: str) -> None:
+@pytest.mark.parametrize("case", ONE_INGREDIENT, ids=lambda case: case[0])
+def test_one_ingredient(case: tuple[str, float, str, str, Strength, str]) -> None:
+    text, amount, unit, reference, of, form = case
     portion = read(text)
     assert portion.amount == Interval(low=amount, high=amount)
     assert portion.unit == unit
@@ -161,6 +171,7 @@ def test_hydrates(text: str) -> None:
         ("1 L of pH 1-2 unknown acid", "unknown acid", 1.0, 2.0),
         ("1 L of an unknown liquid at pH 7", "unknown liquid", 7.0, 7.0),
         ("1 L of unknown, pH below 2", "unknown", -1.0, 2.0),
+        ("1 L of unknown (pH 2)", "unknown", 2.0, 2.0),
     ],
 )
 def test_unknowns(text: str, words: str, low: float, high: float) -> None:
@@ -243,13 +254,15 @@ def test_characters_that_cannot_be_shown() -> None:
 def check(text: str) -> None:
     try:
         portion = read(text)
-    except InputError as error:
-        assert error.span is not None
-        assert 0 <= error.span.start <= error.span.end <= len(text)
-        assert "\n" not in error.message
+    except InputError as caught:
+        message, span = caught.message, caught.span
     else:
         assert portion.ingredients
         assert portion.amount.low <= portion.amount.high
+        return
+    assert span is not None
+    assert 0 <= span.start <= span.end <= len(text)
+    assert "\n" not in message
 
 
 @settings(max_examples=300, deadline=None)
@@ -265,10 +278,10 @@ def test_any_name_gives_a_portion_or_an_input_error(text: str) -> None:
 
 
 _PIECES = (
-    ["10 mL", "5 g", "1-2 L", "about ", " of ", "(", ")", " + ", "+", ", ", "6 %", "2 M", "5 mm", "NaCl", "acetone", "nitric acid"]
-    + [" in ", "pH 2", "pH", "conc. ", "saturated ", "powder", "solution", "unknown", "trace of ", "SMILES C", "CAS 1", "and", "blarg"]
-    + ["water", " ", ":", "1:10", ".", "·", "flurb", "of unknown strength", "(30 %)", "in", "%", "(aq)"]
-)  # fmt: skip
+    *("10 mL", "5 g", "1-2 L", "about ", " of ", "(", ")", " + ", "+", ", ", "6 %", "2 M", "5 mm", "NaCl", "acetone"),
+    *(" in ", "pH 2", "pH", "conc. ", "saturated ", "powder", "solution", "unknown", "trace of ", "SMILES C", "CAS 1"),
+    *("and", "blarg", "water", " ", ":", "1:10", ".", "·", "flurb", "of unknown strength", "(30 %)", "in", "%", "(aq)"),
+)
 
 
 @settings(max_examples=500, deadline=None)
@@ -276,3 +289,38 @@ _PIECES = (
 def test_pieces_of_labels_give_a_portion_or_an_input_error(pieces: list[str]) -> None:
     check("10 mL of " + "".join(pieces))
     check(" ".join(pieces))
+
+
+@pytest.fixture(scope="module")
+def graph_names() -> Names:
+    return Names(load_index())
+
+
+@pytest.mark.parametrize(
+    ("text", "references"),
+    [
+        ("500 mL of 6 % sodium hypochlorite", ["sodium-hypochlorite"]),
+        ("20 g of sodium sulfide nonahydrate", ["sodium-sulfide-nonahydrate"]),
+        ("20 g of Na2S.9H2O", ["sodium-sulfide-nonahydrate"]),
+        ("250 mL of 2 M NaOH", ["sodium-hydroxide"]),
+        ("50 mL of acetone", ["acetone"]),
+        ("1 L of (0.05 M mercury(II) nitrate + 0.5 M nitric acid)", ["mercury-ii-nitrate", "nitric-acid"]),
+        (
+            "4 L of (10-50 g/L copper sulfate + 0.5 M sulfuric acid in water)",
+            ["copper-ii-sulfate-pentahydrate", "sulfuric-acid"],
+        ),
+        ("about 2 L of household bleach", ["household-bleach"]),
+        ("5 g of zinc powder", ["zinc"]),
+        ("20 g of CAS 1313-82-2", ["sodium-sulfide"]),
+        ("10 mL of SMILES CC(=O)C", ["CC(=O)C"]),
+        ("200 mL of concentrated nitric acid", ["nitric-acid"]),
+        ("1 L of unknown, pH 2", ["unknown"]),
+        ("100 mL of N,N-dimethylformamide", ["dimethylformamide"]),
+        ("1 L of 2.5 M n-BuLi in hexanes", ["n-butyllithium"]),
+        ("1 L of 10% formalin", ["neutral-buffered-formalin"]),
+        ("100 mL of flurbium nitrate", ["unrecognised"]),
+    ],
+)
+def test_labels_against_the_graph(graph_names: Names, text: str, references: list[str]) -> None:
+    portion = parse_portion(text, graph_names)
+    assert [item.reference.partition(":")[2] or item.reference for item in portion.ingredients] == references

@@ -221,13 +221,36 @@ def test_a_wrong_unit_suggests_the_common_ones() -> None:
 def test_any_text_gives_an_interval_or_an_input_error(text: str, dimension: str) -> None:
     try:
         interval = parse_quantity(text, dimension)  # type: ignore[arg-type]
-    except InputError as error:
-        assert error.message
-        return
-    assert interval.low <= interval.high
+    except InputError as caught:
+        message = caught.message
+    else:
+        message = f"{interval.low} to {interval.high}"
+        assert interval.low <= interval.high
+    assert message
 
 
-_PIECES = ["1", "10", "-", " ", " to ", "about ", "up to ", "%", "mL", "g/L", "M", ",", ".", "/", "±", "x10^", "L-1", "½", "between ", " and "]
+_PIECES = [
+    "1",
+    "10",
+    "-",
+    " ",
+    " to ",
+    "about ",
+    "up to ",
+    "%",
+    "mL",
+    "g/L",
+    "M",
+    ",",
+    ".",
+    "/",
+    "±",
+    "x10^",
+    "L-1",
+    "½",
+    "between ",
+    " and ",
+]
 
 
 @given(st.lists(st.sampled_from(_PIECES), max_size=8).map("".join), st.sampled_from(sorted(NAMES_OF)))
@@ -235,9 +258,12 @@ def test_pieces_of_quantities_give_an_interval_or_an_input_error(text: str, dime
     for read in (lambda: parse_quantity(text, dimension), lambda: read_strength(Passage(text), 0, len(text))):  # type: ignore[arg-type]
         try:
             read()
-        except InputError as error:
-            assert error.span is not None
-            assert 0 <= error.span.start <= error.span.end <= len(text)
+        except InputError as caught:
+            span = caught.span
+        else:
+            continue
+        assert span is not None
+        assert 0 <= span.start <= span.end <= len(text)
 
 
 @given(st.floats(min_value=1e-6, max_value=1e6), st.sampled_from(["mL", "L", "µL", "gal"]))

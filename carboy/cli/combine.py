@@ -1,0 +1,62 @@
+"""``carboy combine``: may these bottles go together?"""
+
+from __future__ import annotations
+
+from typing import Annotated
+
+import typer
+
+from carboy.cli.output import status_of, write
+
+HELP = """May these bottles go together? They are poured one after the other, in the order given.
+
+\b
+carboy combine "500 mL of 6 % sodium hypochlorite" "100 mL of 31 % hydrochloric acid"
+carboy combine "about 2 L of household bleach" "250 mL of 2 M NaOH"
+carboy combine "50 g of sodium bicarbonate" "1 L of 1 M HCl" --volume "2 L" --cover sealed
+carboy combine "1 L of (0.05 M mercury(II) nitrate + 0.5 M nitric acid)" "20 g of CAS 1313-82-2"
+carboy combine "1 L of unknown, pH 2" "1 L of 0.1 M KCN" --place hood --hood-flow "0.4 m3/s"
+
+A portion is what stands on a label: amount, strength, name, formula, CAS number or SMILES.
+Ranges are followed to their ends: "10-50 g/L", "about 2 L", "up to 5 g", "trace of", "unknown"."""
+
+
+def combine(
+    portions: Annotated[list[str], typer.Argument(metavar="PORTION PORTION...", help="As read off the labels.", show_default=False)],
+    volume: Annotated[str, typer.Option(metavar="TEXT", help='Volume of the vessel, "2 L". Twice the content if not given.')] = "",
+    cover: Annotated[str, typer.Option(metavar="WORD", help="open, loose, vented or sealed.")] = "open",
+    material: Annotated[str, typer.Option(metavar="NAME", help='Of the vessel: glass, HDPE, "stainless steel".')] = "glass",
+    temperature: Annotated[str, typer.Option(metavar="TEXT", help='Of the place and the bottles, "22 degC".')] = "",
+    place: Annotated[str, typer.Option(metavar="WORD", help="hood, bench, room, outdoors, glovebox, cabinet or store.")] = "",
+    hood_flow: Annotated[str, typer.Option(metavar="TEXT", help='Air drawn by the hood, "0.4 m3/s".')] = "",
+    room_volume: Annotated[str, typer.Option(metavar="TEXT", help='"60 m3".')] = "",
+    air_changes: Annotated[str, typer.Option(metavar="TEXT", help='Of the room, "6 per hour".')] = "",
+    json: Annotated[bool, typer.Option("--json", help="Print the report as one JSON object.")] = False,
+    plain: Annotated[bool, typer.Option("--plain", help="ASCII without colour, for logs.")] = False,
+    full: Annotated[bool, typer.Option("--full", help="Every derivation, note and citation.")] = False,
+) -> None:
+    from carboy.errors import InputError
+    from carboy.reports.style import style_for
+    from carboy.reports.terminal import report_text
+    from carboy.text.cases import setting_from_mapping, vessel_from_mapping
+    from carboy.vetting import laboratory
+
+    if len(portions) < 2:
+        raise InputError(f"combine needs two portions or more, and this is one: '{portions[0]}'")
+    surroundings = {
+        "place": place,
+        "hood_flow": hood_flow,
+        "room_volume": room_volume,
+        "air_changes": air_changes,
+        "temperature": temperature,
+    }
+    setting = setting_from_mapping({key: value for key, value in surroundings.items() if value})
+    lab = laboratory()
+    described = {"volume": volume, "material": material, "cover": cover}
+    vessel = vessel_from_mapping("vessel", {key: value for key, value in described.items() if value}, lab.names)
+    report = lab.combine(tuple(portions), setting, vessel)
+    if json:
+        write(report.model_dump_json(indent=2))
+    else:
+        write(report_text(report, style_for(plain=plain), lab.index.sources, full=full))
+    raise typer.Exit(status_of([report]))

@@ -1,0 +1,42 @@
+"""Sources as numbers in the text and a list at its end."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator, Mapping
+
+from carboy.model.knowledge import Source
+from carboy.reports.style import Style, wrapped
+
+_SHORT = 96
+
+
+class Citations:
+    """Numbers sources in the order in which they are first cited. ``sources`` has what their keys stand for."""
+
+    def __init__(self, sources: Mapping[str, Source]) -> None:
+        self._sources = sources
+        self._order: dict[str, int] = {}
+
+    def marks(self, keys: Iterable[str]) -> str:
+        """``[1, 3]`` for the keys, ascending; empty for none."""
+        numbers = sorted(self._order.setdefault(key, len(self._order) + 1) for key in dict.fromkeys(keys))
+        return f"[{', '.join(map(str, numbers))}]" if numbers else ""
+
+    def lines(self, style: Style, *, full: bool) -> Iterator[str]:
+        """The list of what was cited, shortened unless ``full``."""
+        if not self._order:
+            return
+        yield ""
+        yield style.strong("Sources")
+        margin = len(str(len(self._order))) + 4
+        for key, number in self._order.items():
+            source = self._sources.get(key)
+            text = key if source is None else (source.citation if full else short(source.citation))
+            yield from wrapped(text, style.width, f"[{number}]".rjust(margin) + " ")
+
+
+def short(citation: str) -> str:
+    """The citation cut at a word after about a line."""
+    if len(citation) <= _SHORT:
+        return citation
+    return citation[:_SHORT].rsplit(" ", 1)[0].rstrip(" ,;:.") + " …"

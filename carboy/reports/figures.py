@@ -1,0 +1,58 @@
+"""Numbers as people read them: three figures, ranges, thin groups of thousands, units with proper signs."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+
+_UNITS = {"m3": "m³", "degC": "°C", "m3/s": "m³/s", "dm3": "dm³", "1": ""}
+_SUPERSCRIPT = str.maketrans("0123456789-+", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁺")
+_NO_BREAK = "\u00a0"
+
+
+def number(value: float, digits: int = 3) -> str:
+    """``value`` to ``digits`` significant figures: ``0.0765``, ``12.3``, ``1 004``, ``2.5×10⁻⁸``."""
+    if not math.isfinite(value):
+        return "unknown" if math.isnan(value) else ("no limit" if value > 0 else "below any figure")
+    if value == 0:
+        return "0"
+    size = abs(value)
+    if size >= 1e7 or size < 1e-3:
+        mantissa, _, exponent = f"{value:.{digits - 1}e}".partition("e")
+        mantissa = mantissa.rstrip("0").rstrip(".") if "." in mantissa else mantissa
+        power = str(int(exponent)).translate(_SUPERSCRIPT)
+        return f"{mantissa}×10{power}"
+    places = max(0, digits - 1 - math.floor(math.log10(size)))
+    text = f"{value:.{places}f}"
+    if "." in text:
+        text = text.rstrip("0").rstrip(".")
+    elif size >= 10 ** (digits + 1):
+        text = str(round(value, digits - 1 - math.floor(math.log10(size))) // 1).split(".", maxsplit=1)[0]
+    whole, dot, rest = text.partition(".")
+    sign, whole = ("−", whole[1:]) if whole.startswith("-") else ("", whole)
+    if len(whole) > 4:
+        head = len(whole) % 3
+        groups = [whole[:head]] if head else []
+        groups += [whole[i : i + 3] for i in range(head, len(whole), 3)]
+        whole = _NO_BREAK.join(groups)
+    return sign + whole + dot + rest
+
+
+def span(values: Sequence[float], digits: int = 3) -> str:
+    """One figure, or ``a to b`` where the ends differ as printed."""
+    ends = [number(value, digits) for value in values]
+    return ends[0] if len(set(ends)) == 1 else f"{ends[0]} to {ends[-1]}"
+
+
+def unit_text(unit: str) -> str:
+    """``m3`` as ``m³``, ``degC`` as ``°C``; others as they are."""
+    return _UNITS.get(unit, unit)
+
+
+def quantity(value: float | Sequence[float] | None, unit: str, digits: int = 3) -> str:
+    """A figure or range with its unit; the unit alone where there is no figure."""
+    shown = unit_text(unit)
+    if value is None:
+        return shown
+    figures = span(value, digits) if isinstance(value, Sequence) else number(value, digits)
+    return f"{figures}{_NO_BREAK}{shown}".rstrip(_NO_BREAK) if shown else figures

@@ -1,0 +1,85 @@
+"""The second part of a report on a terminal: what each finding rests on, and the vessel after each step."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+
+from carboy.model.report import Finding, Pair, Report, StepReport
+from carboy.reports.figures import quantity, span
+from carboy.reports.sentences import numbered
+from carboy.reports.style import Style, wrapped
+from carboy.reports.table import table
+
+_LEAST_SHOWN = 1e-12  # mol
+_LEAST_PRESSURE = 0.05  # kPa
+
+
+def measure_lines(report: Report, style: Style) -> Iterator[str]:
+    """The numbers of the findings above a note, with what they rest on."""
+    entries = [(number, finding) for number, finding in numbered(report) if finding.measures or finding.amount_mol]
+    if not entries:
+        return
+    yield ""
+    yield style.strong("Numbers")
+    rows: list[list[str]] = []
+    for number, finding in entries:
+        own = [_formed(finding, style)] if finding.amount_mol is not None and finding.species else []
+        for measure in finding.measures:
+            value = list(measure.value) if isinstance(measure.value, Sequence) else measure.value
+            own.append([measure.quantity, quantity(value, measure.unit), measure.basis])
+        rows += [[f"({number})" if place == 0 else "", *row] for place, row in enumerate(own)]
+    yield from table(rows, style.width, indent=2)
+
+
+def _formed(finding: Finding, style: Style) -> list[str]:
+    assert finding.amount_mol is not None
+    return [f"{style.formula(finding.species[0])} formed", quantity(list(finding.amount_mol), "mol"), ""]
+
+
+def step_lines(report: Report, style: Style) -> Iterator[str]:
+    """The vessel after each step: pH, temperature, pressure, volume, and what is in it."""
+    if not report.steps:
+        return
+    yield ""
+    yield style.strong("After each step")
+    with_pressure = any(step.gauge_kPa and max(step.gauge_kPa) > _LEAST_PRESSURE for step in report.steps)
+    with_vessel = len({step.vessel for step in report.steps}) > 1
+    head = ["step", *(["vessel"] if with_vessel else []), "pH", "°C", *(["kPa"] if with_pressure else []), "L", "what was done"]
+    rows = [head]
+    for step in report.steps:
+        row = [str(step.step), *([step.vessel] if with_vessel else []), _places(step.pH, 2), _places(step.temperature_C, 1)]
+        row += [_pair(step.gauge_kPa)] if with_pressure else []
+        rows.append([*row, _pair(step.volume_L), step.action])
+    yield from table(rows, style.width, indent=2)
+    for step in report.steps:
+        yield from _content(step, style)
+
+
+def _pair(values: Pair | float | None) -> str:
+    if values is None:
+        return "-"
+    return span(values if isinstance(values, tuple) else [values])
+
+
+def _places(values: Pair | None, places: int) -> str:
+    """With a set number of decimals, as pH and temperature are read off an instrument."""
+    if values is None:
+        return "-"
+    ends = [f"{value:.{places}f}".replace("-", "−") for value in values]
+    return ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
+
+
+def _content(step: StepReport, style: Style) -> Iterator[str]:
+    parts = []
+    split = {key.partition("(")[0] for key in step.dissolved_mol if "(" in key}
+    dissolved = {key: pair for key, pair in step.dissolved_mol.items() if key not in split}
+    for name, amounts in (("dissolved", dissolved), ("solid", step.solids_mol), ("gas", step.gas_mol)):
+        shown = [f"{_key(key, style)}\u00a0{span(pair)}" for key, pair in amounts.items() if pair[1] > _LEAST_SHOWN]
+        if shown:
+            parts.append(f"{name}, mol: {'; '.join(shown)}")
+    for place, part in enumerate(parts):
+        yield from wrapped(part, style.width, f"  step {step.step}  " if place == 0 else " " * (len(str(step.step)) + 9))
+
+
+def _key(key: str, style: Style) -> str:
+    return key if "(" in key else style.formula(key)

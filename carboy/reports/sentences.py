@@ -1,0 +1,110 @@
+"""The first part of a report on a terminal: verdict, dangers, what to do, in plain sentences."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+
+from carboy.model.report import Finding, GoalReport, Report
+from carboy.reports.citations import Citations
+from carboy.reports.figures import quantity
+from carboy.reports.style import Style, wrapped
+from carboy.reports.words import KINDS, OTHER_ORDER, VERDICTS, by_signal, moment_words, of_other_order
+
+_MARGIN = 9  # columns of "WARNING  "
+_MOST_NOTES = 6
+_FEW_STEPS = 2  # where the title says already what is poured into what
+
+
+def verdict_lines(report: Report, style: Style) -> Iterator[str]:
+    """The verdict and what it means, the title below."""
+    word = report.verdict.upper()
+    grave = report.verdict in ("refuse", "cannot say")
+    shown = style.alarm(word) if grave else style.strong(word)
+    lines = list(wrapped(VERDICTS[report.verdict], style.width, " " * (len(word) + 2)))
+    yield f"{shown}  {style.strong(lines[0].strip())}"
+    yield from lines[1:]
+    if report.title:
+        yield from wrapped(report.title, style.width)
+    if report.unrecognised:
+        yield ""
+        yield style.strong("Not recognised")
+        for item in report.unrecognised:
+            yield from wrapped(item, style.width, "  - ")
+
+
+def numbered(report: Report) -> list[tuple[int, Finding]]:
+    """The findings above a note with the numbers by which the report refers to them; those of the other order last."""
+    grave = [*by_signal(report, "danger"), *by_signal(report, "warning")]
+    grave += [one for one in of_other_order(report) if one.signal != "note"]
+    return list(enumerate(grave, start=1))
+
+
+def finding_lines(report: Report, style: Style, citations: Citations, *, full: bool) -> Iterator[str]:
+    """Dangers, warnings and notes in sentences, then what the other order of pouring would bring."""
+    actions = {step.step: step.action for step in report.steps} if len(report.steps) > _FEW_STEPS else {}
+    entries = numbered(report)
+    for number, finding in entries:
+        if finding.order != OTHER_ORDER:
+            yield ""
+            yield from _told(number, finding, actions, style, citations)
+    notes = by_signal(report, "note")
+    if notes:
+        yield ""
+    shown = notes if full else notes[:_MOST_NOTES]
+    for finding in shown:
+        where = f" (step {finding.step})" if actions else ""
+        yield from wrapped(f"{finding.summary}{where}", style.width, _head("NOTE", style), " " * _MARGIN)
+    if len(notes) > len(shown):
+        yield from wrapped(f"{len(notes) - len(shown)} more notes; --full shows them.", style.width, " " * _MARGIN)
+    turned = [(number, finding) for number, finding in entries if finding.order == OTHER_ORDER]
+    if turned:
+        yield ""
+        yield style.strong("If poured the other way round:")
+        for number, finding in turned:
+            yield ""
+            yield from _told(number, finding, actions, style, citations)
+
+
+def _head(word: str, style: Style) -> str:
+    shown = style.alarm(word) if word == "DANGER" else style.strong(word)
+    return shown + " " * (_MARGIN - len(word))
+
+
+def _told(number: int, finding: Finding, actions: dict[int, str], style: Style, citations: Citations) -> Iterator[str]:
+    margin = " " * _MARGIN
+    lines = list(wrapped(finding.summary, style.width, margin))
+    yield _head(finding.signal.upper(), style) + style.strong(lines[0][_MARGIN:])
+    yield from (margin + style.strong(line[_MARGIN:]) for line in lines[1:])
+    marks = citations.marks(finding.sources)
+    if finding.says or marks:
+        yield from wrapped(f"{finding.says} {marks}", style.width, margin)
+    if finding.controls:
+        yield f"{margin}What prevents it:"
+    for control in finding.controls:
+        yield from wrapped(control, style.width, f"{margin}- ")
+    about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions)}."
+    yield from (style.faint(line) for line in wrapped(about, style.width, margin))
+
+
+def goal_lines(goals: Sequence[GoalReport], style: Style) -> Iterator[str]:
+    """The aims of a procedure: met, not met, or open."""
+    if not goals:
+        return
+    yield ""
+    yield style.strong("Aims")
+    for goal in goals:
+        word = {True: "met", False: "NOT MET", None: "open"}[goal.met]
+        value = f" It comes to {quantity(list(goal.value), goal.unit)}." if goal.value is not None else " It cannot be told."
+        shown = style.alarm(word) if goal.met is False else word
+        yield from wrapped(f"{goal.goal}.{value}", style.width, f"  {shown}{' ' * (9 - len(word))}")
+
+
+def listed(title: str, items: Sequence[str], style: Style, *, faint: bool = False) -> Iterator[str]:
+    """A titled list; nothing for an empty one."""
+    if not items:
+        return
+    yield ""
+    yield style.strong(title)
+    for item in items:
+        for line in wrapped(item, style.width, "  - "):
+            yield style.faint(line) if faint else line
