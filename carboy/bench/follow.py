@@ -7,6 +7,7 @@ import numpy as np
 from carboy.bench.trace import Course
 from carboy.chemistry.heat import HeatBook
 from carboy.chemistry.mixture import Array, Mixture, poured_together
+from carboy.chemistry.stock import WATER
 from carboy.model.knowledge import Threshold
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.firing import Firing, Reactor
@@ -14,6 +15,7 @@ from carboy.reasoning.firing import Firing, Reactor
 _FINE = 41  # points of a path while there are few lanes
 _COARSE = 11
 _MANY = 12  # lanes of ranges above which the path is followed more coarsely
+_WATER_TO_DISSOLVE = 3.0  # mol of water that takes up one mol of salt or base with its heat; common practice, the order of a hydrate
 _CONTACT_SHARES = np.array([0.03, 0.1, 0.25, 0.5, 0.75, 0.9, 0.97])  # share of the vessel's liquid where the stream falls in
 
 
@@ -90,6 +92,7 @@ def _reacted(
     heat = heat + before - book.of_speciation(mixture)
     if together.neat:  # solids side by side: nothing dissolves
         heat = together.zeros()
+    heat = heat * _wetted(sources, together)
     capacity = np.maximum(book.heat_capacity(together), 1e-6)
     reached = together.temperature_C + heat / capacity
     return Course(mixture, together, firings, fractions, heat, reached, tuple(dict.fromkeys([*unknown, *missing])))
@@ -101,10 +104,20 @@ def _reaction_heat(book: HeatBook, firings: list[Firing], mixture: Mixture) -> t
     for firing in firings:
         enthalpy = book.of_reaction(firing.reaction.change)
         if enthalpy is None:
-            missing.append(firing.reaction.equation)
+            missing.append(firing.rule.title)
         else:
             heat = heat - enthalpy * firing.extent
     return heat, missing
+
+
+def _wetted(sources: tuple[Mixture, Mixture], together: Mixture) -> Array:
+    """Share of what was dry or neat that the water at hand can take up, ``[L]``: the first drops on a heap do not dissolve the heap."""
+    dry = together.zeros()
+    for source in sources:
+        for name in source.neat:
+            if together.stock.index.substances[name].yields:
+                dry = dry + together.labelled.get(name, together.zeros())
+    return np.clip(np.divide(together.total(WATER), _WATER_TO_DISSOLVE * dry, out=np.ones_like(dry), where=dry > 0), 0.0, 1.0)
 
 
 def _held_by(book: HeatBook, source: Mixture) -> tuple[Array, list[str]]:

@@ -126,7 +126,8 @@ class Bench:
             moles = amount * 1000 * density / molar
         grams = moles * molar
         self._put(substance, moles, made, hydrate=item.hydrate, companions=False)
-        made.mixture.neat = {substance.id: self.heat.of_dissolving(substance.id, neat=True)}
+        if set(self.stock.yield_of(substance.id)) != {WATER}:
+            made.mixture.neat = {substance.id: self.heat.of_dissolving(substance.id, neat=True)}
         made.mixture.mass_g = made.mixture.mass_g + grams
         if substance.state != "g":
             made.mixture.volume_L = made.mixture.volume_L + grams / 1000 / (density or 2.0)
@@ -139,7 +140,7 @@ class Bench:
         for token, count in brought.items():
             content.amounts[token] = content.total(token) + count * moles
         content.labelled[substance.id] = content.labelled.get(substance.id, content.zeros()) + moles
-        made.parts.append((substance.id, dissolution_equation(substance), {token: float(count * moles[0]) for token, count in brought.items()}))
+        made.parts.append((substance.id, dissolution_equation(substance, self.stock), {token: float(count * moles[0]) for token, count in brought.items()}))
         if companions:
             for other, ratio in substance.companions.items():
                 self._put(self.index.substances[other], moles * ratio, made, companions=False)

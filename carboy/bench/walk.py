@@ -25,7 +25,7 @@ from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.errors import InputError
 from carboy.model.plan import Add, Case, Check, Cover, Filter, Portion, Rinse, Temper, Transfer, VesselSpec, Wait
 from carboy.reasoning.binding import Surroundings
-from carboy.reasoning.equation import HYDROXIDE
+from carboy.reasoning.equation import HYDROXIDE, side_words
 from carboy.reasoning.firing import Firing, Reactor
 from carboy.reasoning.record import Record
 
@@ -268,10 +268,10 @@ class Walker:
                 for component, inner in self.stock.components_of(token).items():
                     if component not in (WATER, PROTON) and inner > 0:
                         made[component] = made.get(component, 0.0) + count * inner * most
-            walk.record.fired(
-                state.spec.name, firing.rule.id, firing.reaction.equation, consumed, made, number,
-                shown=(tuple(token for token, _ in firing.reaction.reactants), tuple(token for token, _ in firing.reaction.products)),
-            )
+            sides = (dict(firing.reaction.reactants), dict(firing.reaction.products))
+            equation = " -> ".join(side_words(side, self.stock) for side in sides)
+            shown = tuple(tuple(self.stock.label(token) for token in side) for side in sides)
+            walk.record.fired(state.spec.name, firing.rule.id, equation, consumed, made, number, shown=(shown[0], shown[1]))
 
     def _settle(self, state: VesselState, after: Mixture, walk: Walk, trace: StepTrace) -> None:
         """End of a step: what bubbled out of an open vessel is gone; remember what was here."""

@@ -95,6 +95,17 @@ class ChemicalStock:
         """The record of a species; KeyError if unknown."""
         return self.index.species[token]
 
+    def label(self, token: str) -> str:
+        """How a species is written in an equation: the formula of a solid, metal or gas, the name of an organic substance, the token of what
+        is dissolved."""
+        record = self.index.species.get(token)
+        if record is None:
+            substance = self.index.substances.get(token)
+            return token if substance is None else substance.name if substance.atoms.get("C") else substance.formula
+        if record.phase == "aq" or token.endswith("(g)"):
+            return token
+        return (record.name or token) if record.atoms.get("C") and token in self.index.substances else record.formula
+
     def molar_mass(self, token: str) -> float:
         """g/mol of a species or substance."""
         record = self.index.species.get(token) or self.index.substances[token]

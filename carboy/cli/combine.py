@@ -22,7 +22,7 @@ Ranges are followed to their ends: "10-50 g/L", "about 2 L", "up to 5 g", "trace
 
 
 def combine(
-    portions: Annotated[list[str], typer.Argument(metavar="PORTION PORTION...", help="As read off the labels.", show_default=False)],
+    portions: Annotated[list[str], typer.Argument(metavar="PORTION", help="As read off the labels.", show_default=False)],
     volume: Annotated[str, typer.Option(metavar="TEXT", help='Volume of the vessel, "2 L". Twice the content if not given.')] = "",
     cover: Annotated[str, typer.Option(metavar="WORD", help="open, loose, vented or sealed.")] = "open",
     material: Annotated[str, typer.Option(metavar="NAME", help='Of the vessel: glass, HDPE, "stainless steel".')] = "glass",

@@ -22,6 +22,7 @@ carboy look "muriatic acid"
 carboy ask "?r gives ?g, ?g is toxic-gas, ?r needs acid"
 
 Exit status: 0 no objection, 1 conditional or refuse, 3 cannot say, 2 the input is wrong.
+
 A screening aid, not a permit: the safety data sheets, the rules of the site and a qualified person decide."""
 
 app = typer.Typer(
@@ -49,12 +50,12 @@ def _common(
     pass
 
 
-app.command("combine", help=combine.HELP)(combine.combine)
-app.command("vet", help=vet.HELP)(vet.vet)
-app.command("look", help=look.HELP)(look.look)
-app.command("ask", help=ask.HELP)(ask.ask)
-app.command("rule", help=rule.HELP)(rule.rule)
-app.command("cases", help=cases.HELP)(cases.cases)
+app.command("combine", help=combine.HELP, short_help="May these bottles go together?")(combine.combine)
+app.command("vet", help=vet.HELP, short_help="Is this procedure safe, and does it reach its aim?")(vet.vet)
+app.command("look", help=look.HELP, short_help="What the graph knows of a thing.")(look.look)
+app.command("ask", help=ask.HELP, short_help="Ask the graph and the rules.")(ask.ask)
+app.command("rule", help=rule.HELP, short_help="A rule in its own words.")(rule.rule)
+app.command("cases", help=cases.HELP, short_help="Run the expect blocks of case files.")(cases.cases)
 app.add_typer(kb.app, name="kb")
 
 
@@ -71,6 +72,14 @@ def run() -> None:
         sys.exit(Status.OBJECTION)
     except KeyboardInterrupt:
         sys.exit(130)
+    except Exception as error:  # a fault of carboy itself: nothing was vetted, and that is what is said
+        if os.environ.get("CARBOY_TRACEBACK"):
+            raise
+        sys.stderr.write(
+            f"carboy: a fault of the program itself ({type(error).__name__}: {error}). Nothing was vetted.\n"
+            "Set CARBOY_TRACEBACK=1 and run it again to see where.\n"
+        )
+        sys.exit(Status.CANNOT_SAY)
 
 
 def shortened(message: str, most: int = 12) -> str:

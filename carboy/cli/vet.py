@@ -21,7 +21,7 @@ the gravest verdict, and --json prints a list of objects."""
 
 
 def vet(
-    files: Annotated[list[Path], typer.Argument(metavar="FILE...", help="Case files (YAML).", show_default=False)],
+    files: Annotated[list[Path], typer.Argument(metavar="FILE", help="Case files (YAML).", show_default=False)],
     json: Annotated[bool, typer.Option("--json", help="Print the report as one JSON object.")] = False,
     plain: Annotated[bool, typer.Option("--plain", help="ASCII without colour, for logs.")] = False,
     full: Annotated[bool, typer.Option("--full", help="Every derivation, note and citation.")] = False,

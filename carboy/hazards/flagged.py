@@ -249,6 +249,8 @@ def _class_draft(  # noqa: PLR0913
     if moment == "storage" and where == "contact":
         return None
     levels = course.table(levels)
+    if flag.kind in _END_STATE_ONLY and where == "path":
+        levels = np.where(np.arange(course.points) == course.points - 1, levels, 0)
     if not levels.any():
         return None
     terms = tuple(named_by(term, raised.bound, stock) for term in flag.terms) or tuple(dict.fromkeys(raised.bound.values()))

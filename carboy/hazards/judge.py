@@ -124,7 +124,8 @@ class Judge:
                 continue
             drawn = consumed_for(self.stock, target, max(float(draft.amount.max()) if draft.amount is not None else 0.0, 1e-12))
             watching = rule if sort == "equilibrium" and draft.rules and not draft.rules[0].does else "equilibrium"
-            nodes.append(record.fired(vessel, watching, equation, drawn, {target: 1.0}, number, sort="equilibrium", shown=(left, right)))
+            shown = (tuple(map(self.stock.label, left)), tuple(map(self.stock.label, right)))
+            nodes.append(record.fired(vessel, watching, equation, drawn, {target: 1.0}, number, sort="equilibrium", shown=shown))
         if not draft.equations:
             nodes += record.events_of(draft.cause_rule, number) if draft.cause_rule else []
             if not nodes and draft.rules:
@@ -135,7 +136,7 @@ class Judge:
                 for name in self._bound_tokens(draft):
                     drawn.update(dict.fromkeys(consumed_for(self.stock, name, 1.0), 1.0))
                 nodes.append(
-                    record.fired(vessel, rule, draft.rules[0].title, drawn, {}, number, sort="equilibrium", shown=(tuple(drawn), draft.tokens))
+                    record.fired(vessel, rule, draft.rules[0].title, drawn, {}, number, sort="equilibrium", shown=(tuple(map(self.stock.label, drawn)), tuple(map(self.stock.label, draft.tokens))))
                 )
         paths = [path for node in nodes for path in record.paths(node)]
         unique: list[list[PathStep]] = []

@@ -41,9 +41,11 @@ def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
         return []
     lane = int(np.argmax(rise[0]))
     most, top = float(rise[0, lane]), float(reached[0, lane])
-    words = f"The mixture warms by {figures(most)} K to about {figures(min(top, 999.0), 3)} °C if no heat is lost"
-    if boils.any():
-        words += "; near boiling, so it spatters" if top < BOILING_WATER else "; it boils and spatters"
+    if top >= BOILING_WATER and boils.any():
+        words = f"Heat enough to warm the mixture by {figures(most)} K: it boils and spatters"
+    else:
+        words = f"The mixture warms by {figures(most)} K to about {figures(top, 3)} °C if no heat is lost"
+        words += "; so near boiling it spatters" if boils.any() else ""
     summary = "; ".join([words, *reasons]) + "."
     measures = [
         Measure(quantity="heat set free", value=float(course.table(course.heat_kJ)[0, lane]), unit="kJ", basis="Hess's law from enthalpies of formation and dilution"),
@@ -139,7 +141,7 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
             measures.append(Measure(quantity="rating of the vessel", value=float(trace.rating_kPa[0]), unit="kPa", basis="as stated"))
         draft = Draft("pressure", (token,) if token else (), levels, course.fractions, where, trace, summary, None, measures)
         if token:
-            draft.amount = course.table(course.mixture.gases[token])
+            draft.amount = course.table(load(course.mixture, token).molecules)
             equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
             draft.equations = [("equilibrium", equation, left, right)]
         drafts.append(draft)

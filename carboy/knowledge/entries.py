@@ -94,7 +94,7 @@ def suggestions(text: str, index: Index, names: Names) -> tuple[str, ...]:
 
 def _listed(label: str, words: tuple[str, ...] | list[str]) -> Iterator[Fact]:
     if words:
-        yield Fact(label, ", ".join(words))
+        yield Fact(label, "; ".join(words))
 
 
 def _valued(label: str, value: Value | None) -> Iterator[Fact]:
@@ -119,7 +119,7 @@ def _substance(item: Substance, index: Index) -> Entry:
     facts.append(Fact("as bought", _STATES[item.state]))
     facts += _listed("classes", _all_classes(item.classes, index))
     facts += _listed("GHS statements", item.ghs)
-    if item.yields:
+    if item.yields and set(item.yields) != {item.id}:  # what stays what it is has nothing to tell
         facts.append(Fact("dissolves into", _sum(item.yields), form="equation"))
     if item.ion:
         facts.append(Fact("ion in dilute acid", item.ion, form="formula"))
@@ -182,7 +182,7 @@ def _species(item: Species, index: Index) -> Entry:
 def _equilibrium(item: Equilibrium) -> Iterator[Fact]:
     figure = f"log K {item.printed.magnitude:g} at 25 °C"
     if item.enthalpy is not None:
-        figure += f", {item.enthalpy.magnitude:g} {item.enthalpy.unit}"
+        figure += f", reaction enthalpy {item.enthalpy.magnitude:.4g} {item.enthalpy.unit}"
     note = f"{figure}; {item.printed.note}" if item.printed.note else figure
     yield Fact("equilibrium", item.reaction, form="equation", source=item.printed.source, note=note)
 
@@ -219,15 +219,16 @@ def _class(item: ChemicalClass, index: Index) -> Entry:
     facts += _listed("kinds of it", sorted(key for key, one in index.classes.items() if item.key in one.broader))
     members = sorted(
         {
-            one.name if isinstance(one, Substance) else one.token
+            one.name or one.token if isinstance(one, Species) else one.name
             for one in (*index.substances.values(), *index.species.values())
-            if any(item.key in index.ancestors.get(key, ()) for key in one.classes)
+            if not (isinstance(one, Species) and one.token in index.substances)
+            and any(item.key in index.ancestors.get(key, ()) for key in one.classes)
         }
     )
     shown = members[:_MOST_MEMBERS]
     more = len(members) - len(shown)
     if shown:
-        facts.append(Fact(f"members ({len(members)})", ", ".join(shown) + (f" and {more} more" if more else "")))
+        facts.append(Fact(f"members ({len(members)})", "; ".join(shown) + (f" and {more} more" if more else "")))
     return Entry("class", item.key, item.label, facts)
 
 

@@ -42,17 +42,21 @@ def formation_equation(stock: ChemicalStock, token: str) -> tuple[str, tuple[str
         left[WATER] = water
     elif water < 0:
         right[WATER] = -water
-    return f"{side_words(left)} -> {side_words(right)}", tuple(left), tuple(right)
+    return f"{side_words(left, stock)} -> {side_words(right, stock)}", tuple(left), tuple(right)
 
 
-def dissolution_equation(substance: Substance) -> str:
+def dissolution_equation(substance: Substance, stock: ChemicalStock) -> str:
     """``Na2S + H2O -> 2 Na+ + HS- + OH-``; the formula alone for what stays as it is."""
-    if not substance.yields:
+    made = {token: count for token, count in substance.yields.items() if token != substance.id}
+    if not made:
         return substance.formula
-    left = {substance.formula: 1.0, **{token: -count for token, count in substance.yields.items() if count < 0}}
-    return f"{side_words(left)} -> {side_words({token: count for token, count in substance.yields.items() if count > 0})}"
+    taken = {token: -count for token, count in made.items() if count < 0}
+    left = " + ".join(filter(None, (substance.formula, side_words(taken, stock))))
+    return f"{left} -> {side_words({token: count for token, count in made.items() if count > 0}, stock)}"
 
 
-def side_words(side: Mapping[str, float]) -> str:
+def side_words(side: Mapping[str, float], stock: ChemicalStock) -> str:
     """``2 H+ + CO3-2``."""
-    return " + ".join(token if abs(count - 1) < 1e-9 else f"{count:g} {token}" for token, count in side.items())
+    return " + ".join(
+        stock.label(token) if abs(count - 1) < 1e-9 else f"{count:g} {stock.label(token)}" for token, count in side.items()
+    )

@@ -13,11 +13,13 @@ from carboy.model.rule import Bound, Condition, Measured, Reaction, ReactionTerm
 from carboy.reasoning.binding import Binding, Mask, Surroundings, View
 from carboy.chemistry.balance import balance, imbalance
 from carboy.chemistry.relations import part_of
+from carboy.chemistry.roots import bracketed_root
 
 SPEEDS = ("at once", "minutes", "hours", "days")
 _FREE = (PROTON, WATER, "OH-")  # terms that never run out by count: the equilibria and the pH conditions limit them
 _ROUNDS = 8
-_HALVINGS = 10
+_PH_TOLERANCE = 0.03
+_EXTENT_PRECISION = 1e-4  # of the extent that the reactants would allow
 _LEAST_CHANGE = 1e-7  # of the amount at hand: smaller extents are not worth another round
 
 
@@ -28,15 +30,6 @@ class BoundReaction:
     reactants: tuple[tuple[str, float], ...]
     products: tuple[tuple[str, float], ...]
     change: dict[str, float]  # component -> mol gained per unit extent
-
-    @property
-    def equation(self) -> str:
-        """``A + 2 B -> C``."""
-        return " -> ".join(" + ".join(_term(token, count) for token, count in side) for side in (self.reactants, self.products))
-
-
-def _term(token: str, count: float) -> str:
-    return token if abs(count - 1.0) < 1e-9 else f"{count:g} {token}"
 
 
 @dataclass(frozen=True)
@@ -184,7 +177,7 @@ class Reactor:
         mask: Mask,
         record: list[Firing],
     ) -> Mixture | None:
-        mixture, surroundings = view.mixture, view.surroundings
+        mixture = view.mixture
         extent = np.full(mixture.lanes, np.inf)
         scale = mixture.zeros()
         for token, count in bound.reactants:
@@ -206,7 +199,7 @@ class Reactor:
         limits = _depends_on_pH(conditions)
         uses_protons = abs(bound.change.get(PROTON, 0.0)) > 0
         if limits and uses_protons:
-            extent = self._held_by_pH(mixture, bound, limits, extent, surroundings)
+            extent = self._held_by_pH(mixture, bound, limits, extent)
             extent = np.where(extent > np.maximum(TRACE, _LEAST_CHANGE * scale), extent, 0.0)
             if not extent.any():
                 return None
@@ -215,30 +208,41 @@ class Reactor:
         return changed
 
     def _held_by_pH(
-        self, mixture: Mixture, bound: BoundReaction, limits: list[Measured], extent: Array, surroundings: Surroundings
+        self, mixture: Mixture, bound: BoundReaction, limits: list[Measured], extent: Array
     ) -> Array:
         """The largest extent, found on the equilibrium, at which the pH conditions of the rule still hold."""
         active = np.flatnonzero(extent > 0)
         part = mixture.take(active)
-        full = extent[active]
+        trial = applied(part, bound, extent[active])
+        result = extent.copy()
+        stopped = np.flatnonzero(_beyond(limits, trial.pH) > 0)
+        if not len(stopped):
+            return result
+        part, full = part.take(stopped), extent[active][stopped]
+        state = part
 
-        def kept(trial: Array) -> Mask:
-            view = View(applied(part, bound, trial), surroundings)
-            good = np.ones(len(active), dtype=bool)
-            for condition in limits:
-                good &= view.holds(condition, {})
-            return good
+        def excess(share: Array) -> Array:
+            nonlocal state
+            state = applied(state.with_amounts(part.amounts), bound, share * full)
+            return _beyond(limits, state.pH)
 
-        good = kept(full)
-        low, high = np.where(good, full, 0.0), full.copy()
-        for _ in range(_HALVINGS if not good.all() else 0):
-            middle = 0.5 * (low + high)
-            fine = kept(middle)
-            low = np.where(fine & ~good, middle, low)
-            high = np.where(~fine & ~good, middle, high)
-        result = np.zeros(mixture.lanes)
-        result[active] = np.where(good, full, low)
+        # a strong acid or base is used up when its excess is; a buffer makes the search go on from there
+        free = np.abs(part.total(PROTON)) / abs(bound.change[PROTON]) / full
+        none, whole = np.zeros(len(full)), np.ones(len(full))
+        share = bracketed_root(excess, none, whole, tolerance=_PH_TOLERANCE, precision=_EXTENT_PRECISION, guess=free)
+        result[active[stopped]] = share * full
         return result
+
+
+def _beyond(limits: list[Measured], pH: Array) -> Array:
+    """By how much, in pH units, the nearest pH condition is overstepped ``[L]``; negative while all hold."""
+    over = np.full(len(pH), -np.inf)
+    for limit in limits:
+        if np.isfinite(limit.high):
+            over = np.maximum(over, pH - limit.high)
+        if np.isfinite(limit.low):
+            over = np.maximum(over, limit.low - pH)
+    return over
 
 
 def applied(mixture: Mixture, bound: BoundReaction, extent: Array) -> Mixture:

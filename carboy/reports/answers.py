@@ -14,7 +14,7 @@ def answers_text(variables: Sequence[str], answers: Sequence[Mapping[str, tuple[
     if not answers:
         return style.finished("Nothing in the graph and the rules answers that.\n")
     rows = [[_shown(answer[name], index, style) for name in variables] for answer in answers]
-    lines = list(table([list(variables), *rows], style.width, flowing=False))
+    lines = list(table([list(variables), *rows], style.width))
     count = "1 answer" if len(answers) == 1 else f"{len(answers)} answers"
     return style.finished("\n".join([style.strong(lines[0]), *lines[1:], "", count]) + "\n")
 

@@ -11,6 +11,7 @@ from carboy.reports.figures import quantity
 from carboy.reports.style import Style
 from carboy.reports.table import table
 
+_LABEL = 24  # columns
 _EXACT = 6  # significant figures: a value is shown as the graph has it
 
 
@@ -28,7 +29,7 @@ def _lines(found: Sequence[Entry], style: Style, citations: Citations) -> Iterat
         shown = style.formula(entry.name) if entry.sort in ("species", "gas") else entry.name
         token = f" {style.formula(entry.id)}" if entry.sort in ("species", "gas") and entry.id != entry.name else ""
         yield f"{style.strong(shown)}{token}, {entry.sort}"
-        yield from table([_row(fact, style, citations) for fact in entry.facts], style.width, indent=2)
+        yield from table([_row(fact, style, citations) for fact in entry.facts], style.width, indent=2, limits={0: _LABEL})
 
 
 def _row(fact: Fact, style: Style, citations: Citations) -> list[str]:
@@ -40,11 +41,20 @@ def _row(fact: Fact, style: Style, citations: Citations) -> list[str]:
     elif fact.form == "formula":
         text = style.formula(fact.text)
     elif fact.form == "equation":
-        text = " + ".join(map(style.formula, fact.text.split(" + "))) if _is_sum(fact.text) else style.equation(fact.text)
+        text = _sum_text(fact.text, style) if _is_sum(fact.text) else style.equation(fact.text)
     marks = citations.marks([fact.source]) if fact.source else ""
     behind = "; ".join(notes)
     tail = f" ({behind})" if behind else ""
     return [fact.label, f"{text}{tail}" + (f" {marks}" if marks else "")]
+
+
+def _sum_text(text: str, style: Style) -> str:
+    """``2 Na+ + HS-`` with its formulas as the style shows them."""
+    terms = []
+    for term in text.split(" + "):
+        count, blank, token = term.rpartition(" ")
+        terms.append(f"{count}{blank}{style.formula(token)}")
+    return " + ".join(terms)
 
 
 def _is_sum(text: str) -> bool:

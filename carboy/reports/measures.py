@@ -12,6 +12,7 @@ from carboy.reports.table import table
 
 _LEAST_SHOWN = 1e-12  # mol
 _LEAST_PRESSURE = 0.05  # kPa
+_LABEL, _VALUE = 27, 20  # columns for the name and the figure of a measure
 
 
 def measure_lines(report: Report, style: Style) -> Iterator[str]:
@@ -28,7 +29,7 @@ def measure_lines(report: Report, style: Style) -> Iterator[str]:
             value = list(measure.value) if isinstance(measure.value, Sequence) else measure.value
             own.append([measure.quantity, quantity(value, measure.unit), measure.basis])
         rows += [[f"({number})" if place == 0 else "", *row] for place, row in enumerate(own)]
-    yield from table(rows, style.width, indent=2)
+    yield from table(rows, style.width, indent=2, limits={1: _LABEL, 2: _VALUE})
 
 
 def _formed(finding: Finding, style: Style) -> list[str]:
@@ -50,7 +51,7 @@ def step_lines(report: Report, style: Style) -> Iterator[str]:
         row = [str(step.step), *([step.vessel] if with_vessel else []), _places(step.pH, 2), _places(step.temperature_C, 1)]
         row += [_pair(step.gauge_kPa)] if with_pressure else []
         rows.append([*row, _pair(step.volume_L), step.action])
-    yield from table(rows, style.width, indent=2)
+    yield from table(rows, style.width, indent=2, limits={1: 16} if with_vessel else {})
     for step in report.steps:
         yield from _content(step, style)
 

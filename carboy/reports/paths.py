@@ -17,7 +17,7 @@ def path_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
         if not finding.path:
             continue
         for numbers, other in groups:
-            if _same(finding, other) and _shape(finding.path) == _shape(other.path):
+            if finding.order == other.order and _shape(finding.path) == _shape(other.path):
                 numbers.append(number)
                 break
         else:
@@ -40,10 +40,6 @@ def path_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
         for other in finding.other_paths if full else []:
             yield from wrapped("or", style.width, " " * 6)
             yield from drawn(other, finding.species, style, indent=6)
-
-
-def _same(first: Finding, second: Finding) -> bool:
-    return first.species == second.species and first.step == second.step and first.order == second.order
 
 
 def _shape(path: list[PathStep]) -> list[tuple[str, ...]]:

@@ -30,6 +30,7 @@ def verdict_lines(report: Report, style: Style) -> Iterator[str]:
         yield style.strong("Not recognised")
         for item in report.unrecognised:
             yield from wrapped(item, style.width, "  - ")
+        yield from wrapped("What it does is not judged; the rest is, as if it were not there.", style.width, "  ")
 
 
 def numbered(report: Report) -> list[tuple[int, Finding]]:
@@ -43,17 +44,18 @@ def finding_lines(report: Report, style: Style, citations: Citations, *, full: b
     """Dangers, warnings and notes in sentences, then what the other order of pouring would bring."""
     actions = {step.step: step.action for step in report.steps} if len(report.steps) > _FEW_STEPS else {}
     entries = numbered(report)
+    told: dict[str, int] = {}
     for number, finding in entries:
         if finding.order != OTHER_ORDER:
             yield ""
-            yield from _told(number, finding, actions, style, citations)
+            yield from _told(number, finding, actions, style, citations, told)
     notes = by_signal(report, "note")
     if notes:
         yield ""
     shown = notes if full else notes[:_MOST_NOTES]
     for finding in shown:
         where = f" (step {finding.step})" if actions else ""
-        yield from wrapped(f"{finding.summary}{where}", style.width, _head("NOTE", style), " " * _MARGIN)
+        yield from wrapped(style.words(f"{finding.summary}{where}"), style.width, _head("NOTE", style), " " * _MARGIN)
     if len(notes) > len(shown):
         yield from wrapped(f"{len(notes) - len(shown)} more notes; --full shows them.", style.width, " " * _MARGIN)
     turned = [(number, finding) for number, finding in entries if finding.order == OTHER_ORDER]
@@ -62,7 +64,7 @@ def finding_lines(report: Report, style: Style, citations: Citations, *, full: b
         yield style.strong("If poured the other way round:")
         for number, finding in turned:
             yield ""
-            yield from _told(number, finding, actions, style, citations)
+            yield from _told(number, finding, actions, style, citations, told)
 
 
 def _head(word: str, style: Style) -> str:
@@ -70,18 +72,29 @@ def _head(word: str, style: Style) -> str:
     return shown + " " * (_MARGIN - len(word))
 
 
-def _told(number: int, finding: Finding, actions: dict[int, str], style: Style, citations: Citations) -> Iterator[str]:
+def _told(  # noqa: PLR0913
+    number: int, finding: Finding, actions: dict[int, str], style: Style, citations: Citations, told: dict[str, int]
+) -> Iterator[str]:
+    """One finding. ``told`` has what was said of others before, so that nothing is said twice."""
     margin = " " * _MARGIN
-    lines = list(wrapped(finding.summary, style.width, margin))
+    marks = citations.marks(finding.sources)
+    summary = finding.summary if finding.says else f"{finding.summary} {marks}"
+    lines = list(wrapped(style.words(summary), style.width, margin))
     yield _head(finding.signal.upper(), style) + style.strong(lines[0][_MARGIN:])
     yield from (margin + style.strong(line[_MARGIN:]) for line in lines[1:])
-    marks = citations.marks(finding.sources)
-    if finding.says or marks:
-        yield from wrapped(f"{finding.says} {marks}", style.width, margin)
-    if finding.controls:
+    said = told.setdefault(finding.says, number) if finding.says else number
+    if said == number and finding.says:
+        yield from wrapped(style.words(f"{finding.says} {marks}"), style.width, margin)
+    controls = [control for control in finding.controls if told.setdefault(control, number) == number]
+    if controls:
         yield f"{margin}What prevents it:"
-    for control in finding.controls:
-        yield from wrapped(control, style.width, f"{margin}- ")
+    for control in controls:
+        yield from wrapped(style.words(control), style.width, f"{margin}- ")
+    before = {said} | {told[control] for control in finding.controls}
+    before.discard(number)
+    if before:
+        numbers = " and ".join(f"({one})" for one in sorted(before))
+        yield from wrapped(f"{'See' if controls else 'Why, and what prevents it: see'} {numbers}{' too' if controls else ''}.", style.width, margin)
     about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions)}."
     yield from (style.faint(line) for line in wrapped(about, style.width, margin))
 

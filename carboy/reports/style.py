@@ -27,6 +27,7 @@ _ASCII = {
 }  # fmt: skip
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻", "0123456789+-")
 _BOXES = str.maketrans("─│┐┘┤├┬┴┼└┌", "-|+++++++++")
+_ION = re.compile(r"(?<![\w+-])(?:[A-Z][a-z]?\d*|\((?:[A-Z][a-z]?\d*)+\)\d*)+[+-]\d?(?![\w+-])")
 _POWER = re.compile("×10([⁰¹²³⁴⁵⁶⁷⁸⁹⁻]+)")
 
 
@@ -41,6 +42,10 @@ class Style:
     def formula(self, token: str) -> str:
         """A species token with raised and lowered figures, or as the graph writes it if plain."""
         return token if self.plain else pretty_formula(token)
+
+    def words(self, text: str) -> str:
+        """A sentence in which the ions are shown as formulas."""
+        return text if self.plain else _ION.sub(lambda found: pretty_formula(found[0]), text)
 
     def equation(self, text: str) -> str:
         """An equation likewise; text that is no equation is given back."""

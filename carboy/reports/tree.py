@@ -51,7 +51,7 @@ def linked(path: Sequence[PathStep], goal: Sequence[str] = ()) -> Link:
             if shared:
                 user, used = later, shared
                 break
-        link.brings = used[:_MOST_NAMED] or [""]
+        link.brings = list(dict.fromkeys(used))[:_MOST_NAMED]
         user.suppliers.append(link)
     return root
 

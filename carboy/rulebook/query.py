@@ -35,7 +35,8 @@ Answer = dict[str, Thing]
 
 RELATIONS = ("dissolves into", "is", "gives", "needs", "flags", "cites", "contains", "attacks")
 MOST_ANSWERS = 5000
-_CLAUSE = re.compile(rf"(?P<subject>\S.*?)\s+(?P<relation>{'|'.join(RELATIONS).replace(' ', r'\s+')})\s+(?P<object>\S.*)")
+_RELATION = "|".join(RELATIONS).replace(" ", r"\s+")
+_CLAUSE = re.compile(rf"(?P<subject>\S.*?)\s+(?P<relation>{_RELATION})\s+(?P<object>\S.*)")
 _VARIABLE = re.compile(r"\?[a-z][a-z0-9_]*")
 _PROTON, _HYDROXIDE = "H+", "OH-"
 _ACID, _BASE = "acid", "base"  # class keys
