@@ -68,7 +68,9 @@ class Laboratory:
         findings = self.judge.findings(walk)
         return self._report(walk, findings)
 
-    def combine(self, portions: tuple[str, ...], setting: Setting | None = None, vessel: VesselSpec | None = None) -> Report:
+    def combine(
+        self, portions: tuple[str, ...], setting: Setting | None = None, vessel: VesselSpec | None = None
+    ) -> Report:
         """The report on portions poured together one after the other, and on the other order where there are two."""
         case = combine_case(portions, self.names, setting, vessel)
         walk = self.walk(case)
@@ -81,7 +83,11 @@ class Laboratory:
 
     def _report(self, walk: Walk, findings: list[Finding]) -> Report:
         unsettled = [note for trace in walk.steps for note in trace.notes if "converge" in note]
-        assumptions = [*walk.assumptions, *self._range_words(walk), *(note for trace in walk.steps for note in trace.notes)]
+        assumptions = [
+            *walk.assumptions,
+            *self._range_words(walk),
+            *(note for trace in walk.steps for note in trace.notes),
+        ]
         assumptions += self._beyond(walk)
         questions = [*walk.questions, *self._questions(walk, findings)]
         return Report(
@@ -109,8 +115,8 @@ class Laboratory:
                     words.append(f"Step {trace.number}: no water, so rules and amounts speak alone.")
             elif mixture.solved is not None and np.any(mixture.solved.outside_activity_range):
                 words.append(
-                    f"Step {trace.number}: ionic strength {float(mixture.solved.ionic_strength.max()):.2g} mol/kg is beyond the range of the activity model; "
-                    "directions hold, figures near a limit do not."
+                    f"Step {trace.number}: ionic strength {float(mixture.solved.ionic_strength.max()):.2g} mol/kg is beyond "
+                    "the range of the activity model; directions hold, figures near a limit do not."
                 )
         return words
 
@@ -154,7 +160,9 @@ def passes_by(finding: Finding) -> bool:
 
 def verdict_of(findings: list[Finding], cannot_say: bool) -> Verdict:
     """Refuse outranks cannot say, which outranks conditional. A danger that only one order of pouring brings is a condition."""
-    standing = [f for f in findings if f.signal == "danger" and f.order != "other order" and OTHER_ORDER not in f.controls]
+    standing = [
+        f for f in findings if f.signal == "danger" and f.order != "other order" and OTHER_ORDER not in f.controls
+    ]
     if standing:
         return "refuse"
     if cannot_say:

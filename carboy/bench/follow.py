@@ -5,7 +5,7 @@ from __future__ import annotations
 import numpy as np
 
 from carboy.bench.trace import Course
-from carboy.chemistry.heat import HeatBook
+from carboy.chemistry.heat import HeatBook, heat_book
 from carboy.chemistry.mixture import Array, Mixture, poured_together
 from carboy.chemistry.stock import WATER
 from carboy.model.knowledge import Threshold
@@ -15,8 +15,12 @@ from carboy.reasoning.firing import Firing, Reactor
 _FINE = 41  # points of a path while there are few lanes
 _COARSE = 11
 _MANY = 12  # lanes of ranges above which the path is followed more coarsely
-_WATER_TO_DISSOLVE = 3.0  # mol of water that takes up one mol of salt or base with its heat; common practice, the order of a hydrate
-_CONTACT_SHARES = np.array([0.03, 0.1, 0.25, 0.5, 0.75, 0.9, 0.97])  # share of the vessel's liquid where the stream falls in
+_WATER_TO_DISSOLVE = (
+    3.0  # mol of water that takes up one mol of salt or base with its heat; common practice, the order of a hydrate
+)
+_CONTACT_SHARES = np.array(
+    [0.03, 0.1, 0.25, 0.5, 0.75, 0.9, 0.97]
+)  # share of the vessel's liquid where the stream falls in
 
 
 def path_fractions(ranges: int) -> Array:
@@ -26,7 +30,13 @@ def path_fractions(ranges: int) -> Array:
 
 
 def along(
-    vessel: Mixture, added: Mixture, reactor: Reactor, surroundings: Surroundings, *, capacity_L: Array | None, air_mol: Array | None
+    vessel: Mixture,
+    added: Mixture,
+    reactor: Reactor,
+    surroundings: Surroundings,
+    *,
+    capacity_L: Array | None,
+    air_mol: Array | None,
 ) -> Course:
     """The vessel along the dosing path. Every point is the vessel with that fraction of the addition in it, reacted.
 
@@ -40,10 +50,14 @@ def along(
     if capacity_L is not None:
         together.headspace_L = np.maximum(np.repeat(capacity_L, points) - together.volume_L, 1e-3)
         together.air_mol = None if air_mol is None else np.repeat(air_mol, points)
-    return _reacted(together, (vessel, added), (np.ones(points), fractions), fractions, reactor, surroundings, "minutes")
+    return _reacted(
+        together, (vessel, added), (np.ones(points), fractions), fractions, reactor, surroundings, "minutes"
+    )
 
 
-def at_contact(vessel: Mixture, added: Mixture, reactor: Reactor, surroundings: Surroundings, thresholds: dict[str, Threshold]) -> Course:
+def at_contact(
+    vessel: Mixture, added: Mixture, reactor: Reactor, surroundings: Surroundings, thresholds: dict[str, Threshold]
+) -> Course:
     """The place where the stream falls in: a parcel of the addition, undiluted, with growing shares of the vessel's liquid."""
     points = len(_CONTACT_SHARES)
     share = thresholds["contact-share"].value.magnitude
@@ -65,7 +79,7 @@ def at_contact(vessel: Mixture, added: Mixture, reactor: Reactor, surroundings: 
 def stored(vessel: Mixture, reactor: Reactor, surroundings: Surroundings, slowest: str) -> Course:
     """What still goes on when the vessel is left: rules of hours and days."""
     mixture, firings = reactor.run(vessel, surroundings, slowest=slowest)
-    heat, _ = _reaction_heat(HeatBook(vessel.stock), firings, vessel)
+    heat, _ = _reaction_heat(heat_book(vessel.stock), firings, vessel)
     return Course(mixture, vessel, firings, np.array([1.0]), heat, vessel.temperature_C)
 
 
@@ -78,7 +92,7 @@ def _reacted(
     surroundings: Surroundings,
     slowest: str,
 ) -> Course:
-    book = HeatBook(together.stock)
+    book = heat_book(together.stock)
     mixture, firings = reactor.run(together, surroundings, slowest=slowest)
     points = len(fractions)
     before = together.zeros()
@@ -117,7 +131,9 @@ def _wetted(sources: tuple[Mixture, Mixture], together: Mixture) -> Array:
         for name in source.neat:
             if together.stock.index.substances[name].yields:
                 dry = dry + together.labelled.get(name, together.zeros())
-    return np.clip(np.divide(together.total(WATER), _WATER_TO_DISSOLVE * dry, out=np.ones_like(dry), where=dry > 0), 0.0, 1.0)
+    return np.clip(
+        np.divide(together.total(WATER), _WATER_TO_DISSOLVE * dry, out=np.ones_like(dry), where=dry > 0), 0.0, 1.0
+    )
 
 
 def _held_by(book: HeatBook, source: Mixture) -> tuple[Array, list[str]]:

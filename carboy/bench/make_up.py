@@ -8,16 +8,18 @@ from functools import cached_property
 import numpy as np
 
 from carboy.bench.ranges import Ranges
+from carboy.chemistry.heat import heat_book
+from carboy.chemistry.mixture import WATER_MOLAR_MASS, Array, Mixture, empty
 from carboy.chemistry.roots import bracketed_root
-from carboy.chemistry.heat import HeatBook
-from carboy.chemistry.mixture import WATER_MOLAR_MASS, Array, Mixture
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.model.knowledge import Material, Substance
 from carboy.model.plan import Ingredient, Interval, Portion
 from carboy.reasoning.equation import dissolution_equation
 
 WATER_DENSITY = 0.997  # g/mL at 25 degC, CRC Handbook (from memory)
-DISSOLVED_SALT_DENSITY = 2.5  # g/mL, apparent, for solutes whose solutions have no density in the graph; common practice
+DISSOLVED_SALT_DENSITY = (
+    2.5  # g/mL, apparent, for solutes whose solutions have no density in the graph; common practice
+)
 UNKNOWN_LIQUID_DENSITY = 0.9  # g/mL for an organic liquid without a density in the graph; common practice
 MOLAR_VOLUME = 24.465  # L/mol of gas at 25 degC and 1 atm
 _PH_TOLERANCE = 0.003
@@ -32,7 +34,9 @@ class MadeUp:
     assumptions: list[str] = field(default_factory=list)
     questions: list[str] = field(default_factory=list)
     unrecognised: list[str] = field(default_factory=list)
-    parts: list[tuple[str, str, dict[str, float]]] = field(default_factory=list)  # substance id, its equation, nominal mol of components
+    parts: list[tuple[str, str, dict[str, float]]] = field(
+        default_factory=list
+    )  # substance id, its equation, nominal mol of components
 
 
 class Bench:
@@ -42,7 +46,7 @@ class Bench:
         self.stock = stock
         self.index = stock.index
         self.ranges = ranges
-        self.heat = HeatBook(stock)
+        self.heat = heat_book(stock)
 
     @cached_property
     def concentrated(self) -> dict[str, Material]:
@@ -54,7 +58,9 @@ class Bench:
         points: dict[str, list[tuple[float, float]]] = {}
         for item in self.index.materials.values():
             if item.density is not None and len(item.parts) == 1 and item.balance == "water" and item.state == "l":
-                points.setdefault(item.parts[0].substance, []).append((item.parts[0].typical / 100, item.density.magnitude))
+                points.setdefault(item.parts[0].substance, []).append(
+                    (item.parts[0].typical / 100, item.density.magnitude)
+                )
         for identity, substance in self.index.substances.items():
             if substance.state == "l" and substance.density is not None:
                 points.setdefault(identity, []).append((1.0, substance.density.magnitude))
@@ -70,16 +76,15 @@ class Bench:
 
     def make_up(self, portion: Portion, key: str, temperature_C: float) -> MadeUp:
         """The content of ``portion``. ``key`` names it in the ranges ("bottle rinse-14", "portion 2")."""
-        made = MadeUp(Mixture(self.stock, {}, {}, *(np.zeros(self.ranges.lanes) for _ in range(3))))
+        made = MadeUp(empty(self.stock, self.ranges.lanes, temperature_C))
         amount = self._draw(f"amount of {portion.text}", portion.amount)
-        made.mixture.temperature_C = np.full(self.ranges.lanes, temperature_C)
         solids = self._as_pure(portion)
         if solids is not None:
             self._pure(portion, solids, amount, made)
         else:
             self._solution(portion, amount, key, made)
         if portion.pH is not None:
-            self._state_pH(portion, key, made)
+            self._state_pH(portion, made)
         return made
 
     def _draw(self, key: str, interval: Interval, nominal: float | None = None) -> Array:
@@ -140,7 +145,13 @@ class Bench:
         for token, count in brought.items():
             content.amounts[token] = content.total(token) + count * moles
         content.labelled[substance.id] = content.labelled.get(substance.id, content.zeros()) + moles
-        made.parts.append((substance.id, dissolution_equation(substance, self.stock), {token: float(count * moles[0]) for token, count in brought.items()}))
+        made.parts.append(
+            (
+                substance.id,
+                dissolution_equation(substance, self.stock),
+                {token: float(count * moles[0]) for token, count in brought.items()},
+            )
+        )
         if companions:
             for other, ratio in substance.companions.items():
                 self._put(self.index.substances[other], moles * ratio, made, companions=False)
@@ -156,7 +167,9 @@ class Bench:
                 continue
             kind, _, identity = item.reference.partition(":")
             if kind == "material":
-                density_known = self._material(self.index.materials[identity], item, key, made, fractions, alone=len(portion.ingredients) == 1)
+                density_known = self._material(
+                    self.index.materials[identity], item, key, made, fractions, alone=len(portion.ingredients) == 1
+                )
             elif kind == "substance":
                 substance = self.index.substances[identity]
                 unit, figure = self._figure(substance, item, portion, made)
@@ -213,22 +226,40 @@ class Bench:
         return "mol/L", self._draw(name, Interval(low=min(low, high), high=high))
 
     def _saturation(self, substance: Substance) -> float | None:
-        if substance.solubility is None or not np.isfinite(substance.solubility.magnitude) or substance.solubility.magnitude >= 1e6:
+        if (
+            substance.solubility is None
+            or not np.isfinite(substance.solubility.magnitude)
+            or substance.solubility.magnitude >= 1e6
+        ):
             return None
         return substance.solubility.magnitude
 
     def _material(
-        self, material: Material, item: Ingredient, key: str, made: MadeUp, fractions: list[tuple[Substance, float, str, Array]], *, alone: bool
+        self,
+        material: Material,
+        item: Ingredient,
+        key: str,
+        made: MadeUp,
+        fractions: list[tuple[Substance, float, str, Array]],
+        *,
+        alone: bool,
     ) -> Array | None:
         stated = item.strength.value is not None
         for place, part in enumerate(material.parts):
             substance = self.index.substances[part.substance]
             if place == 0 and stated:
-                unit, figure = self._figure(substance, item, Portion(text=item.words, amount=Interval(low=1, high=1), unit="L", ingredients=(item,)), made)
+                unit, figure = self._figure(
+                    substance,
+                    item,
+                    Portion(text=item.words, amount=Interval(low=1, high=1), unit="L", ingredients=(item,)),
+                    made,
+                )
                 fractions.append((substance, 0.0, unit, figure))
                 continue
             figure = self._draw(
-                f"{substance.name} in {item.words} ({key})", Interval(low=part.low / 100, high=part.high / 100), part.typical / 100
+                f"{substance.name} in {item.words} ({key})",
+                Interval(low=part.low / 100, high=part.high / 100),
+                part.typical / 100,
             )
             fractions.append((substance, 0.0, "w/w", figure))
         if material.balance != "water":
@@ -273,7 +304,11 @@ class Bench:
         return charge or 1.0
 
     def _bulk(
-        self, portion: Portion, amount: Array, fractions: list[tuple[Substance, float, str, Array]], density: Array | None
+        self,
+        portion: Portion,
+        amount: Array,
+        fractions: list[tuple[Substance, float, str, Array]],
+        density: Array | None,
     ) -> tuple[Array, Array]:
         """Litres and grams of the whole solution; the density is found together with the mass fractions."""
         if density is None:
@@ -286,7 +321,9 @@ class Bench:
             for _ in range(6):
                 excess = np.zeros(self.ranges.lanes)
                 for substance, hydrate, unit, figure in fractions:
-                    fraction = np.clip(self._grams_per_litre(substance, hydrate, unit, figure, density) / (1000 * density), 0.0, 1.0)
+                    fraction = np.clip(
+                        self._grams_per_litre(substance, hydrate, unit, figure, density) / (1000 * density), 0.0, 1.0
+                    )
                     excess = excess + self.density(substance.id, fraction) - WATER_DENSITY
                     for other, ratio in substance.companions.items():
                         share = fraction * ratio * self.stock.molar_mass(other) / self.stock.molar_mass(substance.id)
@@ -299,7 +336,9 @@ class Bench:
         litres = amount * 0.018  # mol of a solution is no amount; the reader refuses it
         return litres, litres * 1000 * density
 
-    def _moles(self, substance: Substance, hydrate: float, unit: str, figure: Array, litres: Array, grams: Array) -> Array:
+    def _moles(
+        self, substance: Substance, hydrate: float, unit: str, figure: Array, litres: Array, grams: Array
+    ) -> Array:
         molar = self.stock.molar_mass(substance.id) + hydrate * WATER_MOLAR_MASS
         density = np.divide(grams, 1000 * litres, out=np.full_like(grams, WATER_DENSITY), where=litres > 0)
         held = np.minimum(self._grams_per_litre(substance, hydrate, unit, figure, density), 1000 * density)
@@ -307,7 +346,7 @@ class Bench:
 
     # --- a pH on the label -------------------------------------------------------------------------------------
 
-    def _state_pH(self, portion: Portion, key: str, made: MadeUp) -> None:
+    def _state_pH(self, portion: Portion, made: MadeUp) -> None:
         assert portion.pH is not None
         target = self._draw(f"pH of {portion.text}", portion.pH)
         content = made.mixture

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from typing import TypeVar
 
 import numpy as np
 from numpy.typing import NDArray
@@ -10,6 +11,8 @@ from numpy.typing import NDArray
 from carboy.chemistry.mixture import Array, Mixture
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.firing import Firing
+
+Scalar = TypeVar("Scalar", bound=np.generic)
 
 
 @dataclass
@@ -35,7 +38,7 @@ class Course:
     def ranges(self) -> int:
         return self.mixture.lanes // self.points
 
-    def table(self, values: Array) -> Array:
+    def table(self, values: NDArray[Scalar]) -> NDArray[Scalar]:
         """``[lanes]`` as ``[ranges, points]``."""
         return np.asarray(values).reshape(self.ranges, self.points)
 

@@ -23,7 +23,21 @@ from carboy.chemistry.mixture import (
 )
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.errors import InputError
-from carboy.model.plan import Add, Case, Check, Cover, Filter, Portion, Rinse, Temper, Transfer, VesselSpec, Wait
+from carboy.model.plan import (
+    Add,
+    Case,
+    Check,
+    Cover,
+    Filter,
+    Interval,
+    Portion,
+    Rinse,
+    Step,
+    Temper,
+    Transfer,
+    VesselSpec,
+    Wait,
+)
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.equation import HYDROXIDE, side_words
 from carboy.reasoning.firing import Firing, Reactor
@@ -54,6 +68,18 @@ class VesselState:
         return bool(self.content.amounts)
 
 
+@dataclass(frozen=True)
+class Pouring:
+    """What is poured in one step: its content, the words of its label, how long it takes, and the portion where it comes off a label."""
+
+    action: str
+    content: Mixture
+    label: str
+    over: Interval | None
+    portion: Portion | None
+    made: MadeUp | None
+
+
 @dataclass
 class Walk:
     """A plan as walked: the steps, the record of causes, and what was assumed, asked and not recognised."""
@@ -71,7 +97,9 @@ class Walk:
 class Walker:
     """Walks cases over one stock of chemistry and one book of rules."""
 
-    def __init__(self, stock: ChemicalStock, reactor: Reactor, progress: Callable[[int, int], None] | None = None) -> None:
+    def __init__(
+        self, stock: ChemicalStock, reactor: Reactor, progress: Callable[[int, int], None] | None = None
+    ) -> None:
         self.stock = stock
         self.reactor = reactor
         self.progress = progress
@@ -125,8 +153,17 @@ class Walker:
                 )
             for place, portion in enumerate(spec.holds):
                 state = walk.vessels[spec.name]
-                self._join(state, made[f"vessel {spec.name} {place}"].mixture, walk, 0, portion, made[f"vessel {spec.name} {place}"])
-        walk.assumptions.append("The chemistry is that of 25 degC; heat is judged without loss to the vessel or the air.")
+                self._join(
+                    state,
+                    made[f"vessel {spec.name} {place}"].mixture,
+                    walk,
+                    0,
+                    portion,
+                    made[f"vessel {spec.name} {place}"],
+                )
+        walk.assumptions.append(
+            "The chemistry is that of 25 degC; heat is judged without loss to the vessel or the air."
+        )
 
     def _new_vessel(self, spec: VesselSpec, walk: Walk, lanes: int, fallback_L: Array) -> VesselState:
         temperature = 0.5 * (walk.case.setting.temperature.low + walk.case.setting.temperature.high)
@@ -142,13 +179,20 @@ class Walker:
 
     # --- steps -------------------------------------------------------------------------------------------------
 
-    def _step(self, number: int, step, walk: Walk, made: dict[str, MadeUp]) -> None:  # type: ignore[no-untyped-def]
+    def _step(self, number: int, step: Step, walk: Walk, made: dict[str, MadeUp]) -> None:
         match step:
             case Add():
                 self._add(number, step, walk, made)
             case Rinse():
                 state = self._vessel(step.vessel, walk)
-                self._pour(number, f"rinse with {step.portion.text}", state, made[f"step {number}"].mixture, step.portion.text, None, walk, step.portion, made[f"step {number}"])
+                portion = made[f"step {number}"]
+                text = step.portion.text
+                self._pour(
+                    number,
+                    state,
+                    Pouring(f"rinse with {text}", portion.mixture, text, None, step.portion, portion),
+                    walk,
+                )
             case Transfer():
                 self._transfer(number, step, walk)
             case Filter():
@@ -178,17 +222,19 @@ class Walker:
         state = self._vessel(step.to, walk)
         if step.portion is not None:
             portion = made[f"step {number}"]
-            self._pour(number, f"add {step.portion.text}", state, portion.mixture, step.portion.text, step.over, walk, step.portion, portion)
+            text = step.portion.text
+            pouring = Pouring(f"add {text}", portion.mixture, text, step.over, step.portion, portion)
+            self._pour(number, state, pouring, walk)
         elif f"bottle {step.source}" in made:
             portion = made[f"bottle {step.source}"]
-            content = portion.mixture
-            label = walk.case.bottles[step.source]
+            content, label = portion.mixture, walk.case.bottles[step.source]
             if step.part is not None:
                 content = content.scaled(self._share(number, step, content, walk))
             words = f"{step.source}: {label.text}"
-            self._pour(number, f"add {words}", state, content, words, step.over, walk, label, portion)
+            self._pour(number, state, Pouring(f"add {words}", content, words, step.over, label, portion), walk)
         else:
-            self._transfer(number, Transfer(vessel=step.source, to=step.to or state.spec.name, part=step.part, over=step.over), walk)
+            target = step.to or state.spec.name
+            self._transfer(number, Transfer(vessel=step.source, to=target, part=step.part, over=step.over), walk)
 
     def _share(self, number: int, step: Add, content: Mixture, walk: Walk) -> Array:
         assert step.part is not None
@@ -196,16 +242,29 @@ class Walker:
         whole = content.volume_L if step.part_unit == "L" else content.mass_g
         share = np.divide(wanted, whole, out=np.ones_like(wanted), where=whole > 0)
         if float(share[0]) > 1.0 + 1e-6:
-            raise InputError(f"step {number} takes more from '{step.source}' than the {float(whole[0]):.3g} {step.part_unit} that it holds")
+            raise InputError(
+                f"step {number} takes more from '{step.source}' than the {float(whole[0]):.3g} {step.part_unit} that it holds"
+            )
         return np.minimum(share, 1.0)
 
     def _surroundings(self, state: VesselState, pour: int | None) -> Surroundings:
         material = self.stock.index.containers.get(state.spec.material)
-        words = frozenset({state.spec.material, *((material.name.lower(), *(word.lower() for word in material.synonyms)) if material else ())})
+        words = frozenset(
+            {
+                state.spec.material,
+                *((material.name.lower(), *(word.lower() for word in material.synonyms)) if material else ()),
+            }
+        )
         return Surroundings(state.cover, state.spec.material, words, dict(state.pours), pour, dict(state.earlier))
 
     def _join(
-        self, state: VesselState, content: Mixture, walk: Walk, number: int, portion: Portion | None, made: MadeUp | None
+        self,
+        state: VesselState,
+        content: Mixture,
+        walk: Walk,
+        number: int,
+        portion: Portion | None,
+        made: MadeUp | None,
     ) -> None:
         """Note where things come from before they are poured."""
         for token in (*content.amounts, *content.labelled):
@@ -214,7 +273,9 @@ class Walker:
             for identity, equation, tokens in made.parts:
                 walk.record.poured(
                     state.spec.name,
-                    portion.text if len(made.parts) == 1 else f"{self.stock.index.substances[identity].name} in {portion.text}",
+                    portion.text
+                    if len(made.parts) == 1
+                    else f"{self.stock.index.substances[identity].name} in {portion.text}",
                     equation,
                     _brought(tokens),
                     number,
@@ -223,11 +284,10 @@ class Walker:
         if number == 0:
             state.content = poured_together(state.content, content) if state.filled else content
 
-    def _pour(  # noqa: PLR0913
-        self, number: int, action: str, state: VesselState, added: Mixture, label: str, over, walk: Walk, portion: Portion | None, made: MadeUp | None
-    ) -> None:  # type: ignore[no-untyped-def]
+    def _pour(self, number: int, state: VesselState, pouring: Pouring, walk: Walk) -> None:
+        added = pouring.content
         before = state.content if state.filled else None
-        self._join(state, added, walk, number, portion, made)
+        self._join(state, added, walk, number, pouring.portion, pouring.made)
         surroundings = self._surroundings(state, number)
         sealed = state.cover == "sealed"
         path: Course | None = None
@@ -239,20 +299,41 @@ class Walker:
             if sealed:
                 state.air_mol = self._air(state, before, also_L=added.volume_L)  # opened to pour, closed at once
             path = along(
-                before, added, self.reactor, surroundings, capacity_L=state.capacity_L if sealed else None, air_mol=state.air_mol
+                before,
+                added,
+                self.reactor,
+                surroundings,
+                capacity_L=state.capacity_L if sealed else None,
+                air_mol=state.air_mol,
             )
             contact = at_contact(before, added, self.reactor, surroundings, self.stock.index.thresholds)
             after = path.mixture.take(path.last())
             after.temperature_C = np.minimum(path.reached_C[path.last()], 100.0)
             self._record(path.firings, state, number, walk)
         over_capacity = after.volume_L > state.capacity_L * (1 + 1e-6)
+        over = pouring.over
         duration = None if over is None else np.full(after.lanes, 0.5 * (over.low + over.high))
         trace = StepTrace(
-            number, action, state.spec.name, before, added, label, path, contact, None, after, surroundings, state.cover,
-            state.capacity_L, state.rating_kPa, duration,
+            number,
+            pouring.action,
+            state.spec.name,
+            before,
+            added,
+            pouring.label,
+            path,
+            contact,
+            None,
+            after,
+            surroundings,
+            state.cover,
+            state.capacity_L,
+            state.rating_kPa,
+            duration,
         )
         if over_capacity.any():
-            trace.notes.append(f"{state.spec.name} overflows: {float(after.volume_L.max()):.3g} L in {float(state.capacity_L[0]):.3g} L")
+            trace.notes.append(
+                f"{state.spec.name} overflows: {float(after.volume_L.max()):.3g} L in {float(state.capacity_L[0]):.3g} L"
+            )
         self._settle(state, after, walk, trace)
 
     def _record(self, firings: list[Firing], state: VesselState, number: int, walk: Walk) -> None:
@@ -271,7 +352,9 @@ class Walker:
             sides = (dict(firing.reaction.reactants), dict(firing.reaction.products))
             equation = " -> ".join(side_words(side, self.stock) for side in sides)
             shown = tuple(tuple(self.stock.label(token) for token in side) for side in sides)
-            walk.record.fired(state.spec.name, firing.rule.id, equation, consumed, made, number, shown=(shown[0], shown[1]))
+            walk.record.fired(
+                state.spec.name, firing.rule.id, equation, consumed, made, number, shown=(shown[0], shown[1])
+            )
 
     def _settle(self, state: VesselState, after: Mixture, walk: Walk, trace: StepTrace) -> None:
         """End of a step: what bubbled out of an open vessel is gone; remember what was here."""
@@ -289,6 +372,9 @@ class Walker:
         state.content = content = content.take(np.arange(content.lanes))
         for token in (*content.amounts, *after.solids, *content.labelled):
             state.earlier[token] = self.stock.classes.get(token, frozenset())
+        for token, amount in after.aqueous.items():
+            if self.stock.classes.get(token) and np.any(amount > TRACE):
+                state.earlier[token] = self.stock.classes[token]
         if not np.all(after.converged):
             trace.notes.append("The equilibrium of this step did not converge over the whole of the stated ranges.")
 
@@ -298,7 +384,9 @@ class Walker:
         kelvin = content.temperature_C + 273.15
         return (ATMOSPHERE_KPA - water_vapour_kPa(content.temperature_C)) * room / (GAS_CONSTANT_KPA * kelvin)
 
-    def _stand(self, number: int, action: str, state: VesselState, slowest: str, duration: Array | None, walk: Walk) -> None:
+    def _stand(
+        self, number: int, action: str, state: VesselState, slowest: str, duration: Array | None, walk: Walk
+    ) -> None:
         surroundings = self._surroundings(state, None)
         before = state.content
         course = stored(before, self.reactor, surroundings, slowest) if state.filled else None
@@ -306,8 +394,21 @@ class Walker:
             self._record(course.firings, state, number, walk)
         after = before if course is None else course.mixture
         trace = StepTrace(
-            number, action, state.spec.name, before if state.filled else None, None, "", None, None, course, after, surroundings, state.cover,
-            state.capacity_L, state.rating_kPa, duration,
+            number,
+            action,
+            state.spec.name,
+            before if state.filled else None,
+            None,
+            "",
+            None,
+            None,
+            course,
+            after,
+            surroundings,
+            state.cover,
+            state.capacity_L,
+            state.rating_kPa,
+            duration,
         )
         self._settle(state, after, walk, trace)
 
@@ -315,16 +416,39 @@ class Walker:
         surroundings = self._surroundings(state, None)
         before = state.content if state.filled else None
         walk.steps.append(
-            StepTrace(number, action, state.spec.name, before, None, "", None, None, None, state.content, surroundings, state.cover,
-                      state.capacity_L, state.rating_kPa, None)
+            StepTrace(
+                number,
+                action,
+                state.spec.name,
+                before,
+                None,
+                "",
+                None,
+                None,
+                None,
+                state.content,
+                surroundings,
+                state.cover,
+                state.capacity_L,
+                state.rating_kPa,
+                None,
+            )
         )
 
     def _wait(self, number: int, step: Wait, walk: Walk) -> None:
         state = self._vessel(step.vessel, walk)
         seconds = None if step.duration is None else step.duration.high
-        slowest = "minutes" if step.kind == "stir" or seconds is None or seconds < 0.5 * _HOUR else "hours" if seconds < 0.5 * _DAY else "days"
+        slowest = (
+            "minutes"
+            if step.kind == "stir" or seconds is None or seconds < 0.5 * _HOUR
+            else "hours"
+            if seconds < 0.5 * _DAY
+            else "days"
+        )
         words = step.kind if seconds is None else f"{step.kind} {_time_words(seconds)}"
-        self._stand(number, words, state, slowest, None if seconds is None else np.full(walk.ranges.lanes, seconds), walk)
+        self._stand(
+            number, words, state, slowest, None if seconds is None else np.full(walk.ranges.lanes, seconds), walk
+        )
 
     def _cover(self, number: int, step: Cover, walk: Walk) -> None:
         state = self._vessel(step.vessel, walk)
@@ -347,7 +471,9 @@ class Walker:
         source = self._vessel(step.vessel, walk)
         if not source.filled:
             raise InputError(f"step {number}: vessel '{step.vessel}' is empty")
-        target = walk.vessels.get(step.to) or self._new_vessel(VesselSpec(name=step.to), walk, walk.ranges.lanes, source.capacity_L)
+        target = walk.vessels.get(step.to) or self._new_vessel(
+            VesselSpec(name=step.to), walk, walk.ranges.lanes, source.capacity_L
+        )
         whole = source.content.volume_L
         share = np.ones_like(whole)
         if step.part is not None:
@@ -358,7 +484,8 @@ class Walker:
         source.content = source.content.scaled(1.0 - share)
         walk.record.moved(source.spec.name, target.spec.name, tuple(moved.amounts))
         target.earlier.update(source.earlier)
-        self._pour(number, f"transfer {source.spec.name} to {target.spec.name}", target, moved, source.spec.name, step.over, walk, None, None)
+        action = f"transfer {source.spec.name} to {target.spec.name}"
+        self._pour(number, target, Pouring(action, moved, source.spec.name, step.over, None, None), walk)
 
     def _filter(self, number: int, step: Filter, walk: Walk) -> None:
         state = self._vessel(step.vessel, walk)
@@ -386,9 +513,23 @@ class Walker:
         cake_name = step.cake or f"{state.spec.name} cake"
         spec = walk.vessels.get(filtrate_name)
         jug = spec or self._new_vessel(VesselSpec(name=filtrate_name), walk, walk.ranges.lanes, state.capacity_L)
-        holder = walk.vessels.get(cake_name) or self._new_vessel(VesselSpec(name=cake_name), walk, walk.ranges.lanes, state.capacity_L)
-        clear = self._part(content, stays, content.volume_L * (1 - kept), np.maximum(content.mass_g - grams, 0.0) * (1 - kept), 1 - kept)
-        sludge = self._part(content, cake, np.maximum(content.volume_L * kept, grams / 2000), grams + np.maximum(content.mass_g - grams, 0.0) * kept, kept)
+        holder = walk.vessels.get(cake_name) or self._new_vessel(
+            VesselSpec(name=cake_name), walk, walk.ranges.lanes, state.capacity_L
+        )
+        clear = self._part(
+            content,
+            stays,
+            content.volume_L * (1 - kept),
+            np.maximum(content.mass_g - grams, 0.0) * (1 - kept),
+            1 - kept,
+        )
+        sludge = self._part(
+            content,
+            cake,
+            np.maximum(content.volume_L * kept, grams / 2000),
+            grams + np.maximum(content.mass_g - grams, 0.0) * kept,
+            kept,
+        )
         state.content = empty(self.stock, content.lanes, float(content.temperature_C[0]))
         came_from, was_here = state.pours, dict(state.earlier)
         state.pours, state.earlier, state.labels = {}, {}, []
@@ -400,13 +541,34 @@ class Walker:
         holder.earlier = was_here
         surroundings = self._surroundings(jug, None)
         walk.steps.append(
-            StepTrace(number, f"{step.kind} {step.vessel} into {filtrate_name}", filtrate_name, None, None, "", None, None, None, jug.content, surroundings,
-                      jug.cover, jug.capacity_L, jug.rating_kPa, None, sludge=holder.content)
+            StepTrace(
+                number,
+                f"{step.kind} {step.vessel} into {filtrate_name}",
+                filtrate_name,
+                None,
+                None,
+                "",
+                None,
+                None,
+                None,
+                jug.content,
+                surroundings,
+                jug.cover,
+                jug.capacity_L,
+                jug.rating_kPa,
+                None,
+                sludge=holder.content,
+            )
         )
 
     def _part(self, content: Mixture, amounts: dict[str, Array], volume: Array, mass: Array, share: Array) -> Mixture:
         return Mixture(
-            self.stock, amounts, {name: value * share for name, value in content.labelled.items()}, volume, mass, content.temperature_C.copy(),
+            self.stock,
+            amounts,
+            {name: value * share for name, value in content.labelled.items()},
+            volume,
+            mass,
+            content.temperature_C.copy(),
             network_temperature_C=content.network_temperature_C,
         )
 

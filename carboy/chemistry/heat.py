@@ -7,7 +7,7 @@ tables named there).
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from functools import cached_property, lru_cache
 
 import numpy as np
 
@@ -20,11 +20,15 @@ SOLUTE_HEAT_CAPACITY = 1.0  # kJ/(kg K) for dissolved salts and solids; common p
 LIQUID_HEAT_CAPACITY = 2.0  # kJ/(kg K) for organic liquids; common practice
 
 
-@dataclass(frozen=True)
+def _make_up(components: dict[str, float]) -> tuple[tuple[str, float], ...]:
+    return tuple(sorted((token, round(count, 6)) for token, count in components.items()))
+
+
 class HeatBook:
     """Enthalpies of one stock, ready for mixtures."""
 
-    stock: ChemicalStock
+    def __init__(self, stock: ChemicalStock) -> None:
+        self.stock = stock
 
     def of_speciation(self, mixture: Mixture) -> Array:
         """kJ ``[L]`` of the mixture's species against its components at infinite dilution: acid/base steps, complexes, solids, gases, and
@@ -37,10 +41,10 @@ class HeatBook:
         total = mixture.zeros()
         for group in (mixture.aqueous, mixture.solids, mixture.gases):
             for token, amount in group.items():
-                made = self.stock.formation.get(token)
-                if made is not None and made.enthalpy_formation is not None:
+                enthalpy = self.of_forming(token)
+                if enthalpy is not None:
                     covered = sum((n for table, n in held if self._own_pair(token, table)), mixture.zeros())
-                    total = total + made.enthalpy_formation * np.maximum(amount - covered, 0.0)
+                    total = total + enthalpy * np.maximum(amount - covered, 0.0)
         ions = sum((n for _, n in held), mixture.zeros())
         water = mixture.total(WATER)
         ratio = np.divide(water, ions, out=np.zeros_like(water), where=ions > 0)
@@ -49,6 +53,27 @@ class HeatBook:
                 grid = sorted(table.points)
                 total = total + n * np.interp(ratio, [point[0] for point in grid], [point[1] for point in grid])
         return total
+
+    def of_forming(self, token: str) -> float | None:
+        """kJ per mol on forming a species from its components; None where unknown. A solid that is also bought as a substance has the
+        enthalpy of that substance, so that what lies undissolved gives and takes no heat."""
+        bought = (
+            self._bought.get(_make_up(self.stock.components_of(token))) if self.stock.kind(token) == "solid" else None
+        )
+        if bought is not None:
+            return bought
+        made = self.stock.formation.get(token)
+        return None if made is None else made.enthalpy_formation
+
+    @cached_property
+    def _bought(self) -> dict[tuple[tuple[str, float], ...], float]:
+        found = {}
+        for identity, substance in self.stock.index.substances.items():
+            if substance.state == "s" and substance.yields:
+                dissolving = self.of_dissolving(identity, neat=True)
+                if dissolving is not None:
+                    found[_make_up(self.stock.yield_of(identity))] = -dissolving
+        return found
 
     def _own_pair(self, token: str, table: Enthalpy) -> bool:
         parts = {part for part in self.stock.components_of(token) if part != WATER}
@@ -116,3 +141,9 @@ class HeatBook:
                 organic = organic + amount * self.stock.molar_mass(token) / 1000
         rest = np.maximum(mixture.mass_g / 1000 - water - organic, 0.0)
         return water * WATER_HEAT_CAPACITY + organic * LIQUID_HEAT_CAPACITY + rest * SOLUTE_HEAT_CAPACITY
+
+
+@lru_cache(maxsize=4)
+def heat_book(stock: ChemicalStock) -> HeatBook:
+    """The heat book of a stock, made once."""
+    return HeatBook(stock)

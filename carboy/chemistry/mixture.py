@@ -82,7 +82,9 @@ class Mixture:
             if token != PROTON:
                 np.maximum(totals[:, column], 0.0, out=totals[:, column])
         start = self.hint if self.hint is not None and self.hint.network is network else None
-        water = np.maximum(self.total(WATER), 0.0)  # a dry salt that takes up water may ask for more than the first drop brings
+        water = np.maximum(
+            self.total(WATER), 0.0
+        )  # a dry salt that takes up water may ask for more than the first drop brings
         return solve(network, totals, water, headspace_L=self.headspace_L, start=start)
 
     @property
@@ -173,14 +175,9 @@ class Mixture:
         for token, count in self.stock.yield_of(substance_id).items():
             if token == WATER:
                 continue
-            have = self.total(token) if token == PROTON else self.dissolved_or_aside(token)
-            if count < 0:
-                have, count = -have, -count
-            left = np.minimum(left, np.maximum(have, 0.0) / count)
+            have = self.total(token) * np.sign(count)
+            left = np.minimum(left, np.maximum(have, 0.0) / abs(count))
         return left
-
-    def dissolved_or_aside(self, token: str) -> Array:
-        return self.total(token) if self.stock.kind(token) == "aside" else self.total(token)
 
     @property
     def water_kg(self) -> Array:

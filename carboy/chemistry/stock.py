@@ -31,11 +31,11 @@ class ChemicalStock:
     def classes(self) -> dict[str, frozenset[str]]:
         """Species token or substance id -> its classes and all above them."""
         closed: dict[str, frozenset[str]] = {}
-        for token, record in (*self.index.substances.items(), *self.index.species.items()):
-            above = {up for key in record.classes for up in self.index.ancestors.get(key, (key,))}
+        stated = [(token, record.classes) for token, record in self.index.substances.items()]
+        stated += [(token, record.classes) for token, record in self.index.species.items()]
+        for token, classes in stated:
+            above = {up for key in classes for up in self.index.ancestors.get(key, (key,))}
             closed[token] = closed.get(token, frozenset()) | above
-        for token, gas in self.index.gases.items():
-            closed.setdefault(token, frozenset())
         return closed
 
     @cached_property

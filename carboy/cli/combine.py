@@ -22,12 +22,20 @@ Ranges are followed to their ends: "10-50 g/L", "about 2 L", "up to 5 g", "trace
 
 
 def combine(
-    portions: Annotated[list[str], typer.Argument(metavar="PORTION", help="As read off the labels.", show_default=False)],
-    volume: Annotated[str, typer.Option(metavar="TEXT", help='Volume of the vessel, "2 L". Twice the content if not given.')] = "",
+    portions: Annotated[
+        list[str], typer.Argument(metavar="PORTION", help="As read off the labels.", show_default=False)
+    ],
+    volume: Annotated[
+        str, typer.Option(metavar="TEXT", help='Volume of the vessel, "2 L". Twice the content if not given.')
+    ] = "",
     cover: Annotated[str, typer.Option(metavar="WORD", help="open, loose, vented or sealed.")] = "open",
-    material: Annotated[str, typer.Option(metavar="NAME", help='Of the vessel: glass, HDPE, "stainless steel".')] = "glass",
+    material: Annotated[
+        str, typer.Option(metavar="NAME", help='Of the vessel: glass, HDPE, "stainless steel".')
+    ] = "glass",
     temperature: Annotated[str, typer.Option(metavar="TEXT", help='Of the place and the bottles, "22 degC".')] = "",
-    place: Annotated[str, typer.Option(metavar="WORD", help="hood, bench, room, outdoors, glovebox, cabinet or store.")] = "",
+    place: Annotated[
+        str, typer.Option(metavar="WORD", help="hood, bench, room, outdoors, glovebox, cabinet or store.")
+    ] = "",
     hood_flow: Annotated[str, typer.Option(metavar="TEXT", help='Air drawn by the hood, "0.4 m3/s".')] = "",
     room_volume: Annotated[str, typer.Option(metavar="TEXT", help='"60 m3".')] = "",
     air_changes: Annotated[str, typer.Option(metavar="TEXT", help='Of the room, "6 per hour".')] = "",

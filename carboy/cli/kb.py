@@ -34,17 +34,23 @@ def _group() -> None:
 
 @app.command("check", help=CHECK_HELP)
 def check(
-    rule: Annotated[list[str] | None, typer.Option("--rule", metavar="ID", help="Run the examples of this rule only.")] = None,
+    rule: Annotated[
+        list[str] | None, typer.Option("--rule", metavar="ID", help="Run the examples of this rule only.")
+    ] = None,
     quick: Annotated[bool, typer.Option("--quick", help="Do not run the examples.")] = False,
-    kb: Annotated[Path | None, typer.Option("--kb", metavar="FOLDER", help="A knowledge folder; the shipped one if not given.")] = None,
+    kb: Annotated[
+        Path | None, typer.Option("--kb", metavar="FOLDER", help="A knowledge folder; the shipped one if not given.")
+    ] = None,
     rules: Annotated[Path | None, typer.Option("--rules", metavar="PATH", help="A rule file or folder.")] = None,
     notes: Annotated[bool, typer.Option("--notes", help="Show notes too (sources that nothing uses).")] = False,
 ) -> None:
-    from carboy.errors import RuleError
+    from carboy.errors import InputError, RuleError
     from carboy.knowledge.index import load_index
     from carboy.knowledge.validate import check_knowledge
     from carboy.rulebook.book import load_rules
 
+    if rules is not None and not rules.exists():
+        raise InputError(f"there is no rule file or folder '{rules}'")
     problems = check_knowledge(kb)
     lines = [f"kb/{one}" for one in problems if one.severity == "error" or notes]
     errors = sum(one.severity == "error" for one in problems)

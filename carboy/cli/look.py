@@ -21,7 +21,10 @@ Every value stands with how it was had (looked up, computed, from memory ...) an
 
 
 def look(
-    name: Annotated[list[str], typer.Argument(metavar="NAME", help="Name, formula, CAS number, class or source.", show_default=False)],
+    name: Annotated[
+        list[str],
+        typer.Argument(metavar="NAME", help="Name, formula, CAS number, class or source.", show_default=False),
+    ],
     json: Annotated[bool, typer.Option("--json", help="Print a list of objects.")] = False,
     plain: Annotated[bool, typer.Option("--plain", help="ASCII without colour, for logs.")] = False,
 ) -> None:
@@ -35,7 +38,9 @@ def look(
     names = Names(index)
     found = entries(text, index, names) if text else []
     if not found:
-        raise InputError(f"the graph knows nothing called '{text}'", suggestions=suggestions(text, index, names) if text else ())
+        raise InputError(
+            f"the graph knows nothing called '{text}'", suggestions=suggestions(text, index, names) if text else ()
+        )
     if json:
         from msgspec.json import encode, format
 

@@ -16,7 +16,9 @@ carboy rule                                  lists all rules"""
 
 
 def rule(
-    identifier: Annotated[str, typer.Argument(metavar="ID", help="The rule's id; without one all are listed.", show_default=False)] = "",
+    identifier: Annotated[
+        str, typer.Argument(metavar="ID", help="The rule's id; without one all are listed.", show_default=False)
+    ] = "",
     plain: Annotated[bool, typer.Option("--plain", help="ASCII without colour, for logs.")] = False,
 ) -> None:
     from carboy.errors import InputError

@@ -17,6 +17,7 @@ from carboy.model.rule import Kind, Rule
 Levels = NDArray[np.int_]
 NONE, NOTE, WARNING, DANGER = 0, 1, 2, 3
 Moment = Literal["contact", "during", "after", "storage"]
+Where = Literal["path", "contact", "storage"]
 
 
 @dataclass
@@ -27,7 +28,7 @@ class Draft:
     tokens: tuple[str, ...]
     levels: Levels
     fractions: Array
-    where: Literal["path", "contact", "storage"]
+    where: Where
     trace: StepTrace
     summary: str
     amount: Array | None = None
@@ -93,9 +94,9 @@ def graded(values: Array, note: float, warning: float, danger: float) -> Levels:
     return (filled >= note).astype(int) + (filled >= warning) + (filled >= danger)
 
 
-def courses(trace: StepTrace) -> list[tuple[Literal["path", "contact", "storage"], Course]]:
+def courses(trace: StepTrace) -> list[tuple[Where, Course]]:
     """What there is to judge in a step."""
-    found: list[tuple[Literal["path", "contact", "storage"], Course]] = []
+    found: list[tuple[Where, Course]] = []
     for name, course in (("path", trace.path), ("contact", trace.contact), ("storage", trace.storage)):
         if course is not None:
             found.append((name, course))  # type: ignore[arg-type]

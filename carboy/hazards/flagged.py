@@ -11,7 +11,7 @@ from carboy.bench.trace import Course, StepTrace
 from carboy.chemistry.mixture import TRACE, Array
 from carboy.chemistry.relations import part_of
 from carboy.chemistry.stock import ChemicalStock
-from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Scale, courses, graded
+from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Scale, Where, courses, graded
 from carboy.hazards.numbers import figures
 from carboy.model.report import Measure
 from carboy.model.rule import Bound, Flag, Kind, Present, Rule
@@ -38,7 +38,9 @@ class Raised:
     firing: Firing | None
 
 
-def raised_flags(course: Course, trace: StepTrace, where: str, rules: tuple[Rule, ...], stock: ChemicalStock) -> Iterator[Raised]:
+def raised_flags(
+    course: Course, trace: StepTrace, where: str, rules: tuple[Rule, ...], stock: ChemicalStock
+) -> Iterator[Raised]:
     """Every flag that a rule raises in a course."""
     after = View(course.mixture, trace.surroundings)
     start = View(course.unreacted, trace.surroundings)
@@ -74,7 +76,9 @@ def raised_flags(course: Course, trace: StepTrace, where: str, rules: tuple[Rule
             yield from seen.values()
 
 
-def _matches(rule: Rule, flag: Flag, view: View, stock: ChemicalStock) -> Iterator[tuple[dict[str, str], Mask, Array, Array]]:
+def _matches(
+    rule: Rule, flag: Flag, view: View, stock: ChemicalStock
+) -> Iterator[tuple[dict[str, str], Mask, Array, Array]]:
     for binding in view.bindings(rule):
         mask = np.ones(view.mixture.lanes, dtype=bool)
         for condition in (*rule.needs, *flag.when):
@@ -83,7 +87,12 @@ def _matches(rule: Rule, flag: Flag, view: View, stock: ChemicalStock) -> Iterat
                 break
         if mask.any():
             grams, moles = _weight(rule, flag, view, binding, stock)
-            yield {variable: carrier.token for variable, carrier in binding.items()}, mask, np.where(mask, grams, 0.0), np.where(mask, moles, 0.0)
+            yield (
+                {variable: carrier.token for variable, carrier in binding.items()},
+                mask,
+                np.where(mask, grams, 0.0),
+                np.where(mask, moles, 0.0),
+            )
 
 
 def _and_when(mask: Mask, flag: Flag, view: View, names: dict[str, str], rule: Rule) -> Mask:
@@ -125,12 +134,18 @@ def _weight_of_firing(flag: Flag, firing: Firing, course: Course, stock: Chemica
     if token in made or token in used:
         moles = (made.get(token) or used[token]) * firing.extent
         return moles * stock.molar_mass(token), moles
-    masses = [count * firing.extent * stock.molar_mass(name) for name, count in firing.reaction.reactants if name not in ("H+", "OH-", "H2O")]
+    masses = [
+        count * firing.extent * stock.molar_mass(name)
+        for name, count in firing.reaction.reactants
+        if name not in ("H+", "OH-", "H2O")
+    ]
     grams = np.minimum.reduce(masses) if masses else course.mixture.mass_g
     return grams, firing.extent
 
 
-def class_drafts(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, scale: Scale, computed: list[Draft]) -> list[Draft]:
+def class_drafts(
+    trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, scale: Scale, computed: list[Draft]
+) -> list[Draft]:
     """Drafts for flags without a computed magnitude; flags with one lend their words to the drafts in ``computed``."""
     drafts: dict[tuple[str, ...], Draft] = {}
     for where, course in courses(trace):
@@ -141,9 +156,15 @@ def class_drafts(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock
                 continue
             if flag.kind in ("heat", "foam", "remobilised") or (where == "contact" and flag.kind in _END_STATE_ONLY):
                 continue
-            if flag.kind == "pressure" and (trace.cover != "sealed" or where == "contact" or any(one.kind == "pressure" for one in computed)):
+            if flag.kind == "pressure" and (
+                trace.cover != "sealed" or where == "contact" or any(one.kind == "pressure" for one in computed)
+            ):
                 continue
-            if flag.kind in GAS_KINDS and flag.terms and all(f"{_gas_of(term, raised.bound, stock)}(g)" in stock.formation for term in flag.terms):
+            if (
+                flag.kind in GAS_KINDS
+                and flag.terms
+                and all(f"{_gas_of(term, raised.bound, stock)}(g)" in stock.formation for term in flag.terms)
+            ):
                 continue  # a gas whose amount is computed, and is too little for a line
             draft = _class_draft(raised, where, trace, course, stock, scale, standing)
             if draft is None:
@@ -167,7 +188,9 @@ def _gas_of(term: str, bound: dict[str, str], stock: ChemicalStock) -> str:
     return named_by(term, bound, stock).removesuffix("(g)")
 
 
-def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock) -> dict[tuple[str, tuple[tuple[str, str], ...]], float]:
+def _standing(
+    trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock
+) -> dict[tuple[str, tuple[tuple[str, str], ...]], float]:
     """Flags that stood already in the vessel or in the bottle, with the grams that weighed them."""
     stood: dict[tuple[str, tuple[tuple[str, str], ...]], float] = {}
     for mixture in (trace.before, trace.added):
@@ -211,7 +234,11 @@ def _lend(raised: Raised, where: str, computed: list[Draft], stock: ChemicalStoc
 def _same_element(raised: Raised, draft: Draft, stock: ChemicalStock) -> bool:
     def elements(token: str) -> set[str]:
         record = stock.index.species.get(token)
-        return set() if record is None else {element for element in record.atoms if element not in ("H", "O", "C", "N", "S", "Cl", "I")}
+        return (
+            set()
+            if record is None
+            else {element for element in record.atoms if element not in ("H", "O", "C", "N", "S", "Cl", "I")}
+        )
 
     mine = set().union(*(elements(named_by(term, raised.bound, stock)) for term in raised.flag.terms))
     theirs = set().union(*(elements(token) for token in draft.tokens))
@@ -227,21 +254,40 @@ def name_of(token: str, stock: ChemicalStock) -> str:
     return substance.name if substance is not None else token
 
 
-def _class_draft(  # noqa: PLR0913
-    raised: Raised, where: str, trace: StepTrace, course: Course, stock: ChemicalStock, scale: Scale,
+def _class_draft(
+    raised: Raised,
+    where: Where,
+    trace: StepTrace,
+    course: Course,
+    stock: ChemicalStock,
+    scale: Scale,
     standing: dict[tuple[str, tuple[tuple[str, str], ...]], float],
 ) -> Draft | None:
     flag, rule = raised.flag, raised.rule
     grams = np.where(raised.mask, raised.grams, 0.0)
     if flag.kind == "explosive":
-        levels = graded(grams, 0.01 * scale["energetic-warning-amount"], scale["energetic-warning-amount"], scale["energetic-danger-amount"])
+        levels = graded(
+            grams,
+            0.01 * scale["energetic-warning-amount"],
+            scale["energetic-warning-amount"],
+            scale["energetic-danger-amount"],
+        )
     elif flag.kind in ("attack", "incomplete", "pressure"):
         levels = np.where(raised.mask, WARNING, 0)
     else:
-        levels = graded(grams, 0.01 * scale["reactive-trace-amount"], scale["reactive-trace-amount"], scale["reactive-danger-amount"])
+        levels = graded(
+            grams,
+            0.01 * scale["reactive-trace-amount"],
+            scale["reactive-trace-amount"],
+            scale["reactive-danger-amount"],
+        )
     levels = np.where(raised.mask, np.minimum(levels, _GRADES[flag.grade]), 0)
     stood = standing.get((rule.id, tuple(sorted(raised.bound.items()))))
-    if stood is not None and raised.firing is None and float(grams.max()) <= scale["markedly-worse-factor"] * max(stood, 1e-12):
+    if (
+        stood is not None
+        and raised.firing is None
+        and float(grams.max()) <= scale["markedly-worse-factor"] * max(stood, 1e-12)
+    ):
         levels = np.minimum(levels, NOTE)
     if where == "contact" and flag.kind not in _ANYWAY_AT_CONTACT:
         levels = np.minimum(levels, WARNING)
@@ -253,15 +299,25 @@ def _class_draft(  # noqa: PLR0913
         levels = np.where(np.arange(course.points) == course.points - 1, levels, 0)
     if not levels.any():
         return None
-    terms = tuple(named_by(term, raised.bound, stock) for term in flag.terms) or tuple(dict.fromkeys(raised.bound.values()))
+    terms = tuple(named_by(term, raised.bound, stock) for term in flag.terms) or tuple(
+        dict.fromkeys(raised.bound.values())
+    )
     names = {variable: name_of(token, stock) for variable, token in raised.bound.items()}
     subject = flag.words or ", ".join(name_of(term, stock) for term in terms)
     weight = float(grams.max())
     summary = f"{rule.title}{': ' + subject if subject else ''} ({figures(weight)} g at stake)."
     draft = Draft(
-        flag.kind, terms, levels, course.fractions, "storage" if moment == "storage" else where, trace, summary, None,  # type: ignore[arg-type]
+        flag.kind,
+        terms,
+        levels,
+        course.fractions,
+        "storage" if moment == "storage" else where,
+        trace,
+        summary,
+        None,
         [Measure(quantity="amount at stake", value=weight, unit="g", basis="the scarcest of what the rule needs")],
-        rules=[rule], names=names,
+        rules=[rule],
+        names=names,
     )
     if raised.firing is not None:
         draft.amount = course.table(np.where(raised.mask, raised.moles, 0.0))

@@ -41,7 +41,10 @@ class Load:
     def leaving(self, limit_atm: float) -> Array:
         """mol that leave into air until the air over the liquid has fallen to ``limit_atm``: all bubbles, and of what is dissolved the
         share above the equilibrium with that air (Henry's law). Nothing dissolved leaves into air that already holds more."""
-        above = np.maximum(1.0 - np.divide(limit_atm, self.pressure, out=np.full_like(self.pressure, np.inf), where=self.pressure > 0), 0.0)
+        above = np.maximum(
+            1.0 - np.divide(limit_atm, self.pressure, out=np.full_like(self.pressure, np.inf), where=self.pressure > 0),
+            0.0,
+        )
         return self.gas + self.dissolved * above
 
 
@@ -65,7 +68,11 @@ def load(mixture: Mixture, token: str) -> Load:
     molecule = mixture.stock.dissolved_form.get(token)
     if molecule is not None:
         return Load(gas, mixture.aqueous.get(molecule, none), pressure, True)
-    reserve = [mixture.total(part) / count for part, count in mixture.stock.components_of(token).items() if count > 0 and part != WATER]
+    reserve = [
+        mixture.total(part) / count
+        for part, count in mixture.stock.components_of(token).items()
+        if count > 0 and part != WATER
+    ]
     return Load(gas, np.maximum(np.minimum.reduce(reserve), 0.0) if reserve else none, pressure, False)
 
 
@@ -80,27 +87,62 @@ def yardsticks(gas: Gas, classes: frozenset[str], scale: Scale) -> list[Yardstic
             (gas.aegl2, "AEGL-2 (10 min)", True),
             (gas.ceiling, "short-term limit", False),
         ]
-        for value, words, danger in chain:
+        for value, name, danger in chain:
             if value is not None:
-                found.append(Yardstick("toxic-gas", value.magnitude, words, f"{words} {value.magnitude:g} ppm", danger, short, value.source))
+                ppm, words, basis = value.magnitude, name, f"{name} {value.magnitude:g} ppm"
+                if not danger:
+                    ppm *= scale["acute-over-short-term-factor"]
+                    basis = f"{ppm:g} ppm, {scale['acute-over-short-term-factor']:g} times its short-term limit"
+                    words = "level taken as acute"
+                found.append(Yardstick("toxic-gas", ppm, words, basis, danger, short, value.source))
                 break
         else:
-            found.append(Yardstick("toxic-gas", np.nan, "", "no published limit in the graph; judged by amount", True, np.inf, ""))
+            found.append(
+                Yardstick(
+                    "toxic-gas", np.nan, "", "no published limit in the graph; judged by amount", True, np.inf, ""
+                )
+            )
     if "flammable-gas" in classes and gas.lower_flammable is not None:
         lower = gas.lower_flammable
         found.append(
-            Yardstick("flammable-gas", lower.magnitude * 1e4, "lower flammable limit", f"lower flammable limit {lower.magnitude:g} vol %", True, np.inf, lower.source)
+            Yardstick(
+                "flammable-gas",
+                lower.magnitude * 1e4,
+                "lower flammable limit",
+                f"lower flammable limit {lower.magnitude:g} vol %",
+                True,
+                np.inf,
+                lower.source,
+            )
         )
     if "asphyxiant-gas" in classes:
         room = scale["asphyxiant-room-volume"]
         share = scale["asphyxiant-warning-fraction"]
         source = gas.idlh.source if gas.idlh is not None else ""
         found.append(
-            Yardstick("asphyxiant-gas", share * 1e6, f"{100 * share:g} % by volume", f"{100 * share:g} % of the air ({room:g} m3 is a small room)", True, np.inf, source)
+            Yardstick(
+                "asphyxiant-gas",
+                share * 1e6,
+                f"{100 * share:g} % by volume",
+                f"{100 * share:g} % of the air ({room:g} m3 is a small room)",
+                True,
+                np.inf,
+                source,
+            )
         )
     if "oxidising-gas" in classes and "toxic-gas" not in classes:
         ppm = (scale["oxygen-enriched-fraction"] - OXYGEN_IN_AIR) * 1e6
-        found.append(Yardstick("oxygen", ppm, "enriched air", f"{100 * scale['oxygen-enriched-fraction']:g} vol % oxygen", True, np.inf, ""))
+        found.append(
+            Yardstick(
+                "oxygen",
+                ppm,
+                "enriched air",
+                f"{100 * scale['oxygen-enriched-fraction']:g} vol % oxygen",
+                True,
+                np.inf,
+                "",
+            )
+        )
     return found
 
 
@@ -116,7 +158,7 @@ def gas_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dra
             if not np.any(now.gas + now.dissolved * (now.pressure > 0) > TRACE):
                 continue
             for stick in yardsticks(record, record_classes(stock, token), scale):
-                judged = _judge(trace, where, course, token, stick, now, stock, scale)
+                judged = _judge(trace, where, course, token, stick, now, scale)
                 if judged is not None:
                     drafts.append(_draft(trace, where, course, token, record, stick, judged, stock))
     return drafts
@@ -144,7 +186,9 @@ def _standing(trace: StepTrace, course: Course, token: str, limit_atm: float, wh
         weight = np.tile(along_path if where == "path" else ones, mixture.lanes)
         if where == "contact":
             whole = np.repeat(mixture.volume_L, course.points)
-            weight = np.minimum(np.divide(course.mixture.volume_L, whole, out=np.ones_like(whole), where=whole > 0), 1.0)
+            weight = np.minimum(
+                np.divide(course.mixture.volume_L, whole, out=np.ones_like(whole), where=whole > 0), 1.0
+            )
         molecules = molecules + np.repeat(own.molecules, course.points) * weight
         leaving = leaving + np.repeat(own.leaving(limit_atm), course.points) * weight
         pressure = np.maximum(pressure, np.repeat(own.pressure, course.points))
@@ -174,8 +218,14 @@ class Judged:
     stood: bool
 
 
-def _judge(  # noqa: PLR0913
-    trace: StepTrace, where: str, course: Course, token: str, stick: Yardstick, now: Load, stock: ChemicalStock, scale: Scale
+def _judge(
+    trace: StepTrace,
+    where: str,
+    course: Course,
+    token: str,
+    stick: Yardstick,
+    now: Load,
+    scale: Scale,
 ) -> Judged | None:
     limit_atm = UNLIMITED_ATM if np.isnan(stick.ppm) else stick.ppm * 1e-6
     before_molecules, before_leaving, before_pressure = _standing(trace, course, token, limit_atm, where)
@@ -206,6 +256,7 @@ def _levels(stick: Yardstick, now: Load, leaving: Array, scale: Scale, sealed: b
     warning, danger = scale[f"{key}-warning-air"], scale[f"{key}-danger-air"]
     over = now.pressure * 1e6
     levels = graded(air, _NOTE_SHARE * warning, warning, np.inf)
+    levels = np.where(leaving < scale["least-gas"], NONE, levels)
     severe = air >= danger
     if stick.kind == "toxic-gas":
         levels = np.where((over > stick.over_liquid) & (levels == NOTE), WARNING, levels)
@@ -217,35 +268,77 @@ def _levels(stick: Yardstick, now: Load, leaving: Array, scale: Scale, sealed: b
     return np.where(severe, DANGER, levels), air
 
 
-def _draft(  # noqa: PLR0913
-    trace: StepTrace, where: Literal["path", "contact", "storage"], course: Course, token: str, record: Gas, stick: Yardstick,
-    judged: Judged, stock: ChemicalStock,
+def _draft(
+    trace: StepTrace,
+    where: Literal["path", "contact", "storage"],
+    course: Course,
+    token: str,
+    record: Gas,
+    stick: Yardstick,
+    judged: Judged,
+    stock: ChemicalStock,
 ) -> Draft:
     size = judged.leaving if np.isnan(stick.ppm) else judged.air_L
     lane = int(np.argmax(course.table(size)[0]))
     equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
     leaving, air = float(judged.leaving[lane]), float(judged.air_L[lane])
     measures = [
-        Measure(quantity="gas that can leave", value=leaving, unit="mol", basis="bubbles, and what passes from the liquid into air that is still below the limit"),
-        Measure(quantity="volume of that gas", value=leaving * MOLAR_VOLUME, unit="L", basis="ideal gas, 25 degC, 1 atm"),
-        Measure(quantity="in the air over the liquid", value=float(min(judged.pressure[lane], 1.0) * 1e6), unit="ppm", basis="Henry's law at equilibrium"),
+        Measure(
+            quantity="gas that can leave",
+            value=leaving,
+            unit="mol",
+            basis="bubbles, and what passes from the liquid into air that is still below the limit",
+        ),
+        Measure(
+            quantity="volume of that gas", value=leaving * MOLAR_VOLUME, unit="L", basis="ideal gas, 25 degC, 1 atm"
+        ),
+        Measure(
+            quantity="in the air over the liquid",
+            value=float(min(judged.pressure[lane], 1.0) * 1e6),
+            unit="ppm",
+            basis="Henry's law at equilibrium",
+        ),
     ]
     if not np.isnan(air):
-        measures.append(Measure(quantity=f"air brought to the {stick.words}", value=air / 1000, unit="m3", basis=stick.basis))
+        measures.append(
+            Measure(quantity=f"air brought to the {stick.words}", value=air / 1000, unit="m3", basis=stick.basis)
+        )
     if record.odour_warning:
-        measures.append(Measure(quantity="warning by smell", value=None, unit=record.odour_warning, basis="odour threshold against the limit"))
+        measures.append(
+            Measure(
+                quantity="warning by smell",
+                value=None,
+                unit=record.odour_warning,
+                basis="odour threshold against the limit",
+            )
+        )
     summary = _summary(record, stick, float(judged.formed[lane]), leaving, air, where, judged.stood)
     return Draft(
-        stick.kind, (token,), judged.levels, course.fractions, where, trace, summary, course.table(judged.formed), measures,
-        equations=[("equilibrium", equation, left, right)], sources=[stick.source] if stick.source else [],
+        stick.kind,
+        (token,),
+        judged.levels,
+        course.fractions,
+        where,
+        trace,
+        summary,
+        course.table(judged.formed),
+        measures,
+        equations=[("equilibrium", equation, left, right)],
+        sources=[stick.source] if stick.source else [],
     )
 
 
-def _summary(record: Gas, stick: Yardstick, formed: float, leaving: float, air_L: float, where: str, stood: bool) -> str:  # noqa: PLR0913
+def _summary(
+    record: Gas, stick: Yardstick, formed: float, leaving: float, air_L: float, where: str, stood: bool
+) -> str:
     name = record.name[:1].upper() + record.name[1:]
     reach = f", enough to bring {litres_words(air_L)} of air to its {stick.basis}" if not np.isnan(air_L) else ""
     if stood:
         return f"{name} stands over the liquid as it did before ({amount_words(leaving)} can leave{reach})."
-    place = {"contact": "may puff out where the stream falls in", "path": "is set free", "storage": "is set free while it stands"}[where]
+    place = {
+        "contact": "may puff out where the stream falls in",
+        "path": "is set free",
+        "storage": "is set free while it stands",
+    }[where]
     forms = f"{amount_words(formed)} forms, " if formed > TRACE else ""
     return f"{name} {place}: {forms}{amount_words(leaving)} ({litres_words(leaving * MOLAR_VOLUME)}) can leave the liquid{reach}."

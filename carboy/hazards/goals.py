@@ -46,8 +46,11 @@ def _value(goal: Goal, content: Mixture, stock: ChemicalStock) -> tuple[Array, s
     if goal.unit in ("mol/L", "M"):
         return amount / np.maximum(content.volume_L, 1e-9), "mol/L"
     known = elements().get(element)
-    weight = known.weight if known is not None else None
-    if weight is None:
-        token = next((t for t in content.amounts if t in stock.index.species and stock.species(t).report_key == goal.subject), None)
-        weight = stock.molar_mass(token) if token is not None else 0.0
+    if known is not None and known.weight is not None:
+        weight = known.weight
+    else:
+        holder = next(
+            (t for t in content.amounts if t in stock.index.species and stock.species(t).report_key == goal.subject), ""
+        )
+        weight = stock.molar_mass(holder) if holder else 0.0
     return 1000 * amount * weight / np.maximum(content.volume_L, 1e-9), "mg/L"

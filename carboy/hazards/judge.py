@@ -76,7 +76,11 @@ class Judge:
     def _finding(self, draft: Draft, record: Record) -> Finding:
         paths = self._paths(draft, record)
         rule_ids = [rule.id for rule in draft.rules]
-        controls = list(dict.fromkeys([*draft.controls, *(_filled(guard, draft.names) for rule in draft.rules for guard in rule.guard)]))
+        controls = list(
+            dict.fromkeys(
+                [*draft.controls, *(_filled(guard, draft.names) for rule in draft.rules for guard in rule.guard)]
+            )
+        )
         sources = list(dict.fromkeys([*draft.sources, *(key for rule in draft.rules for key in rule.cites)]))
         says = " ".join(dict.fromkeys(_filled(rule.says, draft.names) for rule in draft.rules))
         return Finding(
@@ -122,10 +126,14 @@ class Judge:
             if target in self.index.species and self.stock.kind(target) == "component":
                 nodes += record.sources(vessel, target)  # made by a rule or brought by a label as it is
                 continue
-            drawn = consumed_for(self.stock, target, max(float(draft.amount.max()) if draft.amount is not None else 0.0, 1e-12))
+            drawn = consumed_for(
+                self.stock, target, max(float(draft.amount.max()) if draft.amount is not None else 0.0, 1e-12)
+            )
             watching = rule if sort == "equilibrium" and draft.rules and not draft.rules[0].does else "equilibrium"
             shown = (tuple(map(self.stock.label, left)), tuple(map(self.stock.label, right)))
-            nodes.append(record.fired(vessel, watching, equation, drawn, {target: 1.0}, number, sort="equilibrium", shown=shown))
+            nodes.append(
+                record.fired(vessel, watching, equation, drawn, {target: 1.0}, number, sort="equilibrium", shown=shown)
+            )
         if not draft.equations:
             nodes += record.events_of(draft.cause_rule, number) if draft.cause_rule else []
             if not nodes and draft.rules:
@@ -136,7 +144,16 @@ class Judge:
                 for name in self._bound_tokens(draft):
                     drawn.update(dict.fromkeys(consumed_for(self.stock, name, 1.0), 1.0))
                 nodes.append(
-                    record.fired(vessel, rule, draft.rules[0].title, drawn, {}, number, sort="equilibrium", shown=(tuple(map(self.stock.label, drawn)), tuple(map(self.stock.label, draft.tokens))))
+                    record.fired(
+                        vessel,
+                        rule,
+                        draft.rules[0].title,
+                        drawn,
+                        {},
+                        number,
+                        sort="equilibrium",
+                        shown=(tuple(map(self.stock.label, drawn)), tuple(map(self.stock.label, draft.tokens))),
+                    )
                 )
         paths = [path for node in nodes for path in record.paths(node)]
         unique: list[list[PathStep]] = []

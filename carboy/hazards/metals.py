@@ -19,12 +19,13 @@ _NOTE_SHARE = 0.1  # of the limit: below it a metal going back is not worth a li
 
 def element_of(report_key: str) -> str:
     """``Hg`` of ``Hg(II)``."""
-    return report_key.split("(")[0]
+    return report_key.split("(", 1)[0]
 
 
 def limit_for(report_key: str, limits: tuple[Limit, ...]) -> Limit | None:
-    """The limit on a liquid that applies to a metal: the toxicity characteristic, else the wastewater treatment standard."""
-    for kind in ("toxicity-characteristic", "universal-treatment-wastewater"):
+    """The limit on a liquid that applies to a metal: the toxicity characteristic, else the wastewater treatment standard, else that
+    of metal finishing."""
+    for kind in ("toxicity-characteristic", "universal-treatment-wastewater", "metal-finishing-daily-maximum"):
         for limit in limits:
             if limit.kind == kind and limit.subject in (report_key, element_of(report_key)):
                 return limit
@@ -46,10 +47,11 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
             continue
         mixture = course.mixture
         before = trace.before
+        limited = {limit.subject for limit in stock.index.limits}
         metals = {
             token
-            for token in mixture.amounts
-            if "heavy-metal" in stock.classes.get(token, ()) and np.any(mixture.total(token) > TRACE)
+            for token in mixture.dissolvable
+            if element_of(stock.species(token).report_key) in limited and np.any(mixture.total(token) > TRACE)
         }
         for element in sorted({element_of(stock.species(token).report_key) for token in metals}):
             tokens = [token for token in metals if element_of(stock.species(token).report_key) == element]
@@ -58,16 +60,25 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
                 continue
             weight = molar_mass({element: 1.0})
             counts = {token: stock.species(token).atoms.get(element, 1.0) for token in tokens}
-            solid = course.table(sum((_solid_metal(mixture, token) * counts[token] for token in tokens), mixture.zeros()))
+            solid = course.table(
+                sum((_solid_metal(mixture, token) * counts[token] for token in tokens), mixture.zeros())
+            )
             free = course.table(sum((mixture.dissolved(token) * counts[token] for token in tokens), mixture.zeros()))
             held = np.maximum.accumulate(solid, axis=1)
             if before is not None:
-                first = sum((_solid_metal(before, token) * stock.species(token).atoms.get(element, 1.0) for token in before.amounts if token in metals), before.zeros())
+                first = sum(
+                    (
+                        _solid_metal(before, token) * stock.species(token).atoms.get(element, 1.0)
+                        for token in before.amounts
+                        if token in metals
+                    ),
+                    before.zeros(),
+                )
                 held = np.maximum(held, first[:, None])
             volume = course.table(mixture.volume_L)
             back = np.minimum(np.maximum(held - solid, 0.0), free)
             dose = course.fractions if where == "path" and trace.added is not None else np.zeros(course.points)
-            came = 0.0
+            came = np.zeros_like(free)
             if trace.added is not None and where == "path":
                 own = sum((trace.added.dissolved(token) * counts[token] for token in tokens), trace.added.zeros())
                 came = own[:, None] * dose[None, :]
@@ -80,7 +91,9 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
             strength = np.divide(back * weight * 1000, volume, out=np.zeros_like(back), where=volume > 0)
             dissolved = np.divide(free * weight * 1000, volume, out=np.zeros_like(back), where=volume > 0)
             magnitude = limit.value.magnitude
-            levels = graded(strength, _NOTE_SHARE * magnitude, magnitude, scale["remobilised-danger-factor"] * magnitude)
+            levels = graded(
+                strength, _NOTE_SHARE * magnitude, magnitude, scale["remobilised-danger-factor"] * magnitude
+            )
             if not levels.any():
                 continue
             lane = int(np.argmax(strength[0]))
@@ -92,13 +105,30 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
             )
             drafts.append(
                 Draft(
-                    "remobilised", (forms[0] if forms else tokens[0],), levels, course.fractions, where, trace, summary, back,
+                    "remobilised",
+                    (forms[0] if forms else tokens[0],),
+                    levels,
+                    course.fractions,
+                    where,
+                    trace,
+                    summary,
+                    back,
                     [
-                        Measure(quantity=f"dissolved {element}", value=float(dissolved[0, lane]), unit="mg/L", basis="equilibrium with the solids present"),
-                        Measure(quantity=f"limit for {element}", value=magnitude, unit="mg/L", basis=limit.kind.replace("-", " ")),
+                        Measure(
+                            quantity=f"dissolved {element}",
+                            value=float(dissolved[0, lane]),
+                            unit="mg/L",
+                            basis="equilibrium with the solids present",
+                        ),
+                        Measure(
+                            quantity=f"limit for {element}",
+                            value=magnitude,
+                            unit="mg/L",
+                            basis=limit.kind.replace("-", " "),
+                        ),
                     ],
                     sources=[limit.value.source],
-                    equations=_dissolution(stock, mixture, forms, tokens),
+                    equations=_dissolution(stock, forms, tokens),
                 )
             )
     return drafts
@@ -113,7 +143,9 @@ def _main_forms(mixture: Mixture, tokens: list[str], lane: int) -> list[str]:
     return [name for amount, name in sorted(found, reverse=True) if amount > 0][:3]
 
 
-def _dissolution(stock: ChemicalStock, mixture: Mixture, forms: list[str], tokens: list[str]) -> list[tuple[str, str, tuple[str, ...], tuple[str, ...]]]:
+def _dissolution(
+    stock: ChemicalStock, forms: list[str], tokens: list[str]
+) -> list[tuple[str, str, tuple[str, ...], tuple[str, ...]]]:
     target = forms[0] if forms else tokens[0]
     equation, left, right = formation_equation(stock, target)
     return [("equilibrium", equation, left, right)]

@@ -48,13 +48,30 @@ def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
         words += "; so near boiling it spatters" if boils.any() else ""
     summary = "; ".join([words, *reasons]) + "."
     measures = [
-        Measure(quantity="heat set free", value=float(course.table(course.heat_kJ)[0, lane]), unit="kJ", basis="Hess's law from enthalpies of formation and dilution"),
+        Measure(
+            quantity="heat set free",
+            value=float(course.table(course.heat_kJ)[0, lane]),
+            unit="kJ",
+            basis="Hess's law from enthalpies of formation and dilution",
+        ),
         Measure(quantity="warming without loss", value=most, unit="K", basis="heat over heat capacity of the content"),
-        Measure(quantity="temperature reached", value=top, unit="degC", basis="start temperature of the mixed liquids plus the warming"),
+        Measure(
+            quantity="temperature reached",
+            value=top,
+            unit="degC",
+            basis="start temperature of the mixed liquids plus the warming",
+        ),
     ]
     draft = Draft("heat", (), levels, course.fractions, "path", trace, summary, None, measures)
     if course.unknown_heat:
-        draft.measures.append(Measure(quantity="heat not known", value=None, unit="", basis="no enthalpy in the graph: " + "; ".join(course.unknown_heat)))
+        draft.measures.append(
+            Measure(
+                quantity="heat not known",
+                value=None,
+                unit="",
+                basis="no enthalpy in the graph: " + "; ".join(course.unknown_heat),
+            )
+        )
     return [draft]
 
 
@@ -63,7 +80,9 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     course = trace.path
     if course is None or course.mixture.headspace_L is not None:
         return []
-    slow = {token for firing in course.firings if firing.rule.speed != "at once" for token, _ in firing.reaction.products}
+    slow = {
+        token for firing in course.firings if firing.rule.speed != "at once" for token, _ in firing.reaction.products
+    }
     gas = course.mixture.zeros()
     most: dict[str, float] = {}
     for token, amount in course.mixture.gases.items():
@@ -78,7 +97,9 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
         litres = litres * np.minimum(window / np.maximum(trace.duration_s, 1.0), 1.0)[:, None]
     room = np.maximum(course.table(np.repeat(trace.capacity_L, course.points) - course.mixture.volume_L), 1e-6)
     ratio = litres / room
-    levels = graded(ratio, scale["foam-note-freeboard-fraction"], scale["foam-warning-freeboard"], scale["foam-danger-freeboard"])
+    levels = graded(
+        ratio, scale["foam-note-freeboard-fraction"], scale["foam-warning-freeboard"], scale["foam-danger-freeboard"]
+    )
     if not levels.any():
         return []
     token = max(most, key=most.__getitem__)
@@ -93,12 +114,30 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     )
     equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
     measures = [
-        Measure(quantity=f"gas{spread}", value=float(litres[0, lane]), unit="L", basis="bubbles of an open vessel at 1 atm, 25 degC"),
-        Measure(quantity="free space (freeboard)", value=float(room[0, lane]), unit="L", basis="vessel volume less liquid volume"),
+        Measure(
+            quantity=f"gas{spread}",
+            value=float(litres[0, lane]),
+            unit="L",
+            basis="bubbles of an open vessel at 1 atm, 25 degC",
+        ),
+        Measure(
+            quantity="free space (freeboard)",
+            value=float(room[0, lane]),
+            unit="L",
+            basis="vessel volume less liquid volume",
+        ),
     ]
     return [
         Draft(
-            "foam", (token,), levels, course.fractions, "path", trace, summary, course.table(molecules), measures,
+            "foam",
+            (token,),
+            levels,
+            course.fractions,
+            "path",
+            trace,
+            summary,
+            course.table(molecules),
+            measures,
             equations=[("equilibrium", equation, left, right)],
         )
     ]
@@ -111,12 +150,17 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
         if where == "contact" or course.mixture.headspace_L is None:
             continue
         gauge = course.table(course.mixture.gauge_kPa())
-        standing = 0.0 if trace.before is None or trace.before.headspace_L is None else float(trace.before.gauge_kPa().max())
+        standing = (
+            0.0 if trace.before is None or trace.before.headspace_L is None else float(trace.before.gauge_kPa().max())
+        )
         danger = np.full(course.ranges, scale["pressure-danger"])
         if trace.rating_kPa is not None:
             danger = np.minimum(danger, scale["pressure-rating-fraction"] * trace.rating_kPa)
         levels = np.stack(
-            [graded(row, 0.1 * scale["pressure-warning"], scale["pressure-warning"], limit) for row, limit in zip(gauge, danger, strict=True)]
+            [
+                graded(row, 0.1 * scale["pressure-warning"], scale["pressure-warning"], limit)
+                for row, limit in zip(gauge, danger, strict=True)
+            ]
         )
         if standing > 0 and float(gauge.max()) <= scale["markedly-worse-factor"] * standing:
             levels = np.minimum(levels, NOTE)
@@ -134,16 +178,26 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
             + f", in {litres_words(room)} of headspace."
         )
         measures = [
-            Measure(quantity="gauge pressure", value=top, unit="kPa", basis="ideal gas in the headspace: air shut in, water vapour and the gases at equilibrium with the liquid"),
+            Measure(
+                quantity="gauge pressure",
+                value=top,
+                unit="kPa",
+                basis="ideal gas in the headspace: air shut in, water vapour and the gases at equilibrium with the liquid",
+            ),
             Measure(quantity="headspace", value=room, unit="L", basis="vessel volume less liquid volume"),
         ]
         if trace.rating_kPa is not None:
-            measures.append(Measure(quantity="rating of the vessel", value=float(trace.rating_kPa[0]), unit="kPa", basis="as stated"))
-        draft = Draft("pressure", (token,) if token else (), levels, course.fractions, where, trace, summary, None, measures)
+            measures.append(
+                Measure(
+                    quantity="rating of the vessel", value=float(trace.rating_kPa[0]), unit="kPa", basis="as stated"
+                )
+            )
+        draft = Draft(
+            "pressure", (token,) if token else (), levels, course.fractions, where, trace, summary, None, measures
+        )
         if token:
             draft.amount = course.table(load(course.mixture, token).molecules)
             equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
             draft.equations = [("equilibrium", equation, left, right)]
         drafts.append(draft)
     return drafts
-

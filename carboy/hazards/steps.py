@@ -43,7 +43,10 @@ def step_report(trace: StepTrace, stock: ChemicalStock) -> StepReport:
     """The numbers of a step over the stated ranges."""
     mixture = trace.after
     solids: dict[str, Array] = {}
-    for token, amount in (*mixture.solids.items(), *((t, a) for t, a in mixture.aside.items() if stock.species(t).phase == "s")):
+    for token, amount in (
+        *mixture.solids.items(),
+        *((t, a) for t, a in mixture.aside.items() if stock.species(t).phase == "s"),
+    ):
         formula = stock.species(token).formula
         solids[formula] = solids[formula] + amount if formula in solids else amount
     gases = {stock.species(token).formula: amount for token, amount in mixture.gases.items() if np.any(amount > TRACE)}

@@ -550,7 +550,12 @@ class _Compiler:
             if value.unit != "mg/L":
                 self._report(node, f"has the unit {value.unit}; it must be unit:MilliGM-PER-L")
             kind = cast(
-                Literal["toxicity-characteristic", "universal-treatment-wastewater", "universal-treatment-leachate"],
+                Literal[
+                    "toxicity-characteristic",
+                    "universal-treatment-wastewater",
+                    "universal-treatment-leachate",
+                    "metal-finishing-daily-maximum",
+                ],
                 node.text(":kind"),
             )
             found.append(Limit(subject, value, kind))

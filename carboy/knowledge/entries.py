@@ -148,7 +148,11 @@ def _material(item: Material, index: Index) -> Entry:
     facts.append(Fact("as bought", _STATES[item.state]))
     for part in item.parts:
         name = index.substances[part.substance].name
-        share = f"{part.typical:g} %" if part.low == part.high else f"{part.low:g} to {part.high:g} %, usually {part.typical:g} %"
+        share = (
+            f"{part.typical:g} %"
+            if part.low == part.high
+            else f"{part.low:g} to {part.high:g} %, usually {part.typical:g} %"
+        )
         facts.append(Fact("holds", f"{name}, {share} by mass", source=item.source))
     balance = index.substances[item.balance].name if item.balance in index.substances else item.balance
     facts.append(Fact("the rest is", balance))

@@ -187,7 +187,12 @@ class Limit(Struct, frozen=True):
 
     subject: str
     value: Value
-    kind: Literal["toxicity-characteristic", "universal-treatment-wastewater", "universal-treatment-leachate"]
+    kind: Literal[
+        "toxicity-characteristic",
+        "universal-treatment-wastewater",
+        "universal-treatment-leachate",
+        "metal-finishing-daily-maximum",
+    ]
 
 
 class Index(Struct, frozen=True):
@@ -204,5 +209,7 @@ class Index(Struct, frozen=True):
     dilution: tuple[Enthalpy, ...]
     thresholds: dict[str, Threshold]
     limits: tuple[Limit, ...]
-    names: dict[str, str]  # folded name -> "substance:<id>", "material:<id>", "container:<id>", "class:<key>", "gas:<token>"
+    names: dict[
+        str, str
+    ]  # folded name -> "substance:<id>", "material:<id>", "container:<id>", "class:<key>", "gas:<token>"
     ancestors: dict[str, tuple[str, ...]]  # class -> itself and all above

@@ -33,7 +33,21 @@ class Interval(Frozen):
         return Interval(low=self.low * factor, high=self.high * factor)
 
 
-StrengthUnit = Literal["mol/L", "eq/L", "g/L", "w/w", "w/v", "v/v", "mass ppm", "concentrated", "dilute", "saturated", "trace", "unknown", "neat"]
+StrengthUnit = Literal[
+    "mol/L",
+    "eq/L",
+    "g/L",
+    "w/w",
+    "w/v",
+    "v/v",
+    "mass ppm",
+    "concentrated",
+    "dilute",
+    "saturated",
+    "trace",
+    "unknown",
+    "neat",
+]
 
 
 class Strength(Frozen):

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Literal
+from typing import Any, Literal
 
 from pydantic import BaseModel, ConfigDict, Field
 
@@ -101,10 +101,10 @@ class Report(ReportPart):
     questions: list[str] = []
     cautions: list[str] = []
 
-    def model_dump(self, **options):  # type: ignore[no-untyped-def,override]
+    def model_dump(self, **options: Any) -> dict[str, Any]:
         """As pydantic's, with the contract's own key names."""
         return super().model_dump(**{"by_alias": True, **options})
 
-    def model_dump_json(self, **options):  # type: ignore[no-untyped-def,override]
+    def model_dump_json(self, **options: Any) -> str:
         """As pydantic's, with the contract's own key names."""
         return super().model_dump_json(**{"by_alias": True, **options})

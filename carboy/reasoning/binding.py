@@ -34,7 +34,9 @@ class Surroundings:
     cover: str = "open"
     container: str = "glass"
     container_words: frozenset[str] = frozenset({"glass"})
-    pours: Mapping[str, frozenset[int]] = field(default_factory=dict)  # token or substance id -> numbers of the pours that brought it
+    pours: Mapping[str, frozenset[int]] = field(
+        default_factory=dict
+    )  # token or substance id -> numbers of the pours that brought it
     pouring: int | None = None  # the pour that is being added now
     earlier: Mapping[str, frozenset[str]] = field(default_factory=dict)  # token -> classes, for what was here before
 
@@ -136,7 +138,10 @@ class View:
                 met = bool(mine.intersection(words))
                 return everywhere if met != negated else ~everywhere
             case Earlier(classes=classes):
-                met = any(known.intersection(classes) or token in classes for token, known in self.surroundings.earlier.items())
+                met = any(
+                    known.intersection(classes) or token in classes
+                    for token, known in self.surroundings.earlier.items()
+                )
                 return everywhere if met else ~everywhere
             case Meeting(first=first, second=second):
                 return everywhere if self._meets(first, second, binding) else ~everywhere
@@ -151,7 +156,11 @@ class View:
             return mine
         if token not in self.stock.index.species and token not in self.stock.index.substances:
             return frozenset()
-        parts = [self.surroundings.pours.get(piece, frozenset()) for piece in self.stock.components_of(token) if piece not in (PROTON, WATER)]
+        parts = [
+            self.surroundings.pours.get(piece, frozenset())
+            for piece in self.stock.components_of(token)
+            if piece not in (PROTON, WATER)
+        ]
         return frozenset().union(*parts) if parts else frozenset()
 
     def _meets(self, first: str, second: str, binding: Binding) -> bool:

@@ -58,5 +58,6 @@ def dissolution_equation(substance: Substance, stock: ChemicalStock) -> str:
 def side_words(side: Mapping[str, float], stock: ChemicalStock) -> str:
     """``2 H+ + CO3-2``."""
     return " + ".join(
-        stock.label(token) if abs(count - 1) < 1e-9 else f"{count:g} {stock.label(token)}" for token, count in side.items()
+        stock.label(token) if abs(count - 1) < 1e-9 else f"{count:g} {stock.label(token)}"
+        for token, count in side.items()
     )

@@ -6,14 +6,14 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from carboy.chemistry.balance import balance, imbalance
 from carboy.chemistry.mixture import TRACE, Array, Mixture
+from carboy.chemistry.relations import part_of
+from carboy.chemistry.roots import bracketed_root
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.errors import RuleError
 from carboy.model.rule import Bound, Condition, Measured, Reaction, ReactionTerm, Rule
 from carboy.reasoning.binding import Binding, Mask, Surroundings, View
-from carboy.chemistry.balance import balance, imbalance
-from carboy.chemistry.relations import part_of
-from carboy.chemistry.roots import bracketed_root
 
 SPEEDS = ("at once", "minutes", "hours", "days")
 _FREE = (PROTON, WATER, "OH-")  # terms that never run out by count: the equilibria and the pH conditions limit them
@@ -61,7 +61,10 @@ def bind_reaction(reaction: Reaction, binding: dict[str, str], stock: ChemicalSt
         counts = [float(value) for value in balance(*make_up, fixed=fixed)]
     else:
         counts = [1.0 if count is None else count for _, count in [*left, *right]]
-        amounts = [list(zip(part, side, strict=True)) for part, side in zip((counts[: len(left)], counts[len(left) :]), make_up, strict=True)]
+        amounts = [
+            list(zip(part, side, strict=True))
+            for part, side in zip((counts[: len(left)], counts[len(left) :]), make_up, strict=True)
+        ]
         if imbalance(*amounts):
             raise RuleError(f"'{reaction.text}' does not balance with {', '.join(binding.values())}")
     reactants = tuple((token, count) for (token, _), count in zip(left, counts[: len(left)], strict=True))
@@ -151,7 +154,9 @@ class Reactor:
         now: Binding = {}
         for one in rule.needs:
             if isinstance(one, Bound):
-                found = [c for c in view.having((names[one.variable],), where=one.where) if c.token == names[one.variable]]
+                found = [
+                    c for c in view.having((names[one.variable],), where=one.where) if c.token == names[one.variable]
+                ]
                 if not found:
                     return None
                 now[one.variable] = found[0]
@@ -163,7 +168,9 @@ class Reactor:
             try:
                 self._bound[key] = bind_reaction(rule.does[number], names, self.stock)
             except RuleError:
-                self._bound[key] = None  # the linter lists the members of a class for which an equation does not balance
+                self._bound[key] = (
+                    None  # the linter lists the members of a class for which an equation does not balance
+                )
         return self._bound[key]
 
     def _react(
@@ -186,9 +193,7 @@ class Reactor:
             there = mixture.amount_of(token)
             extent = np.minimum(extent, there / count)
             scale = np.maximum(scale, there)
-        earlier = sum(
-            (one.extent for one in record if one.rule is rule and one.reaction is bound), mixture.zeros()
-        )
+        earlier = sum((one.extent for one in record if one.rule is rule and one.reaction is bound), mixture.zeros())
         share = reaction.share[1]
         extent = np.where(mask & np.isfinite(extent), extent, 0.0)
         if share < 1.0:  # of all that was there before this rule began, not of what is left in each round
@@ -207,9 +212,7 @@ class Reactor:
         record.append(Firing(rule, bound, names, extent, mixture.pH, reaction.share))
         return changed
 
-    def _held_by_pH(
-        self, mixture: Mixture, bound: BoundReaction, limits: list[Measured], extent: Array
-    ) -> Array:
+    def _held_by_pH(self, mixture: Mixture, bound: BoundReaction, limits: list[Measured], extent: Array) -> Array:
         """The largest extent, found on the equilibrium, at which the pH conditions of the rule still hold."""
         active = np.flatnonzero(extent > 0)
         part = mixture.take(active)

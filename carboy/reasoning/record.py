@@ -62,11 +62,17 @@ class Record:
                 self._sources.setdefault((target, token), set()).update(came)
 
     def fired(
-        self, vessel: str, rule: str, equation: str, consumed: dict[str, float], made: dict[str, float], step: int,
-        sort: Literal["firing", "equilibrium"] = "firing", needs: dict[str, tuple[str, ...]] | None = None,
+        self,
+        vessel: str,
+        rule: str,
+        equation: str,
+        consumed: dict[str, float],
+        made: dict[str, float],
+        step: int,
+        sort: Literal["firing", "equilibrium"] = "firing",
         shown: tuple[tuple[str, ...], tuple[str, ...]] | None = None,
     ) -> Node:
-        """An event used ``consumed`` and made ``made`` (mol each). ``needs`` maps a shown reactant to the components it is made of."""
+        """An event used ``consumed`` and made ``made`` (mol each)."""
         left, right = shown if shown is not None else (tuple(consumed), tuple(made))
         node = self._node(Event(rule, rule, equation, left, right, step, sort))
         for token, weight in consumed.items():
@@ -84,7 +90,11 @@ class Record:
 
     def events_of(self, rule: str, step: int) -> list[Node]:
         """The firings of a rule in a step."""
-        return [node for node, event in self._events.items() if event.sort == "firing" and event.rule == rule and event.step == step]
+        return [
+            node
+            for node, event in self._events.items()
+            if event.sort == "firing" and event.rule == rule and event.step == step
+        ]
 
     def paths(self, node: Node) -> list[list[PathStep]]:
         """All ways from a label to an event, the weightiest first; each ends in the event itself.
@@ -122,4 +132,12 @@ class Record:
 
     def _as_step(self, node: Node) -> PathStep:
         event = self._events[node]
-        return PathStep(rule=event.rule, equation=event.equation, from_=list(event.consumed), to=list(event.made), step=event.step)
+        return PathStep.model_validate(
+            {
+                "rule": event.rule,
+                "equation": event.equation,
+                "from": list(event.consumed),
+                "to": list(event.made),
+                "step": event.step,
+            }
+        )

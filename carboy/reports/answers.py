@@ -9,7 +9,9 @@ from carboy.reports.style import Style
 from carboy.reports.table import table
 
 
-def answers_text(variables: Sequence[str], answers: Sequence[Mapping[str, tuple[str, str]]], index: Index, style: Style) -> str:
+def answers_text(
+    variables: Sequence[str], answers: Sequence[Mapping[str, tuple[str, str]]], index: Index, style: Style
+) -> str:
     """The table with its heading, and how many answers there are."""
     if not answers:
         return style.finished("Nothing in the graph and the rules answers that.\n")

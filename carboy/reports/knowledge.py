@@ -29,7 +29,9 @@ def _lines(found: Sequence[Entry], style: Style, citations: Citations) -> Iterat
         shown = style.formula(entry.name) if entry.sort in ("species", "gas") else entry.name
         token = f" {style.formula(entry.id)}" if entry.sort in ("species", "gas") and entry.id != entry.name else ""
         yield f"{style.strong(shown)}{token}, {entry.sort}"
-        yield from table([_row(fact, style, citations) for fact in entry.facts], style.width, indent=2, limits={0: _LABEL})
+        yield from table(
+            [_row(fact, style, citations) for fact in entry.facts], style.width, indent=2, limits={0: _LABEL}
+        )
 
 
 def _row(fact: Fact, style: Style, citations: Citations) -> list[str]:

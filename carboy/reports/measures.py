@@ -45,10 +45,23 @@ def step_lines(report: Report, style: Style) -> Iterator[str]:
     yield style.strong("After each step")
     with_pressure = any(step.gauge_kPa and max(step.gauge_kPa) > _LEAST_PRESSURE for step in report.steps)
     with_vessel = len({step.vessel for step in report.steps}) > 1
-    head = ["step", *(["vessel"] if with_vessel else []), "pH", "°C", *(["kPa"] if with_pressure else []), "L", "what was done"]
+    head = [
+        "step",
+        *(["vessel"] if with_vessel else []),
+        "pH",
+        "°C",
+        *(["kPa"] if with_pressure else []),
+        "L",
+        "what was done",
+    ]
     rows = [head]
     for step in report.steps:
-        row = [str(step.step), *([step.vessel] if with_vessel else []), _places(step.pH, 2), _places(step.temperature_C, 1)]
+        row = [
+            str(step.step),
+            *([step.vessel] if with_vessel else []),
+            _places(step.pH, 2),
+            _places(step.temperature_C, 1),
+        ]
         row += [_pair(step.gauge_kPa)] if with_pressure else []
         rows.append([*row, _pair(step.volume_L), step.action])
     yield from table(rows, style.width, indent=2, limits={1: 16} if with_vessel else {})
@@ -79,7 +92,9 @@ def _content(step: StepReport, style: Style) -> Iterator[str]:
         if shown:
             parts.append(f"{name}, mol: {'; '.join(shown)}")
     for place, part in enumerate(parts):
-        yield from wrapped(part, style.width, f"  step {step.step}  " if place == 0 else " " * (len(str(step.step)) + 9))
+        yield from wrapped(
+            part, style.width, f"  step {step.step}  " if place == 0 else " " * (len(str(step.step)) + 9)
+        )
 
 
 def _key(key: str, style: Style) -> str:

@@ -94,7 +94,11 @@ def _told(  # noqa: PLR0913
     before.discard(number)
     if before:
         numbers = " and ".join(f"({one})" for one in sorted(before))
-        yield from wrapped(f"{'See' if controls else 'Why, and what prevents it: see'} {numbers}{' too' if controls else ''}.", style.width, margin)
+        yield from wrapped(
+            f"{'See' if controls else 'Why, and what prevents it: see'} {numbers}{' too' if controls else ''}.",
+            style.width,
+            margin,
+        )
     about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions)}."
     yield from (style.faint(line) for line in wrapped(about, style.width, margin))
 
@@ -107,7 +111,11 @@ def goal_lines(goals: Sequence[GoalReport], style: Style) -> Iterator[str]:
     yield style.strong("Aims")
     for goal in goals:
         word = {True: "met", False: "NOT MET", None: "open"}[goal.met]
-        value = f" It comes to {quantity(list(goal.value), goal.unit)}." if goal.value is not None else " It cannot be told."
+        value = (
+            f" It comes to {quantity(list(goal.value), goal.unit)}."
+            if goal.value is not None
+            else " It cannot be told."
+        )
         shown = style.alarm(word) if goal.met is False else word
         yield from wrapped(f"{goal.goal}.{value}", style.width, f"  {shown}{' ' * (9 - len(word))}")
 

@@ -16,7 +16,7 @@ from carboy.text.formulas import pretty_equation, pretty_formula
 
 WIDEST = 92  # longer lines are hard to read at arm's length
 _NARROWEST = 40
-_PLAIN_WIDTH = 100
+_PLAIN_WIDTH = 92  # signs grow a little in ASCII: no line of a log goes beyond 100
 _KEPT = "\n\u00a0\u202f\u2009"  # blanks that isprintable() does not count
 
 # what plain text writes for signs that ASCII lacks

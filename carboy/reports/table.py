@@ -11,7 +11,9 @@ GAP = 2
 _LEAST = 16  # columns that a wrapped last cell needs
 
 
-def table(rows: Sequence[Sequence[str]], width: int, *, indent: int = 0, limits: Mapping[int, int] | None = None) -> Iterator[str]:
+def table(
+    rows: Sequence[Sequence[str]], width: int, *, indent: int = 0, limits: Mapping[int, int] | None = None
+) -> Iterator[str]:
     """Lines of a table.
 
     ``limits`` caps the width of columns (place from 0 -> columns); what is longer is wrapped within its cell. The last

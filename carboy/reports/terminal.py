@@ -13,7 +13,9 @@ from carboy.reports.sentences import finding_lines, goal_lines, listed, verdict_
 from carboy.reports.style import Style, wrapped
 
 
-def report_text(report: Report, style: Style, sources: Mapping[str, Source] | None = None, *, full: bool = False) -> str:
+def report_text(
+    report: Report, style: Style, sources: Mapping[str, Source] | None = None, *, full: bool = False
+) -> str:
     """The whole report as text that ends in a newline.
 
     ``sources`` gives the citations for the keys in the report; ``full`` shows every derivation, note and citation.

@@ -86,7 +86,10 @@ def _label_lines(link: Link, width: int) -> list[str]:
 
 
 def _extended(block: Block, text: str, bridge: str) -> Block:
-    lines = [line + " " * (block.width - columns_of(line)) if place == block.row else line for place, line in enumerate(block.lines)]
+    lines = [
+        line + " " * (block.width - columns_of(line)) if place == block.row else line
+        for place, line in enumerate(block.lines)
+    ]
     lines[block.row] += f"{bridge}{text}" if text else bridge.rstrip()
     return Block(lines, block.row)
 

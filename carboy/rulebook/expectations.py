@@ -39,7 +39,11 @@ def check_expectations(report: Report, case: Case) -> list[Failure]:
         reason = next(_reasons(report, one), "")
         if one.known_failure:
             if not reason:
-                failures.append(Failure(one, f"it is marked as a known failure ({one.known_failure}) but holds now; take the mark away"))
+                failures.append(
+                    Failure(
+                        one, f"it is marked as a known failure ({one.known_failure}) but holds now; take the mark away"
+                    )
+                )
         elif reason:
             failures.append(Failure(one, reason))
     return failures
@@ -99,7 +103,9 @@ def _what_there_is(report: Report, one: Expectation) -> str:
     at_step = [f for f in report.findings if one.step is not None and f.step == one.step and f.order != _OTHER_ORDER]
     for label, found in (("of that kind there is", same), (f"in step {one.step} there is", at_step)):
         if found:
-            listed = "; ".join(f"step {f.step} {f.signal} {f.kind} {', '.join(f.species)} {f.moment}".strip() for f in found[:3])
+            listed = "; ".join(
+                f"step {f.step} {f.signal} {f.kind} {', '.join(f.species)} {f.moment}".strip() for f in found[:3]
+            )
             return f"there is no such finding; {label} {listed}"
     return "there is no such finding"
 

@@ -37,6 +37,7 @@ RELATIONS = ("dissolves into", "is", "gives", "needs", "flags", "cites", "contai
 MOST_ANSWERS = 5000
 _RELATION = "|".join(RELATIONS).replace(" ", r"\s+")
 _CLAUSE = re.compile(rf"(?P<subject>\S.*?)\s+(?P<relation>{_RELATION})\s+(?P<object>\S.*)")
+_OF_CHEMICALS = ("gives", "contains", "dissolves into")
 _VARIABLE = re.compile(r"\?[a-z][a-z0-9_]*")
 _PROTON, _HYDROXIDE = "H+", "OH-"
 _ACID, _BASE = "acid", "base"  # class keys
@@ -121,14 +122,19 @@ class Questions:
         for words in excluded:
             things = self._end(pattern, where + found["object"].find(words), words, relation, first=False)
             if isinstance(things, str):
-                raise InputError("what is excluded is named, not asked for", span=Span(pattern, where, where + len(found["object"])))
+                raise InputError(
+                    "what is excluded is named, not asked for", span=Span(pattern, where, where + len(found["object"]))
+                )
             without |= things
         return Clause(subject, relation, value, frozenset(without))
 
     def _end(self, pattern: str, start: int, words: str, relation: str, *, first: bool) -> str | frozenset[Thing]:
         if words.startswith("?"):
             if not _VARIABLE.fullmatch(words):
-                raise InputError(f"'{words}' is no variable; it is '?' and a lower-case word", span=Span(pattern, start, start + len(words)))
+                raise InputError(
+                    f"'{words}' is no variable; it is '?' and a lower-case word",
+                    span=Span(pattern, start, start + len(words)),
+                )
             return words
         things: set[Thing] = set()
         at = start
@@ -186,7 +192,9 @@ class Questions:
 
         near = () if choices is not None else self.names.suggest(word, 2)
         listed = [*choices] if choices is not None else [*self.index.classes]
-        return tuple(dict.fromkeys([*(one for one, _, _ in process.extract(word, listed, limit=2, score_cutoff=70)), *near]))[:3]
+        return tuple(
+            dict.fromkeys([*(one for one, _, _ in process.extract(word, listed, limit=2, score_cutoff=70)), *near])
+        )[:3]
 
     def _class(self, word: str) -> set[Thing]:
         key = self.names.chemical_class(word)
@@ -231,7 +239,12 @@ class Questions:
         objects = self._candidates(clause.object, answer)
         excluded = self._excluded(clause, relation)
         if subjects is not None:
-            pairs = ((subject, value) for subject in subjects for value in self._values(relation, subject, objects))
+            wanted = None if objects is None else self._widened(clause, objects)
+            pairs = (
+                (subject, value)
+                for subject in subjects
+                for value in _common(relation.forward.get(subject, set()), wanted)
+            )
         elif objects is not None:
             wanted = self._widened(clause, objects)
             pairs = ((subject, value) for value in wanted for subject in relation.backward.get(value, ()))
@@ -256,27 +269,19 @@ class Questions:
             return frozenset((answer[end],)) if end in answer else None
         return end
 
-    def _values(self, relation: Relation, subject: Thing, objects: frozenset[Thing] | None) -> Iterable[Thing]:
-        values = relation.forward.get(subject, set())
-        if objects is None:
-            return values
-        return [value for value in values if value in objects or self._member_of(value, objects)]
-
-    def _member_of(self, value: Thing, objects: frozenset[Thing]) -> bool:
-        """Whether a thing is of one of the classes among ``objects``."""
-        return value[0] == "chemical" and any(one[0] == "class" and one in self._is.forward.get(value, ()) for one in objects)
-
     def _widened(self, clause: Clause, objects: frozenset[Thing]) -> set[Thing]:
         """Classes as objects of relations that hold chemicals stand for their members."""
         wanted = set(objects)
-        if clause.relation in ("gives", "contains", "dissolves into"):
+        if clause.relation in _OF_CHEMICALS:
             for one in objects:
                 if one[0] == "class":
                     wanted |= {member for member in self._is.backward.get(one, ()) if member[0] == "chemical"}
         return wanted
 
     def _excluded(self, clause: Clause, relation: Relation) -> set[Thing]:
-        return {subject for value in self._widened(clause, clause.without) for subject in relation.backward.get(value, ())}
+        return {
+            subject for value in self._widened(clause, clause.without) for subject in relation.backward.get(value, ())
+        }
 
     # --- relations
 
@@ -293,8 +298,12 @@ class Questions:
                 "gives": self._gives_pairs,
                 "needs": self._needs_pairs,
                 "needs as written": self._written_needs,
-                "flags": lambda: ((("rule", one.id), ("kind", flag.kind)) for one in self.rules.values() for flag in one.flags),
-                "cites": lambda: ((("rule", one.id), ("source", source)) for one in self.rules.values() for source in one.cites),
+                "flags": lambda: (
+                    (("rule", one.id), ("kind", flag.kind)) for one in self.rules.values() for flag in one.flags
+                ),
+                "cites": lambda: (
+                    (("rule", one.id), ("source", source)) for one in self.rules.values() for source in one.cites
+                ),
                 "contains": self._contains_pairs,
                 "dissolves into": self._dissolves_pairs,
                 "attacks": self._attacks_pairs,
@@ -400,6 +409,10 @@ class Questions:
                 yield attacker, ("container", key)
                 for below in self._is.backward.get(attacker, ()):
                     yield below, ("container", key)
+
+
+def _common(values: set[Thing], wanted: set[Thing] | None) -> Iterable[Thing]:
+    return values if wanted is None else values & wanted
 
 
 def _sides(rule: Rule) -> set[str]:

@@ -44,7 +44,12 @@ class ExampleRunner:
         try:
             walk = self._laboratory.walk(case)
             findings = self._laboratory.judge.findings(walk)
-        except (ArithmeticError, LookupError, TypeError, ValueError) as error:  # a fault of the engine: one line of the list
+        except (
+            ArithmeticError,
+            LookupError,
+            TypeError,
+            ValueError,
+        ) as error:  # a fault of the engine: one line of the list
             raise EngineFault(f"the engine broke ({type(error).__name__}: {error})") from error
         found: list[Found] = [(rule, (one.kind,), tuple(one.species)) for one in findings for rule in one.rules]
         return [*found, *self._fired(walk)]

@@ -44,7 +44,9 @@ def only(report: Report, kind: str, species: str = "", *, step: int | None = Non
     return found[0]
 
 
-def select(report: Report, kind: str = "", species: str = "", *, step: int | None = None, order: str = "") -> list[Finding]:
+def select(
+    report: Report, kind: str = "", species: str = "", *, step: int | None = None, order: str = ""
+) -> list[Finding]:
     return [
         one
         for one in report.findings
@@ -57,7 +59,9 @@ def select(report: Report, kind: str = "", species: str = "", *, step: int | Non
 
 def outline(report: Report) -> list[str]:
     """The findings in short, for the message of a failed test."""
-    return [f"{one.signal} {one.kind} {one.species} step {one.step} {one.order} {one.amount_mol}" for one in report.findings]
+    return [
+        f"{one.signal} {one.kind} {one.species} step {one.step} {one.order} {one.amount_mol}" for one in report.findings
+    ]
 
 
 def measure(finding: Finding, quantity: str) -> float:

@@ -69,7 +69,9 @@ def test_the_vessel_counts(carboy):
     pressure = [f for f in json.loads(closed.out)["findings"] if f["kind"] == "pressure"]
     assert [f["signal"] for f in pressure] == ["danger"]
     still_open = carboy("combine", *portions, "--volume", "2 L", "--json")
-    assert not [f for f in json.loads(still_open.out)["findings"] if f["kind"] == "pressure" and f["signal"] == "danger"]
+    assert not [
+        f for f in json.loads(still_open.out)["findings"] if f["kind"] == "pressure" and f["signal"] == "danger"
+    ]
     assert json.loads(closed.out)["steps"][1]["gauge_kPa"][0] > 500
     assert json.loads(still_open.out)["steps"][1]["gauge_kPa"] == pytest.approx([0, 0], abs=1e-6)
 
