@@ -12,7 +12,7 @@ from carboy.hazards.numbers import amount_words, figures
 from carboy.model.knowledge import Limit
 from carboy.model.report import Measure
 from carboy.reasoning.equation import formation_equation
-from carboy.text.formulas import molar_mass
+from carboy.text.formulas import elements, molar_mass
 
 _NOTE_SHARE = 0.1  # of the limit: below it a metal going back is not worth a line
 
@@ -47,7 +47,7 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
             continue
         mixture = course.mixture
         before = trace.before
-        limited = {limit.subject for limit in stock.index.limits}
+        limited = {limit.subject for limit in stock.index.limits if limit.subject in elements()}
         metals = {
             token
             for token in mixture.dissolvable

@@ -210,7 +210,8 @@ class Goal(Frozen):
 class Expectation(Frozen):
     """One line of ``expect``: a finding that must be there (or be absent), a verdict, or a number of a step.
 
-    ``quantity`` names a step's number ("pH", "dissolved_mol Hg", "gas_mol CO2", "gauge_kPa", "temperature_C", "amount_mol"), ``low``/``high`` its window.
+    ``quantity`` names a step's number ("pH", "dissolved_mol Hg", "gas_mol CO2", "gauge_kPa", "temperature_C", "amount_mol");
+    ``low``/``high`` are its window.
     """
 
     step: int | None = None
