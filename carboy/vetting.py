@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
 from pathlib import Path
 
@@ -14,12 +15,14 @@ from carboy.chemistry.stock import WATER, ChemicalStock
 from carboy.errors import InputError
 from carboy.hazards.goals import goal_reports
 from carboy.hazards.judge import SIGNAL_ORDER, Judge
+from carboy.hazards.merging import merge_findings, wider_goal, wider_step
+from carboy.hazards.numbers import figures
 from carboy.hazards.steps import step_report
 from carboy.knowledge.index import load_index
 from carboy.knowledge.names import Names
 from carboy.model.knowledge import Index
 from carboy.model.plan import Case, Setting, VesselSpec
-from carboy.model.report import Finding, Report, Verdict
+from carboy.model.report import Finding, GoalReport, Report, StepReport, Verdict
 from carboy.model.rule import Rule
 from carboy.reasoning.firing import Reactor
 from carboy.rulebook.book import load_rules
@@ -33,6 +36,18 @@ CAUTIONS = (
 OTHER_ORDER = "Pour in the other order: vetted the same way, that clears this danger."
 
 Progress = Callable[[int, int], None]
+_LEAST_LEVERAGE = 0.05  # grades of severity: a number that moves less settles nothing
+
+
+@dataclass
+class Outcome:
+    """What came of a case, before it becomes a report."""
+
+    walk: Walk
+    findings: list[Finding]
+    leverage: dict[str, float]
+    steps: list[StepReport]
+    goals: list[GoalReport] = field(default_factory=list)
 
 
 class Laboratory:
@@ -55,33 +70,66 @@ class Laboratory:
         return Reactor(self.rules, self.stock)
 
     @cached_property
+    def least_reactor(self) -> Reactor:
+        """As the reactor, but with the least conversion where a rule leaves it open."""
+        return Reactor(self.rules, self.stock, least=True)
+
+    @cached_property
     def judge(self) -> Judge:
         return Judge(self.stock, self.rules)
 
-    def walk(self, case: Case, progress: Progress | None = None) -> Walk:
-        """Carry out a case on the bench model."""
-        return Walker(self.stock, self.reactor, progress).walk(case)
+    def walk(
+        self, case: Case, progress: Progress | None = None, *, left_standing: bool = False, least: bool = False
+    ) -> Walk:
+        """Carry out a case on the bench model; ``left_standing``: and leave the result for days; ``least``: with the least conversion where a
+        rule leaves it open."""
+        walker = Walker(self.stock, self.least_reactor if least else self.reactor, progress)
+        walk = walker.walk(case)
+        if left_standing:
+            walk.aims = False
+            walker.leave(walk)
+        return walk
 
     def vet(self, case: Case, progress: Progress | None = None) -> Report:
         """The report on a case."""
-        walk = self.walk(case, progress)
-        findings = self.judge.findings(walk)
-        return self._report(walk, findings)
+        return self._report(self._outcome(case, progress))
 
     def combine(
         self, portions: tuple[str, ...], setting: Setting | None = None, vessel: VesselSpec | None = None
     ) -> Report:
         """The report on portions poured together one after the other, and on the other order where there are two."""
-        case = combine_case(portions, self.names, setting, vessel)
-        walk = self.walk(case)
-        findings = self.judge.findings(walk)
+        outcome = self._outcome(combine_case(portions, self.names, setting, vessel), left_standing=True)
         if len(portions) == 2:
             swapped = combine_case(portions[::-1], self.names, setting, vessel)
-            turned = self.judge.findings(self.walk(swapped))
-            findings = compare_orders(findings, turned)
-        return self._report(walk, findings)
+            turned = self._outcome(swapped, left_standing=True)
+            outcome.findings = compare_orders(outcome.findings, turned.findings)
+        return self._report(outcome)
 
-    def _report(self, walk: Walk, findings: list[Finding]) -> Report:
+    def _outcome(self, case: Case, progress: Progress | None = None, *, left_standing: bool = False) -> Outcome:
+        """A case walked and judged: with the most conversion, and with the least too where a rule leaves the share open."""
+        walk = self.walk(case, progress, left_standing=left_standing)
+        judgement = self.judge.judge(walk)
+        outcome = Outcome(
+            walk, judgement.findings, judgement.leverage, [step_report(trace, self.stock) for trace in walk.steps]
+        )
+        outcome.goals = goal_reports(walk, self.stock)
+        if not walk.open_conversion:
+            return outcome
+        slack = self.walk(case, left_standing=left_standing, least=True)
+        other = self.judge.judge(slack)
+        outcome.findings = merge_findings(outcome.findings, other.findings)
+        outcome.steps = [
+            wider_step(one, step_report(trace, self.stock))
+            for one, trace in zip(outcome.steps, slack.steps, strict=True)
+        ]
+        outcome.goals = [
+            wider_goal(one, two) for one, two in zip(outcome.goals, goal_reports(slack, self.stock), strict=True)
+        ]
+        outcome.leverage = {key: max(value, other.leverage[key]) for key, value in outcome.leverage.items()}
+        return outcome
+
+    def _report(self, outcome: Outcome) -> Report:
+        walk, findings = outcome.walk, outcome.findings
         unsettled = [note for trace in walk.steps for note in trace.notes if "converge" in note]
         assumptions = [
             *walk.assumptions,
@@ -89,13 +137,13 @@ class Laboratory:
             *(note for trace in walk.steps for note in trace.notes),
         ]
         assumptions += self._beyond(walk)
-        questions = [*walk.questions, *self._questions(walk, findings)]
+        questions = [*walk.questions, *_questions(outcome.leverage)]
         return Report(
             title=walk.case.title,
             verdict=verdict_of(findings, bool(walk.unrecognised) or bool(unsettled)),
             findings=findings,
-            steps=[step_report(trace, self.stock) for trace in walk.steps],
-            goals=goal_reports(walk, self.stock),
+            steps=outcome.steps,
+            goals=outcome.goals,
             unrecognised=walk.unrecognised,
             assumptions=list(dict.fromkeys(assumptions)),
             questions=list(dict.fromkeys(questions)),
@@ -120,10 +168,14 @@ class Laboratory:
                 )
         return words
 
-    def _questions(self, walk: Walk, findings: list[Finding]) -> list[str]:
-        if not walk.ranges.variables or all(finding.holds == "throughout" for finding in findings):
-            return []
-        return [f"Measure this to settle what holds only in part: {key}." for key in walk.ranges.variables]
+
+def _questions(leverage: dict[str, float]) -> list[str]:
+    """The uncertain numbers whose measuring would settle something, the one that moves the findings most first."""
+    ranked = sorted(((value, key) for key, value in leverage.items() if value > _LEAST_LEVERAGE), reverse=True)
+    return [
+        f"Measure {'first' if place == 0 else 'next'}: {key}. It moves the gravity of the findings by up to {figures(value)} grades in all."
+        for place, (value, key) in enumerate(ranked)
+    ]
 
 
 def compare_orders(written: list[Finding], turned: list[Finding]) -> list[Finding]:

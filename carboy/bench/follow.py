@@ -79,7 +79,8 @@ def at_contact(
 def stored(vessel: Mixture, reactor: Reactor, surroundings: Surroundings, slowest: str) -> Course:
     """What still goes on when the vessel is left: rules of hours and days."""
     mixture, firings = reactor.run(vessel, surroundings, slowest=slowest)
-    heat, _ = _reaction_heat(heat_book(vessel.stock), firings, vessel)
+    steps, _ = _reaction_heat(heat_book(vessel.stock), firings)
+    heat = sum((kJ for _, kJ in steps), vessel.zeros())
     return Course(mixture, vessel, firings, np.array([1.0]), heat, vessel.temperature_C)
 
 
@@ -97,31 +98,53 @@ def _reacted(
     points = len(fractions)
     before = together.zeros()
     unknown: list[str] = []
+    end = points - 1  # the nominal range at the end of the addition
+    parts: list[tuple[str, float]] = []
     for source, weight in zip(sources, weights, strict=True):
         if source.amounts:
             held, missing = _held_by(book, source)
             before = before + np.repeat(held, points) * np.tile(weight, source.lanes)
             unknown += missing
-    heat, missing = _reaction_heat(book, firings, together)
-    heat = heat + before - book.of_speciation(mixture)
+            if source.neat and not missing:
+                parts.append((f"dissolving {' and '.join(_names(source))}", float(held[0] * weight[-1])))
+    steps, missing = _reaction_heat(book, firings)
+    after = book.of_speciation(mixture)
+    dissolving = sum(share for _, share in parts)
+    parts.append(("dilution, acid and base, complexes, solids and gases", float(before[end] - after[end]) - dissolving))
+    parts += [(title, float(kJ[end])) for title, kJ in steps if abs(kJ[end]) > 0]
+    heat = sum((kJ for _, kJ in steps), before - after)
     if together.neat:  # solids side by side: nothing dissolves
         heat = together.zeros()
     heat = heat * _wetted(sources, together)
     capacity = np.maximum(book.heat_capacity(together), 1e-6)
-    reached = together.temperature_C + heat / capacity
-    return Course(mixture, together, firings, fractions, heat, reached, tuple(dict.fromkeys([*unknown, *missing])))
+    return Course(
+        mixture,
+        together,
+        firings,
+        fractions,
+        heat,
+        reached_C=together.temperature_C + heat / capacity,
+        unknown_heat=tuple(dict.fromkeys([*unknown, *missing])),
+        capacity_kJ_K=capacity,
+        heat_parts=tuple(parts),
+    )
 
 
-def _reaction_heat(book: HeatBook, firings: list[Firing], mixture: Mixture) -> tuple[Array, list[str]]:
-    heat = mixture.zeros()
+def _reaction_heat(book: HeatBook, firings: list[Firing]) -> tuple[list[tuple[str, Array]], list[str]]:
+    """kJ ``[lanes]`` that each firing sets free, by its rule's title; and the titles of those whose enthalpy is unknown."""
+    known: list[tuple[str, Array]] = []
     missing: list[str] = []
     for firing in firings:
         enthalpy = book.of_reaction(firing.reaction.change)
         if enthalpy is None:
             missing.append(firing.rule.title)
         else:
-            heat = heat - enthalpy * firing.extent
-    return heat, missing
+            known.append((firing.rule.title, -enthalpy * firing.extent))
+    return known, missing
+
+
+def _names(source: Mixture) -> list[str]:
+    return [source.stock.index.substances[name].name for name in source.neat]
 
 
 def _wetted(sources: tuple[Mixture, Mixture], together: Mixture) -> Array:

@@ -1,4 +1,4 @@
-"""Stated ranges as lanes: every combination of the ends that matters, the nominal case first."""
+"""Stated ranges as lanes: the combinations of their ends and of points between them, the nominal case first."""
 
 from __future__ import annotations
 
@@ -8,7 +8,11 @@ import numpy as np
 
 from carboy.chemistry.mixture import Array
 
-MOST_FULL = 4  # with up to four ranges every corner is a lane
+MOST_FULL = 4  # with up to four ranges every corner is a lane, and points between the ends as well
+_STEPS = 8  # a range runs from 0 to 8, the nominal value lies at 4
+_MIDDLE = 4
+_GRID = {1: 9, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may lie between the ends
+_ALONE = (0, 2, 6, 8)  # with many ranges, where each is tried with the others nominal
 SAMPLED_CORNERS = 12
 OPEN_END_FACTOR = 10.0  # "at least x" is followed up to ten times x
 
@@ -44,22 +48,37 @@ class Ranges:
     def fix(self) -> None:
         """End of the first reading: lay out the lanes."""
         keys = list(self.variables)
-        rows = [[1] * len(keys)]
-        if len(keys) <= MOST_FULL:
-            rows += [list(corner) for corner in product((0, 2), repeat=len(keys))] if keys else []
-        else:
-            rows += [[0] * len(keys), [2] * len(keys)]
-            for place in range(len(keys)):
-                rows += [[1] * place + [end] + [1] * (len(keys) - place - 1) for end in (0, 2)]
-            chosen = np.random.default_rng(20261201).integers(0, 2, size=(SAMPLED_CORNERS, len(keys)))
-            rows += (2 * chosen).tolist()
+        count = len(keys)
+        rows: list[tuple[int, ...]] = [(_MIDDLE,) * count]
+        if 0 < count <= MOST_FULL:
+            levels = np.linspace(0, _STEPS, _GRID[count], dtype=int)
+            rows += [tuple(int(level) for level in row) for row in product(levels, repeat=count)]
+        elif count:
+            rows += [(0,) * count, (_STEPS,) * count]
+            for place in range(count):
+                rows += [(_MIDDLE,) * place + (end,) + (_MIDDLE,) * (count - place - 1) for end in _ALONE]
+            chosen = np.random.default_rng(20261201).integers(0, 2, size=(SAMPLED_CORNERS, count))
+            rows += [tuple(int(_STEPS * end) for end in row) for row in chosen]
         unique = list(dict.fromkeys(tuple(row) for row in rows))
         self.lanes = len(unique)
         self._values = {
-            key: np.array([self.variables[key][row[place]] for row in unique]) for place, key in enumerate(keys)
+            key: np.array([_at(self.variables[key], row[place] / _STEPS) for row in unique])
+            for place, key in enumerate(keys)
         }
 
     def value(self, key: str) -> Array:
         """The values of a variable by its key, after :meth:`fix`."""
         assert self._values is not None
         return self._values[key]
+
+    def leverage(self, key: str, levels: Array) -> float:
+        """How much a variable moves a severity: the spread of the mean of ``levels`` ``[lanes]`` over the variable's values."""
+        values = self.value(key)
+        means = [float(levels[values == value].mean()) for value in np.unique(values)]
+        return max(means) - min(means)
+
+
+def _at(variable: tuple[float, float, float], share: float) -> float:
+    """A value along low, nominal, high: linear on both sides of the nominal value, which lies at half."""
+    low, nominal, high = variable
+    return low + (nominal - low) * 2 * share if share <= 0.5 else nominal + (high - nominal) * (2 * share - 1)

@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from carboy.chemistry.mixture import Array, Mixture
+from carboy.model.plan import Setting
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.firing import Firing
 
@@ -29,6 +30,8 @@ class Course:
     heat_kJ: Array  # set free, [lanes]
     reached_C: Array  # without loss, [lanes]
     unknown_heat: tuple[str, ...] = ()
+    capacity_kJ_K: Array = field(default_factory=lambda: np.zeros(0))  # [lanes]
+    heat_parts: tuple[tuple[str, float], ...] = ()  # what the heat of the nominal end comes from, kJ
 
     @property
     def points(self) -> int:
@@ -54,17 +57,22 @@ class StepTrace:
     number: int
     action: str
     vessel: str
-    before: Mixture | None  # [ranges]; None for an empty vessel
-    added: Mixture | None  # [ranges]; None where nothing is added
-    added_label: str
-    path: Course | None
-    contact: Course | None
-    storage: Course | None
     after: Mixture  # [ranges]
     surroundings: Surroundings
     cover: str
     capacity_L: Array  # of the vessel, [ranges]
     rating_kPa: Array | None
-    duration_s: Array | None
+    setting: Setting
+    unknown: bool = False  # the vessel holds something that nobody could name
+    before: Mixture | None = None  # [ranges]; None for an empty vessel
+    added: Mixture | None = None  # [ranges]; None where nothing is added
+    added_label: str = ""
+    path: Course | None = None
+    contact: Course | None = None
+    storage: Course | None = None
+    duration_s: Array | None = None
     notes: list[str] = field(default_factory=list)
     sludge: Mixture | None = None  # a filter's cake
+    left_before: Mixture | None = None  # the vessel as it was, left standing by itself: what storage is compared with
+    left_added: Mixture | None = None  # the addition, left standing by itself
+    left_firings: tuple[Firing, ...] = ()  # what would go on in either of them by itself

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 
@@ -62,6 +63,7 @@ class VesselState:
     pours: dict[str, frozenset[int]] = field(default_factory=dict)
     earlier: dict[str, frozenset[str]] = field(default_factory=dict)
     labels: list[str] = field(default_factory=list)
+    unknown: bool = False  # holds something that nobody could name, so that its pH is anybody's guess
 
     @property
     def filled(self) -> bool:
@@ -92,6 +94,18 @@ class Walk:
     assumptions: list[str] = field(default_factory=list)
     questions: list[str] = field(default_factory=list)
     unrecognised: list[str] = field(default_factory=list)
+    aims: bool = True  # whether something is to be reached, as in a written procedure; two bottles poured together aim at nothing
+
+    @property
+    def open_conversion(self) -> bool:
+        """Whether a rule fired whose share of conversion is a range."""
+        return any(
+            firing.share[0] < firing.share[1]
+            for trace in self.steps
+            for course in (trace.path, trace.contact, trace.storage)
+            if course is not None
+            for firing in course.firings
+        )
 
 
 class Walker:
@@ -281,6 +295,7 @@ class Walker:
                     number,
                 )
             state.labels.append(portion.text)
+            state.unknown = state.unknown or (bool(made.unrecognised) and portion.pH is None)
         if number == 0:
             state.content = poured_together(state.content, content) if state.filled else content
 
@@ -313,28 +328,68 @@ class Walker:
         over_capacity = after.volume_L > state.capacity_L * (1 + 1e-6)
         over = pouring.over
         duration = None if over is None else np.full(after.lanes, 0.5 * (over.low + over.high))
-        trace = StepTrace(
+        trace = self._trace(
             number,
             pouring.action,
-            state.spec.name,
-            before,
-            added,
-            pouring.label,
-            path,
-            contact,
-            None,
+            state,
             after,
             surroundings,
-            state.cover,
-            state.capacity_L,
-            state.rating_kPa,
-            duration,
+            walk,
+            before=before,
+            added=added,
+            added_label=pouring.label,
+            path=path,
+            contact=contact,
+            duration_s=duration,
         )
         if over_capacity.any():
             trace.notes.append(
                 f"{state.spec.name} overflows: {float(after.volume_L.max()):.3g} L in {float(state.capacity_L[0]):.3g} L"
             )
         self._settle(state, after, walk, trace)
+
+    def _trace(
+        self,
+        number: int,
+        action: str,
+        state: VesselState,
+        after: Mixture,
+        surroundings: Surroundings,
+        walk: Walk,
+        **parts: Any,
+    ) -> StepTrace:
+        return StepTrace(
+            number=number,
+            action=action,
+            vessel=state.spec.name,
+            after=after,
+            surroundings=surroundings,
+            cover=state.cover,
+            capacity_L=state.capacity_L,
+            rating_kPa=state.rating_kPa,
+            setting=walk.case.setting,
+            unknown=state.unknown,
+            **parts,
+        )
+
+    def leave(self, walk: Walk) -> None:
+        """What goes on when the content of the last pour is left for days, beside what would go on in each part by itself."""
+        trace = walk.steps[-1]
+        if trace.added is None or trace.before is None or not trace.added.amounts:
+            return
+        state = walk.vessels[trace.vessel]
+        surroundings = self._surroundings(state, None)
+        whole = trace.after.take(np.arange(trace.after.lanes))
+        trace.storage = stored(whole, self.reactor, surroundings, "days")
+        self._record(trace.storage.firings, state, trace.number, walk)
+        alone = Surroundings(surroundings.cover, surroundings.container, surroundings.container_words)
+        parts = [part.take(np.arange(part.lanes)) for part in (trace.before, trace.added)]
+        if whole.headspace_L is not None:
+            for part in parts:
+                part.headspace_L, part.air_mol = whole.headspace_L, whole.air_mol
+        first, second = (stored(part, self.reactor, alone, "days") for part in parts)
+        trace.left_before, trace.left_added = first.mixture, second.mixture
+        trace.left_firings = (*first.firings, *second.firings)
 
     def _record(self, firings: list[Firing], state: VesselState, number: int, walk: Walk) -> None:
         for firing in firings:
@@ -393,47 +448,24 @@ class Walker:
         if course is not None:
             self._record(course.firings, state, number, walk)
         after = before if course is None else course.mixture
-        trace = StepTrace(
+        trace = self._trace(
             number,
             action,
-            state.spec.name,
-            before if state.filled else None,
-            None,
-            "",
-            None,
-            None,
-            course,
+            state,
             after,
             surroundings,
-            state.cover,
-            state.capacity_L,
-            state.rating_kPa,
-            duration,
+            walk,
+            before=before if state.filled else None,
+            storage=course,
+            duration_s=duration,
+            left_before=before if state.filled else None,
         )
         self._settle(state, after, walk, trace)
 
     def _note(self, number: int, action: str, state: VesselState, walk: Walk) -> None:
         surroundings = self._surroundings(state, None)
         before = state.content if state.filled else None
-        walk.steps.append(
-            StepTrace(
-                number,
-                action,
-                state.spec.name,
-                before,
-                None,
-                "",
-                None,
-                None,
-                None,
-                state.content,
-                surroundings,
-                state.cover,
-                state.capacity_L,
-                state.rating_kPa,
-                None,
-            )
-        )
+        walk.steps.append(self._trace(number, action, state, state.content, surroundings, walk, before=before))
 
     def _wait(self, number: int, step: Wait, walk: Walk) -> None:
         state = self._vessel(step.vessel, walk)
@@ -484,6 +516,7 @@ class Walker:
         source.content = source.content.scaled(1.0 - share)
         walk.record.moved(source.spec.name, target.spec.name, tuple(moved.amounts))
         target.earlier.update(source.earlier)
+        target.unknown = target.unknown or source.unknown
         action = f"transfer {source.spec.name} to {target.spec.name}"
         self._pour(number, target, Pouring(action, moved, source.spec.name, step.over, None, None), walk)
 
@@ -536,27 +569,19 @@ class Walker:
         for target, part in ((jug, clear), (holder, sludge)):
             target.content = part if not target.filled else poured_together(target.content, part)
             target.pours = {token: came_from.get(token, frozenset({number})) for token in part.amounts}
+            target.unknown = target.unknown or state.unknown
             walk.record.moved(state.spec.name, target.spec.name, tuple(part.amounts))
         jug.earlier = {token: self.stock.classes.get(token, frozenset()) for token in (*clear.amounts, *clear.solids)}
         holder.earlier = was_here
         surroundings = self._surroundings(jug, None)
         walk.steps.append(
-            StepTrace(
+            self._trace(
                 number,
                 f"{step.kind} {step.vessel} into {filtrate_name}",
-                filtrate_name,
-                None,
-                None,
-                "",
-                None,
-                None,
-                None,
+                jug,
                 jug.content,
                 surroundings,
-                jug.cover,
-                jug.capacity_L,
-                jug.rating_kPa,
-                None,
+                walk,
                 sludge=holder.content,
             )
         )

@@ -53,6 +53,27 @@ class ChemicalStock:
                     links[item.product] = molecule
         return links
 
+    @cached_property
+    def carriers(self) -> dict[str, tuple[str, ...]]:
+        """Molecule in water -> the molecule and its loose adducts with one anion (Cl2 and Cl3-, HF and HF2-), which give it up at once."""
+        found: dict[str, tuple[str, ...]] = {}
+        for molecule in set(self.dissolved_form.values()):
+            inner = self.components_of(molecule)
+            adducts = []
+            for token, made in self.formation.items():
+                if made.kind == "aqueous" and token != molecule:
+                    rest = {
+                        part: made.coefficients.get(part, 0.0) - inner.get(part, 0.0)
+                        for part in {*made.coefficients, *inner}
+                    }
+                    rest = {part: count for part, count in rest.items() if part != WATER and abs(count) > 1e-9}
+                    if len(rest) == 1 and all(
+                        count > 0 and part != PROTON and self.species(part).charge < 0 for part, count in rest.items()
+                    ):
+                        adducts.append(token)
+            found[molecule] = (molecule, *adducts)
+        return found
+
     def _make(self, token: str) -> tuple[tuple[str, float], ...]:
         return tuple(sorted((key, value) for key, value in self.components_of(token).items() if key != WATER))
 

@@ -34,11 +34,12 @@ class Draft:
     amount: Array | None = None
     measures: list[Measure] = field(default_factory=list)
     rules: list[Rule] = field(default_factory=list)
-    names: dict[str, str] = field(default_factory=dict)
+    names: dict[str, str] = field(default_factory=dict)  # variable -> name of what was bound
+    bound: dict[str, str] = field(default_factory=dict)  # variable -> token of what was bound
     equations: list[tuple[str, str, tuple[str, ...], tuple[str, ...]]] = field(default_factory=list)
     controls: list[str] = field(default_factory=list)
     sources: list[str] = field(default_factory=list)
-    share: tuple[float, float] = (1.0, 1.0)
+    at_most: bool = False  # the amount is the most that there can be, known only by class
     cause_rule: str = ""  # a firing whose node in the record is the cause itself
 
     @property
@@ -74,8 +75,7 @@ class Draft:
         if self.amount is None:
             return None
         most = self.amount.max(axis=1)
-        low, high = self.share
-        return float(most.min()) * (low / high if high > 0 else 1.0), float(most.max())
+        return 0.0 if self.at_most else float(most.min()), float(most.max())
 
 
 class Scale:
@@ -101,3 +101,12 @@ def courses(trace: StepTrace) -> list[tuple[Where, Course]]:
         if course is not None:
             found.append((name, course))  # type: ignore[arg-type]
     return found
+
+
+def worst_lane(levels: Levels, size: Array) -> int:
+    """The lane that a summary speaks of, as an index into ``[lanes]``: the largest ``size`` ``[ranges, points]`` of the nominal case where that is
+    as grave as any other, else of the gravest case."""
+    grave = levels >= max(int(levels.max()), 1)
+    if grave[0].any():
+        grave[1:] = False
+    return int(np.argmax(np.where(grave, np.nan_to_num(size, nan=0.0), -1.0)))

@@ -11,12 +11,15 @@ from carboy.bench.trace import Course, StepTrace
 from carboy.chemistry.mixture import TRACE, Array
 from carboy.chemistry.relations import part_of
 from carboy.chemistry.stock import ChemicalStock
-from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Scale, Where, courses, graded
+from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Levels, Scale, Where, courses, graded, worst_lane
+from carboy.hazards.metals import element_of, limit_for
 from carboy.hazards.numbers import figures
+from carboy.hazards.workings import plain
 from carboy.model.report import Measure
 from carboy.model.rule import Bound, Flag, Kind, Present, Rule
 from carboy.reasoning.binding import Binding, Mask, View
 from carboy.reasoning.firing import SPEEDS, Firing
+from carboy.text.formulas import elements, molar_mass
 
 GAS_KINDS: tuple[Kind, ...] = ("toxic-gas", "flammable-gas", "asphyxiant-gas", "oxygen")
 COMPUTED: tuple[Kind, ...] = (*GAS_KINDS, "heat", "foam", "pressure", "remobilised")
@@ -149,7 +152,7 @@ def class_drafts(
     """Drafts for flags without a computed magnitude; flags with one lend their words to the drafts in ``computed``."""
     drafts: dict[tuple[str, ...], Draft] = {}
     for where, course in courses(trace):
-        standing = _standing(trace, rules, stock) if where != "storage" else {}
+        standing = _standing(trace, rules, stock) if trace.added is not None else {}
         for raised in raised_flags(course, trace, where, rules, stock):
             flag = raised.flag
             if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
@@ -191,8 +194,11 @@ def _gas_of(term: str, bound: dict[str, str], stock: ChemicalStock) -> str:
 def _standing(
     trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock
 ) -> dict[tuple[str, tuple[tuple[str, str], ...]], float]:
-    """Flags that stood already in the vessel or in the bottle, with the grams that weighed them."""
-    stood: dict[tuple[str, tuple[tuple[str, str], ...]], float] = {}
+    """Flags that stood already in the vessel or in the bottle, with the grams that weighed them; what each would do if left by itself
+    stands whatever its weight."""
+    stood: dict[tuple[str, tuple[tuple[str, str], ...]], float] = {
+        (firing.rule.id, tuple(sorted(firing.bound.items()))): np.inf for firing in trace.left_firings
+    }
     for mixture in (trace.before, trace.added):
         if mixture is None or not mixture.amounts:
             continue
@@ -225,9 +231,9 @@ def _lend(raised: Raised, where: str, computed: list[Draft], stock: ChemicalStoc
         if raised.rule not in draft.rules:
             draft.rules.append(raised.rule)
             draft.names.update({variable: name_of(token, stock) for variable, token in raised.bound.items()})
+            draft.bound.update(raised.bound)
         if raised.firing is not None:
             draft.cause_rule = draft.cause_rule or raised.rule.id
-            draft.share = raised.firing.share
     return lent
 
 
@@ -254,6 +260,47 @@ def name_of(token: str, stock: ChemicalStock) -> str:
     return substance.name if substance is not None else token
 
 
+@dataclass(frozen=True)
+class Shortfall:
+    """A treatment that leaves something above its limit: mg/L and severity, ``[lanes]``."""
+
+    element: str
+    mg_L: Array
+    levels: Levels
+    limit: float
+    basis: str
+
+
+def _shortfall(raised: Raised, course: Course, stock: ChemicalStock, scale: Scale) -> Shortfall | None:
+    """What stays dissolved of the component that an ``incomplete`` flag names, against its limit; None where the graph has no limit."""
+    for term in raised.flag.terms:
+        token = named_by(term, raised.bound, stock)
+        record = stock.index.species.get(token)
+        if record is None or not record.report_key:
+            continue
+        limit = limit_for(record.report_key, stock.index.limits)
+        element = element_of(record.report_key)
+        if limit is None or element not in elements():
+            continue
+        grams = course.mixture.dissolved(token) * record.atoms.get(element, 1.0) * molar_mass({element: 1.0})
+        volume = np.maximum(course.mixture.volume_L, 1e-9)
+        strength = np.where(raised.mask, 1000 * grams / volume, 0.0)
+        worst = limit.value.magnitude
+        levels = graded(strength, worst, worst, scale["remobilised-danger-factor"] * worst)
+        return Shortfall(element, strength, levels, worst, f"{limit.kind.replace('-', ' ')}, {limit.value.source}")
+    return None
+
+
+def _needed(rule: Rule, view: View, stock: ChemicalStock) -> tuple[str, ...]:
+    """The things that a rule's ``present`` conditions find, for a flag that names none and binds none."""
+    found: list[str] = []
+    for one in rule.needs:
+        if isinstance(one, Present) and not one.negated:
+            known = one.term in stock.index.species or one.term in stock.index.substances
+            found += [one.term] if known else [carrier.token for carrier in view.having((one.term,), where=one.where)]
+    return tuple(dict.fromkeys(found))
+
+
 def _class_draft(
     raised: Raised,
     where: Where,
@@ -265,6 +312,7 @@ def _class_draft(
 ) -> Draft | None:
     flag, rule = raised.flag, raised.rule
     grams = np.where(raised.mask, raised.grams, 0.0)
+    shortfall: Shortfall | None = None
     if flag.kind == "explosive":
         levels = graded(
             grams,
@@ -272,8 +320,11 @@ def _class_draft(
             scale["energetic-warning-amount"],
             scale["energetic-danger-amount"],
         )
-    elif flag.kind in ("attack", "incomplete", "pressure"):
-        levels = np.where(raised.mask, WARNING, 0)
+    elif flag.kind == "incomplete":
+        shortfall = _shortfall(raised, course, stock, scale)
+        levels = np.full(course.mixture.lanes, WARNING) if shortfall is None else shortfall.levels
+    elif flag.kind in ("attack", "pressure"):
+        levels = np.full(course.mixture.lanes, WARNING)
     else:
         levels = graded(
             grams,
@@ -285,7 +336,7 @@ def _class_draft(
     stood = standing.get((rule.id, tuple(sorted(raised.bound.items()))))
     if (
         stood is not None
-        and raised.firing is None
+        and (raised.firing is None or np.isinf(stood))
         and float(grams.max()) <= scale["markedly-worse-factor"] * max(stood, 1e-12)
     ):
         levels = np.minimum(levels, NOTE)
@@ -299,13 +350,27 @@ def _class_draft(
         levels = np.where(np.arange(course.points) == course.points - 1, levels, 0)
     if not levels.any():
         return None
-    terms = tuple(named_by(term, raised.bound, stock) for term in flag.terms) or tuple(
-        dict.fromkeys(raised.bound.values())
+    terms = (
+        tuple(named_by(term, raised.bound, stock) for term in flag.terms)
+        or tuple(dict.fromkeys(raised.bound.values()))
+        or _needed(rule, View(course.unreacted, trace.surroundings), stock)
     )
     names = {variable: name_of(token, stock) for variable, token in raised.bound.items()}
     subject = flag.words or ", ".join(name_of(term, stock) for term in terms)
     weight = float(grams.max())
-    summary = f"{rule.title}{': ' + subject if subject else ''} ({figures(weight)} g at stake)."
+    measures: list[Measure] = []
+    summary = f"{rule.title}{': ' + subject if subject else ''}."
+    if shortfall is not None:
+        lane = worst_lane(levels, course.table(shortfall.mg_L))
+        left = float(shortfall.mg_L[lane])
+        summary = f"{rule.title}: {figures(left)} mg/L of {shortfall.element} stay dissolved, against a limit of {shortfall.limit:g} mg/L."
+        measures = [
+            plain(f"dissolved {shortfall.element}", left, "mg/L", "equilibrium"),
+            plain("limit", shortfall.limit, "mg/L", shortfall.basis),
+        ]
+    elif weight > 0 and flag.kind not in ("attack", "incomplete", "pressure"):
+        summary = f"{summary[:-1]} ({figures(weight)} g at stake)."
+        measures = [plain("amount at stake", weight, "g", "the scarcest of what the rule needs")]
     draft = Draft(
         flag.kind,
         terms,
@@ -315,15 +380,15 @@ def _class_draft(
         trace,
         summary,
         None,
-        [Measure(quantity="amount at stake", value=weight, unit="g", basis="the scarcest of what the rule needs")],
+        measures,
         rules=[rule],
         names=names,
+        bound=dict(raised.bound),
     )
     if raised.firing is not None:
         draft.amount = course.table(np.where(raised.mask, raised.moles, 0.0))
-        draft.share = raised.firing.share
         draft.cause_rule = rule.id
     elif flag.kind in GAS_KINDS:
         draft.amount = course.table(np.where(raised.mask, raised.moles, 0.0))
-        draft.share = (0.0, 1.0)
+        draft.at_most = True
     return draft

@@ -11,8 +11,10 @@ from carboy.bench.make_up import MOLAR_VOLUME
 from carboy.bench.trace import Course, StepTrace
 from carboy.chemistry.mixture import TRACE, Array, Mixture
 from carboy.chemistry.stock import WATER, ChemicalStock
-from carboy.hazards.draft import DANGER, NONE, NOTE, WARNING, Draft, Levels, Scale, courses, graded
+from carboy.hazards.draft import DANGER, NONE, NOTE, WARNING, Draft, Levels, Scale, courses, graded, worst_lane
 from carboy.hazards.numbers import amount_words, litres_words
+from carboy.hazards.ventilation import pace_measures
+from carboy.hazards.workings import gas_measures, plain
 from carboy.model.knowledge import Gas, Value
 from carboy.model.report import Measure
 from carboy.model.rule import Kind
@@ -32,6 +34,7 @@ class Load:
     dissolved: Array
     pressure: Array
     molecular: bool
+    swept_L: float  # litres of air that pass over the liquid while one stands by
 
     @property
     def molecules(self) -> Array:
@@ -40,12 +43,13 @@ class Load:
 
     def leaving(self, limit_atm: float) -> Array:
         """mol that leave into air until the air over the liquid has fallen to ``limit_atm``: all bubbles, and of what is dissolved the
-        share above the equilibrium with that air (Henry's law). Nothing dissolved leaves into air that already holds more."""
+        share above the equilibrium with that air (Henry's law), but no more than the air that passes over can carry."""
         above = np.maximum(
             1.0 - np.divide(limit_atm, self.pressure, out=np.full_like(self.pressure, np.inf), where=self.pressure > 0),
             0.0,
         )
-        return self.gas + self.dissolved * above
+        carried = self.pressure * self.swept_L / MOLAR_VOLUME
+        return self.gas + np.minimum(self.dissolved * above, np.where(above > 0, carried, 0.0))
 
 
 @dataclass(frozen=True)
@@ -61,19 +65,20 @@ class Yardstick:
     source: str
 
 
-def load(mixture: Mixture, token: str) -> Load:
+def load(mixture: Mixture, token: str, swept_L: float = np.inf) -> Load:
     """The load of gas ``token``."""
     none = mixture.zeros()
     gas, pressure = mixture.gases.get(token, none), mixture.pressures.get(token, none)
     molecule = mixture.stock.dissolved_form.get(token)
     if molecule is not None:
-        return Load(gas, mixture.aqueous.get(molecule, none), pressure, True)
+        held = sum((mixture.aqueous.get(form, none) for form in mixture.stock.carriers[molecule]), none)
+        return Load(gas, held, pressure, True, swept_L)
     reserve = [
         mixture.total(part) / count
         for part, count in mixture.stock.components_of(token).items()
         if count > 0 and part != WATER
     ]
-    return Load(gas, np.maximum(np.minimum.reduce(reserve), 0.0) if reserve else none, pressure, False)
+    return Load(gas, np.maximum(np.minimum.reduce(reserve), 0.0) if reserve else none, pressure, False, swept_L)
 
 
 def yardsticks(gas: Gas, classes: frozenset[str], scale: Scale) -> list[Yardstick]:
@@ -154,13 +159,13 @@ def gas_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dra
             record = stock.index.gases.get(token)
             if record is None:
                 continue
-            now = load(course.mixture, token)
+            now = load(course.mixture, token, scale["swept-air"])
             if not np.any(now.gas + now.dissolved * (now.pressure > 0) > TRACE):
                 continue
             for stick in yardsticks(record, record_classes(stock, token), scale):
                 judged = _judge(trace, where, course, token, stick, now, scale)
                 if judged is not None:
-                    drafts.append(_draft(trace, where, course, token, record, stick, judged, stock))
+                    drafts.append(_draft(trace, where, course, token, record, stick, judged, stock, scale))
     return drafts
 
 
@@ -171,18 +176,21 @@ def record_classes(stock: ChemicalStock, token: str) -> frozenset[str]:
     return frozenset(up for key in keys for up in stock.index.ancestors.get(key, (key,)))
 
 
-def _standing(trace: StepTrace, course: Course, token: str, limit_atm: float, where: str) -> tuple[Array, Array, Array]:
+def _standing(
+    trace: StepTrace, course: Course, token: str, limit_atm: float, where: str, swept_L: float
+) -> tuple[Array, Array, Array]:
     """Molecules, mol that can leave and pressure of the vessel and of the addition before they met, laid out over the course."""
     molecules, leaving, pressure = (np.zeros(course.mixture.lanes) for _ in range(3))
     ones = np.ones(course.points)
-    for mixture, along_path in ((trace.before, ones), (trace.added, course.fractions)):
+    parts = (trace.left_before, trace.left_added) if where == "storage" else (trace.before, trace.added)
+    for mixture, along_path in zip(parts, (ones, course.fractions), strict=True):
         if mixture is None or not mixture.amounts:
             continue
         if mixture.neat:
             if _gives_by_itself(mixture, token):
                 leaving, pressure = leaving + np.inf, pressure + np.inf
             continue
-        own = load(mixture, token)
+        own = load(mixture, token, swept_L)
         weight = np.tile(along_path if where == "path" else ones, mixture.lanes)
         if where == "contact":
             whole = np.repeat(mixture.volume_L, course.points)
@@ -228,7 +236,7 @@ def _judge(
     scale: Scale,
 ) -> Judged | None:
     limit_atm = UNLIMITED_ATM if np.isnan(stick.ppm) else stick.ppm * 1e-6
-    before_molecules, before_leaving, before_pressure = _standing(trace, course, token, limit_atm, where)
+    before_molecules, before_leaving, before_pressure = _standing(trace, course, token, limit_atm, where, now.swept_L)
     leaving = now.leaving(limit_atm)
     levels, air = _levels(stick, now, leaving, scale, course.mixture.headspace_L is not None)
     factor = scale["markedly-worse-factor"]
@@ -277,32 +285,22 @@ def _draft(
     stick: Yardstick,
     judged: Judged,
     stock: ChemicalStock,
+    scale: Scale,
 ) -> Draft:
     size = judged.leaving if np.isnan(stick.ppm) else judged.air_L
-    lane = int(np.argmax(course.table(size)[0]))
+    lane = worst_lane(judged.levels, course.table(size))
     equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
     leaving, air = float(judged.leaving[lane]), float(judged.air_L[lane])
-    measures = [
-        Measure(
-            quantity="gas that can leave",
-            value=leaving,
-            unit="mol",
-            basis="bubbles, and what passes from the liquid into air that is still below the limit",
-        ),
-        Measure(
-            quantity="volume of that gas", value=leaving * MOLAR_VOLUME, unit="L", basis="ideal gas, 25 degC, 1 atm"
-        ),
-        Measure(
-            quantity="in the air over the liquid",
-            value=float(min(judged.pressure[lane], 1.0) * 1e6),
-            unit="ppm",
-            basis="Henry's law at equilibrium",
-        ),
-    ]
-    if not np.isnan(air):
-        measures.append(
-            Measure(quantity=f"air brought to the {stick.words}", value=air / 1000, unit="m3", basis=stick.basis)
-        )
+    limit = (
+        None
+        if np.isnan(stick.ppm)
+        else plain(stick.words, stick.ppm, "ppm", ", ".join(filter(None, (stick.basis, stick.source))))
+    )
+    measures = gas_measures(course, token, leaving, air, limit, stick.words, lane, stock)
+    if where == "path" and not judged.stood:
+        short = stick.over_liquid if np.isfinite(stick.over_liquid) else stick.ppm
+        words = "short-term limit" if np.isfinite(stick.over_liquid) else stick.words
+        measures += pace_measures(trace, course, judged.leaving, short, words, scale)
     if record.odour_warning:
         measures.append(
             Measure(

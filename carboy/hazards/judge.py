@@ -3,11 +3,14 @@
 from __future__ import annotations
 
 import re
+from dataclasses import dataclass
+
+import numpy as np
 
 from carboy.bench.trace import StepTrace
 from carboy.bench.walk import Walk
 from carboy.chemistry.stock import ChemicalStock
-from carboy.hazards.draft import Draft, Scale
+from carboy.hazards.draft import NOTE, Draft, Scale
 from carboy.hazards.flagged import class_drafts
 from carboy.hazards.gas import gas_drafts
 from carboy.hazards.metals import remobilised_drafts
@@ -24,6 +27,19 @@ _MOMENT_ORDER = {"contact": 0, "during": 1, "after": 2, "storage": 3}
 _VARIABLE = re.compile(r"\?(\w+)(?:\.\w+)?")
 
 
+@dataclass
+class Judgement:
+    """Findings, and by how many grades of severity each stated range moves them in all."""
+
+    findings: list[Finding]
+    leverage: dict[str, float]
+
+
+def in_order(findings: list[Finding]) -> list[Finding]:
+    """By step, then gravity, then moment."""
+    return sorted(findings, key=lambda one: (one.step, SIGNAL_ORDER[one.signal], _MOMENT_ORDER[one.moment], one.kind))
+
+
 class Judge:
     """Judges walks by the rules and the thresholds of the graph."""
 
@@ -33,12 +49,29 @@ class Judge:
         self.rules = rules
         self.scale = Scale(stock.index)
 
-    def findings(self, walk: Walk) -> list[Finding]:
-        """All findings, one per kind, species, step and vessel, in the order of steps and of gravity."""
+    def judge(self, walk: Walk) -> Judgement:
+        """All findings, one per kind, species, step and vessel, in the order of steps and of gravity; and what each range does to them."""
         found: list[Finding] = []
+        leverage = dict.fromkeys(walk.ranges.variables, 0.0)
+        last = {
+            trace.vessel: trace.number for trace in walk.steps if trace.path is not None or trace.storage is not None
+        }
         for trace in walk.steps:
-            found += [self._finding(draft, walk.record) for draft in self._merged(self._drafts(trace))]
-        return sorted(found, key=lambda one: (one.step, SIGNAL_ORDER[one.signal], _MOMENT_ORDER[one.moment], one.kind))
+            for draft in self._merged(self._drafts(trace)):
+                if draft.kind == "incomplete" and (trace.number != last[trace.vessel] or not walk.aims):
+                    draft.levels = np.minimum(
+                        draft.levels, NOTE
+                    )  # on the way to an aim, or without one, it is only told
+                found.append(self._finding(draft, walk.record))
+                if not draft.throughout or draft.level > NOTE:
+                    levels = draft.levels.max(axis=1).astype(float)
+                    for key in leverage:
+                        leverage[key] += walk.ranges.leverage(key, levels)
+        return Judgement(in_order(found), leverage)
+
+    def findings(self, walk: Walk) -> list[Finding]:
+        """The findings alone."""
+        return self.judge(walk).findings
 
     def _drafts(self, trace: StepTrace) -> list[Draft]:
         if trace.path is None and trace.contact is None and trace.storage is None:
@@ -124,7 +157,7 @@ class Judge:
             token = draft.tokens[0] if draft.kind != "remobilised" else right[0]
             target = self.stock.dissolved_form.get(token, token)
             if target in self.index.species and self.stock.kind(target) == "component":
-                nodes += record.sources(vessel, target)  # made by a rule or brought by a label as it is
+                nodes += record.sources(vessel, target, number)  # made by a rule or brought by a label as it is
                 continue
             drawn = consumed_for(
                 self.stock, target, max(float(draft.amount.max()) if draft.amount is not None else 0.0, 1e-12)
@@ -163,9 +196,9 @@ class Judge:
         return unique
 
     def _bound_tokens(self, draft: Draft) -> list[str]:
-        by_name = {**{record.name: token for token, record in self.index.species.items() if record.name}}
-        by_name.update({record.name: token for token, record in self.index.substances.items()})
-        return [by_name[name] for name in draft.names.values() if name in by_name]
+        return [
+            token for token in draft.bound.values() if token in self.index.species or token in self.index.substances
+        ]
 
 
 def _filled(text: str, names: dict[str, str]) -> str:

@@ -7,7 +7,7 @@ import numpy as np
 from carboy.bench.trace import StepTrace
 from carboy.chemistry.mixture import TRACE, Mixture
 from carboy.chemistry.stock import ChemicalStock
-from carboy.hazards.draft import Draft, Scale, courses, graded
+from carboy.hazards.draft import Draft, Scale, courses, graded, worst_lane
 from carboy.hazards.numbers import amount_words, figures
 from carboy.model.knowledge import Limit
 from carboy.model.report import Measure
@@ -96,10 +96,10 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
             )
             if not levels.any():
                 continue
-            lane = int(np.argmax(strength[0]))
+            lane = worst_lane(levels, strength)
             forms = _main_forms(mixture, tokens, lane)
             summary = (
-                f"{element} goes back into solution: {amount_words(float(back[0, lane]))}, {figures(float(dissolved[0, lane]))} mg/L dissolved"
+                f"{element} goes back into solution: {amount_words(float(back.flat[lane]))}, {figures(float(dissolved.flat[lane]))} mg/L dissolved"
                 + (f", mostly as {forms[0]}" if forms else "")
                 + f", against a limit of {magnitude:g} mg/L."
             )
@@ -116,7 +116,7 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
                     [
                         Measure(
                             quantity=f"dissolved {element}",
-                            value=float(dissolved[0, lane]),
+                            value=float(dissolved.flat[lane]),
                             unit="mg/L",
                             basis="equilibrium with the solids present",
                         ),

@@ -5,15 +5,18 @@ from __future__ import annotations
 import numpy as np
 
 from carboy.bench.make_up import MOLAR_VOLUME
-from carboy.bench.trace import StepTrace
+from carboy.bench.trace import Course, StepTrace
 from carboy.chemistry.stock import ChemicalStock
-from carboy.hazards.draft import DANGER, NOTE, Draft, Scale, courses, graded
+from carboy.hazards.draft import DANGER, NOTE, Draft, Scale, courses, graded, worst_lane
 from carboy.hazards.gas import load
 from carboy.hazards.numbers import figures, litres_words
+from carboy.hazards.workings import plain
 from carboy.model.report import Measure
 from carboy.reasoning.equation import formation_equation
 
 BOILING_WATER = 100.0  # degC at one atmosphere
+WATER_BOILS = 2257.0  # kJ/kg, enthalpy of vaporisation at 100 degC, CRC Handbook (from memory)
+ICE_MELTS = 334.0  # kJ/kg, enthalpy of fusion, CRC Handbook (from memory)
 
 
 def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Draft]:
@@ -39,29 +42,15 @@ def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
                 reasons.append(f"{stock.index.substances[name].name} begins to decompose at {onset.magnitude:g} °C")
     if not levels.any():
         return []
-    lane = int(np.argmax(rise[0]))
-    most, top = float(rise[0, lane]), float(reached[0, lane])
+    lane = worst_lane(levels, rise)
+    most, top = float(rise.flat[lane]), float(reached.flat[lane])
     if top >= BOILING_WATER and boils.any():
         words = f"Heat enough to warm the mixture by {figures(most)} K: it boils and spatters"
     else:
         words = f"The mixture warms by {figures(most)} K to about {figures(top, 3)} °C if no heat is lost"
         words += "; so near boiling it spatters" if boils.any() else ""
     summary = "; ".join([words, *reasons]) + "."
-    measures = [
-        Measure(
-            quantity="heat set free",
-            value=float(course.table(course.heat_kJ)[0, lane]),
-            unit="kJ",
-            basis="Hess's law from enthalpies of formation and dilution",
-        ),
-        Measure(quantity="warming without loss", value=most, unit="K", basis="heat over heat capacity of the content"),
-        Measure(
-            quantity="temperature reached",
-            value=top,
-            unit="degC",
-            basis="start temperature of the mixed liquids plus the warming",
-        ),
-    ]
+    measures = _heat_measures(course, lane, most, top, scale)
     draft = Draft("heat", (), levels, course.fractions, "path", trace, summary, None, measures)
     if course.unknown_heat:
         draft.measures.append(
@@ -73,6 +62,69 @@ def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
             )
         )
     return [draft]
+
+
+def _heat_measures(course: Course, lane: int, rise: float, top: float, scale: Scale) -> list[Measure]:
+    """Heat, warming, and what carries it off: ice or cooling for the whole addition, water boiled away."""
+    heat = float(course.heat_kJ[lane])
+    capacity = heat / rise if rise else 0.0
+    ceiling = scale["heat-warning"]
+    inputs = [
+        plain("heat set free", heat, "kJ"),
+        plain(
+            "heat capacity of the content", capacity, "kJ/K", "water 4.18, dissolved 1.0, organic liquids 2.0 kJ/(kg K)"
+        ),
+    ]
+    measures = [
+        Measure(
+            quantity="heat set free",
+            value=heat,
+            unit="kJ",
+            basis="Hess's law from enthalpies of formation and dilution",
+            equation="Q = H(parts before) - H(mixture) - sum of reaction enthalpy x extent",
+            inputs=[plain(words, share, "kJ") for words, share in course.heat_parts],
+        ),
+        Measure(
+            quantity="warming without loss",
+            value=rise,
+            unit="K",
+            basis="heat over heat capacity of the content",
+            equation="rise = Q / C",
+            inputs=inputs,
+        ),
+        Measure(
+            quantity="temperature reached",
+            value=top,
+            unit="degC",
+            basis="start temperature of the mixed liquids plus the warming; water boils before it goes beyond 100 degC",
+        ),
+    ]
+    whole = course.table(course.heat_kJ)[0, -1]
+    surplus = float(whole) - ceiling * float(course.table(course.capacity_kJ_K)[0, -1])
+    if surplus > 0:
+        measures.append(
+            Measure(
+                quantity=f"to be carried off so that it stays within {ceiling:g} K",
+                value=surplus,
+                unit="kJ",
+                basis=f"as much as {figures(surplus / ICE_MELTS)} kg of melting ice takes up",
+                equation="surplus = Q - C x allowed rise",
+                inputs=inputs,
+            )
+        )
+    if top > BOILING_WATER:
+        boiled = (top - BOILING_WATER) * capacity / WATER_BOILS
+        measures.append(
+            Measure(
+                quantity="water that would boil away",
+                value=boiled,
+                unit="kg",
+                basis="2257 kJ/kg at 100 degC (CRC Handbook, from memory)",
+                equation="m = C x (T - 100 degC) / 2257 kJ/kg",
+                inputs=inputs,
+            )
+        )
+    return measures
 
 
 def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Draft]:
@@ -103,26 +155,26 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     if not levels.any():
         return []
     token = max(most, key=most.__getitem__)
-    lane = int(np.argmax(ratio[0]))
+    lane = worst_lane(levels, ratio)
     molecules = load(course.mixture, token).molecules
     record = stock.index.gases.get(token)
     name = record.name if record is not None else token
     spread = "" if trace.duration_s is None else f" within {scale['foam-time']:g} min"
     summary = (
-        f"{name[:1].upper() + name[1:]} bubbles through the liquid: {litres_words(float(litres[0, lane]))} of gas{spread} against "
-        f"{litres_words(float(room[0, lane]))} of free space above it."
+        f"{name[:1].upper() + name[1:]} bubbles through the liquid: {litres_words(float(litres.flat[lane]))} of gas{spread} against "
+        f"{litres_words(float(room.flat[lane]))} of free space above it."
     )
     equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
     measures = [
         Measure(
             quantity=f"gas{spread}",
-            value=float(litres[0, lane]),
+            value=float(litres.flat[lane]),
             unit="L",
             basis="bubbles of an open vessel at 1 atm, 25 degC",
         ),
         Measure(
             quantity="free space (freeboard)",
-            value=float(room[0, lane]),
+            value=float(room.flat[lane]),
             unit="L",
             basis="vessel volume less liquid volume",
         ),
@@ -166,11 +218,11 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
             levels = np.minimum(levels, NOTE)
         if not levels.any():
             continue
-        lane = int(np.argmax(gauge[0]))
-        top = float(gauge[0, lane])
-        gases = {token: float(course.table(amount)[0, lane]) for token, amount in course.mixture.gases.items()}
+        lane = worst_lane(levels, gauge)
+        top = float(gauge.flat[lane])
+        gases = {token: float(amount[lane]) for token, amount in course.mixture.gases.items()}
         token = max(gases, key=gases.__getitem__) if gases else ""
-        room = float(course.table(course.mixture.headspace_L)[0, lane])
+        room = float(course.mixture.headspace_L[lane])
         record = stock.index.gases.get(token)
         summary = (
             f"The closed vessel reaches {figures(top)} kPa above the atmosphere"

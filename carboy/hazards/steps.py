@@ -27,7 +27,7 @@ def dissolved_by_key(mixture: Mixture, stock: ChemicalStock) -> dict[str, Array]
             continue
         record = stock.species(token)
         if stock.kind(token) == "aside":
-            if record.phase != "s":
+            if not apart(token, stock):
                 add(record.formula, mixture.total(token))
             continue
         key = record.report_key or record.formula
@@ -39,18 +39,23 @@ def dissolved_by_key(mixture: Mixture, stock: ChemicalStock) -> dict[str, Array]
     return {key: amount for key, amount in found.items() if np.any(amount > 0)}
 
 
+def apart(token: str, stock: ChemicalStock) -> bool:
+    """Whether a thing that stands aside lies apart from the liquid: a solid, or a metal that is liquid."""
+    return stock.species(token).phase == "s" or "metal" in stock.classes.get(token, ())
+
+
 def step_report(trace: StepTrace, stock: ChemicalStock) -> StepReport:
     """The numbers of a step over the stated ranges."""
     mixture = trace.after
     solids: dict[str, Array] = {}
     for token, amount in (
         *mixture.solids.items(),
-        *((t, a) for t, a in mixture.aside.items() if stock.species(t).phase == "s"),
+        *((t, a) for t, a in mixture.aside.items() if apart(t, stock)),
     ):
         formula = stock.species(token).formula
         solids[formula] = solids[formula] + amount if formula in solids else amount
     gases = {stock.species(token).formula: amount for token, amount in mixture.gases.items() if np.any(amount > TRACE)}
-    with_pH = mixture.solved is not None and np.any(mixture.total(WATER) > 0)
+    with_pH = mixture.solved is not None and np.any(mixture.total(WATER) > 0) and not trace.unknown
     return StepReport(
         step=trace.number,
         action=trace.action,

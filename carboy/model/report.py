@@ -31,12 +31,14 @@ class PathStep(ReportPart):
 
 
 class Measure(ReportPart):
-    """One number that judges a finding, with what it rests on."""
+    """One number that judges a finding, with what it rests on: the equation it came from and the numbers that went in."""
 
     quantity: str
     value: float | list[float] | None
     unit: str
     basis: str
+    equation: str = ""
+    inputs: list[Measure] = []
 
 
 class Finding(ReportPart):

@@ -102,10 +102,15 @@ def _depends_on_pH(conditions: tuple[Condition, ...]) -> list[Measured]:
 
 
 class Reactor:
-    """Runs the changing rules on a mixture to a fixed point, in order of speed."""
+    """Runs the changing rules on a mixture to a fixed point, in order of speed.
 
-    def __init__(self, rules: tuple[Rule, ...], stock: ChemicalStock) -> None:
+    Where a rule leaves the share of conversion open, the most is taken, or the least with ``least``: what is left over then is there
+    for the steps that follow.
+    """
+
+    def __init__(self, rules: tuple[Rule, ...], stock: ChemicalStock, *, least: bool = False) -> None:
         self.stock = stock
+        self.least = least
         self.rules = tuple(rule for rule in rules if rule.does and not rule.off)
         self._bound: dict[tuple[str, int, tuple[tuple[str, str], ...]], BoundReaction | None] = {}
 
@@ -194,7 +199,7 @@ class Reactor:
             extent = np.minimum(extent, there / count)
             scale = np.maximum(scale, there)
         earlier = sum((one.extent for one in record if one.rule is rule and one.reaction is bound), mixture.zeros())
-        share = reaction.share[1]
+        share = reaction.share[0 if self.least else 1]
         extent = np.where(mask & np.isfinite(extent), extent, 0.0)
         if share < 1.0:  # of all that was there before this rule began, not of what is left in each round
             extent = np.maximum(share * (extent + earlier) - earlier, 0.0)

@@ -77,16 +77,16 @@ class Record:
         node = self._node(Event(rule, rule, equation, left, right, step, sort))
         for token, weight in consumed.items():
             for source in self._sources.get((vessel, token), ()):
-                if source != node:
+                if source != node and self._events[source].step <= step:
                     self.graph.add_edge(source, node, key=token, weight=weight)
         if sort == "firing":
             for token in made:
                 self._sources.setdefault((vessel, token), set()).add(node)
         return node
 
-    def sources(self, vessel: str, token: str) -> list[Node]:
-        """The events that supply a component in a vessel."""
-        return sorted(self._sources.get((vessel, token), ()))
+    def sources(self, vessel: str, token: str, step: int) -> list[Node]:
+        """The events up to a step that supply a component in a vessel."""
+        return sorted(node for node in self._sources.get((vessel, token), ()) if self._events[node].step <= step)
 
     def events_of(self, rule: str, step: int) -> list[Node]:
         """The firings of a rule in a step."""

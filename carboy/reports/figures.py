@@ -56,3 +56,14 @@ def quantity(value: float | Sequence[float] | None, unit: str, digits: int = 3) 
         return shown
     figures = span(value, digits) if isinstance(value, Sequence) else number(value, digits)
     return f"{figures}{_NO_BREAK}{shown}".rstrip(_NO_BREAK) if shown else figures
+
+
+def runs(numbers: Sequence[int]) -> str:
+    """Whole numbers in order, as ``1, 3, 5 to 9``."""
+    found: list[list[int]] = []
+    for one in numbers:
+        if found and one == found[-1][-1] + 1:
+            found[-1].append(one)
+        else:
+            found.append([one])
+    return ", ".join(f"{run[0]} to {run[-1]}" if len(run) > 2 else ", ".join(map(str, run)) for run in found)

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 from carboy.model.report import Finding, Pair, Report, StepReport
-from carboy.reports.figures import quantity, span
+from carboy.reports.figures import quantity, runs, span
 from carboy.reports.sentences import numbered
 from carboy.reports.style import Style, wrapped
 from carboy.reports.table import table
@@ -65,8 +65,10 @@ def step_lines(report: Report, style: Style) -> Iterator[str]:
         row += [_pair(step.gauge_kPa)] if with_pressure else []
         rows.append([*row, _pair(step.volume_L), step.action])
     yield from table(rows, style.width, indent=2, limits={1: 16} if with_vessel else {})
-    for step in report.steps:
-        yield from _content(step, style)
+    for steps, parts in _contents(report, style):
+        label = f"  step {runs(steps)}  "
+        for place, part in enumerate(parts):
+            yield from wrapped(part, style.width, label if place == 0 else " " * len(label))
 
 
 def _pair(values: Pair | float | None) -> str:
@@ -83,7 +85,22 @@ def _places(values: Pair | None, places: int) -> str:
     return ends[0] if ends[0] == ends[1] else f"{ends[0]} to {ends[1]}"
 
 
-def _content(step: StepReport, style: Style) -> Iterator[str]:
+def _contents(report: Report, style: Style) -> Iterator[tuple[list[int], list[str]]]:
+    """What is in the vessels, one entry for the steps that leave a vessel's content as it was."""
+    last: dict[str, tuple[list[int], list[str]]] = {}
+    found: list[tuple[list[int], list[str]]] = []
+    for step in report.steps:
+        parts = _content(step, style)
+        before = last.get(step.vessel)
+        if before is not None and before[1] == parts:
+            before[0].append(step.step)
+        elif parts:
+            last[step.vessel] = ([step.step], parts)
+            found.append(last[step.vessel])
+    yield from found
+
+
+def _content(step: StepReport, style: Style) -> list[str]:
     parts = []
     split = {key.partition("(")[0] for key in step.dissolved_mol if "(" in key}
     dissolved = {key: pair for key, pair in step.dissolved_mol.items() if key not in split}
@@ -91,10 +108,7 @@ def _content(step: StepReport, style: Style) -> Iterator[str]:
         shown = [f"{_key(key, style)}\u00a0{span(pair)}" for key, pair in amounts.items() if pair[1] > _LEAST_SHOWN]
         if shown:
             parts.append(f"{name}, mol: {'; '.join(shown)}")
-    for place, part in enumerate(parts):
-        yield from wrapped(
-            part, style.width, f"  step {step.step}  " if place == 0 else " " * (len(str(step.step)) + 9)
-        )
+    return parts
 
 
 def _key(key: str, style: Style) -> str:

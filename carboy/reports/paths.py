@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator
 
 from carboy.model.report import Finding, PathStep, Report
+from carboy.reports.figures import runs
 from carboy.reports.sentences import numbered
 from carboy.reports.style import Style, wrapped
 from carboy.reports.tree import drawn
@@ -29,10 +30,14 @@ def path_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
     for place, (numbers, finding) in enumerate(groups):
         if place:
             yield ""
-        mark = "(" + ", ".join(map(str, numbers)) + ")"
+        mark = f"({runs(numbers)})"
         lines = drawn(finding.path, finding.species, style, indent=6)
-        yield mark.rjust(5) + lines[0][5:] if len(mark) <= 5 and not lines[0][:6].strip() else f"  {mark}"
-        yield from lines[1:] if len(mark) <= 5 else lines
+        if len(mark) <= 3:
+            yield f"  {mark} {lines[0].lstrip()}"
+            yield from lines[1:]
+        else:
+            yield from wrapped(mark, style.width, "  ")
+            yield from lines
         if finding.other_paths and not full:
             count = len(finding.other_paths)
             words = "1 other way leads" if count == 1 else f"{count} other ways lead"

@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Sequence
 
 from carboy.model.report import Finding, GoalReport, Report
 from carboy.reports.citations import Citations
-from carboy.reports.figures import quantity
+from carboy.reports.figures import quantity, runs
 from carboy.reports.style import Style, wrapped
 from carboy.reports.words import KINDS, OTHER_ORDER, VERDICTS, by_signal, moment_words, of_other_order
 
@@ -118,6 +119,18 @@ def goal_lines(goals: Sequence[GoalReport], style: Style) -> Iterator[str]:
         )
         shown = style.alarm(word) if goal.met is False else word
         yield from wrapped(f"{goal.goal}.{value}", style.width, f"  {shown}{' ' * (9 - len(word))}")
+
+
+_OF_A_STEP = re.compile(r"Step (\d+): (.*)", re.DOTALL)
+
+
+def gathered(items: Sequence[str]) -> list[str]:
+    """What is said of several steps in the same words, said once."""
+    steps: dict[str, list[int]] = {}
+    for item in items:
+        found = _OF_A_STEP.fullmatch(item)
+        steps.setdefault(found[2] if found else item, []).extend([int(found[1])] if found else [])
+    return [f"Step{'s' if len(of) > 1 else ''} {runs(of)}: {text}" if of else text for text, of in steps.items()]
 
 
 def listed(title: str, items: Sequence[str], style: Style, *, faint: bool = False) -> Iterator[str]:

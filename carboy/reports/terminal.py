@@ -9,7 +9,7 @@ from carboy.model.report import Report
 from carboy.reports.citations import Citations
 from carboy.reports.measures import measure_lines, step_lines
 from carboy.reports.paths import path_lines
-from carboy.reports.sentences import finding_lines, goal_lines, listed, verdict_lines
+from carboy.reports.sentences import finding_lines, gathered, goal_lines, listed, verdict_lines
 from carboy.reports.style import Style, wrapped
 
 
@@ -32,7 +32,7 @@ def _lines(report: Report, style: Style, citations: Citations, *, full: bool) ->
     yield from measure_lines(report, style)
     yield from step_lines(report, style)
     yield from path_lines(report, style, full=full)
-    yield from listed("Taken as given", report.assumptions, style, faint=True)
+    yield from listed("Taken as given", gathered(report.assumptions), style, faint=True)
     yield from citations.lines(style, full=full)
     yield ""
     for caution in report.cautions:

@@ -2,10 +2,13 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Callable, Iterable, Iterator, Sequence
+from concurrent.futures import ProcessPoolExecutor
 
 from carboy.bench.walk import Walk
 from carboy.errors import CarboyError
+from carboy.model.knowledge import Index
 from carboy.model.plan import Case, Wait
 from carboy.model.rule import Example, Rule
 from carboy.rulebook.examples import Found, run_examples
@@ -16,6 +19,7 @@ from carboy.vetting import Laboratory
 
 VESSEL = "vessel"
 Progress = Callable[[int, int], None]
+_WORTH_A_PROCESS = 30  # examples that repay starting a process
 
 
 class EngineFault(CarboyError):
@@ -81,8 +85,46 @@ class ExampleRunner:
         yield from ((rule, (), tuple(sorted(products))) for rule, products in made.items())
 
 
-def check_examples(laboratory: Laboratory, rules: Iterable[Rule], progress: Progress | None = None) -> list[Problem]:
-    """The examples of ``rules`` that the engine does not bear out."""
+def check_examples(
+    laboratory: Laboratory, rules: Iterable[Rule], progress: Progress | None = None, workers: int | None = None
+) -> list[Problem]:
+    """The examples of ``rules`` that the engine does not bear out.
+
+    ``workers`` processes share the work (None: as many as there are processors); few examples are run in this one.
+    """
     wanted: Sequence[Rule] = [rule for rule in rules if not rule.off]
-    total = sum(len(rule.fires) + len(rule.silent) for rule in wanted)
-    return run_examples(wanted, ExampleRunner(laboratory, progress, total))
+    examples = [example for rule in wanted for example in (*rule.fires, *rule.silent)]
+    count = min(workers or os.cpu_count() or 1, len(examples) // _WORTH_A_PROCESS)
+    if count < 2:
+        return run_examples(wanted, ExampleRunner(laboratory, progress, len(examples)))
+    outcomes: dict[int, list[Found] | str] = {}
+    with ProcessPoolExecutor(count, initializer=_begin, initargs=(laboratory.index, laboratory.rules)) as pool:
+        for number, outcome in enumerate(pool.map(_run, examples, chunksize=4)):
+            outcomes[id(examples[number])] = outcome
+            if progress is not None:
+                progress(number + 1, len(examples))
+
+    def known(example: Example) -> list[Found]:
+        outcome = outcomes[id(example)]
+        if isinstance(outcome, str):
+            raise EngineFault(outcome)
+        return outcome
+
+    return run_examples(wanted, known)
+
+
+_runner: ExampleRunner | None = None  # of a worker process
+
+
+def _begin(index: Index, rules: tuple[Rule, ...]) -> None:
+    global _runner  # noqa: PLW0603 - a worker has one laboratory for all its examples
+    _runner = ExampleRunner(Laboratory(index, rules))
+
+
+def _run(example: Example) -> list[Found] | str:
+    """What was found, or why the example could not be run."""
+    assert _runner is not None
+    try:
+        return _runner(example)
+    except CarboyError as error:
+        return error.message

@@ -5,7 +5,6 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 import numpy as np
-import pytest
 
 from carboy.chemistry.equilibrium import Solved, solve
 from carboy.chemistry.network import Network, NetworkFactory
@@ -77,28 +76,41 @@ def dissolved(answer: Solved, component: str, lane: int = 0) -> float:
 
 
 def check(answer: Solved, totals: np.ndarray, water_mol: np.ndarray, *, available_atm: float | None = None) -> None:
-    """Mass, charge, water, mass action, saturation and gas pressure of every lane, from the arrays of the answer
-    alone.
-    """
-    network = answer.network
+    """Fail with whatever is wrong with an answer."""
     assert answer.converged.all(), [reason for reason in answer.reasons if reason]
+    assert faults(answer, totals, water_mol, available_atm=available_atm) == []
+
+
+def faults(
+    answer: Solved, totals: np.ndarray, water_mol: np.ndarray, *, available_atm: float | None = None
+) -> list[str]:
+    """What is wrong with mass, charge, water, mass action, saturation and gas pressure of each lane, from the arrays of
+    the answer alone. The activity model is written out here a second time. 25 degC.
+    """
+    found: list[str] = []
+
+    def ask(holds: object, what: str, lane: int | None = None) -> None:
+        if not np.all(holds):
+            where = "" if lane is None else f"lane {lane}: "
+            found.append(where + what)
+
+    network = answer.network
     mass = answer.amounts @ network.nu + answer.solids @ network.solid_nu + answer.gas @ network.gas_nu
     gross = answer.amounts @ np.abs(network.nu) + answer.solids @ np.abs(network.solid_nu)
     gross += answer.gas @ np.abs(network.gas_nu) + np.abs(totals)
-    assert np.all(np.abs(mass - totals) <= 1e-9 * gross + 1e-300)
+    ask(np.abs(mass - totals) <= 1e-9 * gross + 1e-300, "a component's balance is open")
     charges = totals @ network.component_charge
-    assert np.all(
-        np.abs(answer.amounts @ network.charge - charges) <= 1e-8 * (gross @ np.abs(network.component_charge)) + 1e-300
-    )
+    ions = answer.amounts @ np.abs(network.charge) + np.abs(totals) @ np.abs(network.component_charge)
+    ask(np.abs(answer.amounts @ network.charge - charges) <= 1e-9 * ions + 1e-300, "the charge is open")
     kg = answer.water_kg
     on_floor = kg <= 1.000001 * np.maximum(totals[:, 1:].sum(axis=1) / 50.0, 1e-9)
     water = kg / KG_PER_MOL + answer.amounts @ network.nu_water + answer.solids @ network.solid_nu_water
     water += answer.gas @ network.gas_nu_water
-    assert np.all((np.abs(water - water_mol) <= 1e-8 * water_mol) | on_floor)
-    assert np.all(answer.outside_activity_range[on_floor])
+    ask((np.abs(water - water_mol) <= 1e-8 * water_mol) | on_floor, "the water is open")
+    ask(answer.outside_activity_range[on_floor], "a lane on the floor of water is not marked")
     molality = answer.amounts / kg[:, None]
     strength = 0.5 * molality @ network.charge**2
-    assert np.allclose(strength, answer.ionic_strength, rtol=1e-7, atol=1e-10)
+    ask(np.isclose(strength, answer.ionic_strength, rtol=1e-7, atol=1e-10), "the ionic strength is another")
     for lane in range(totals.shape[0]):
         i, m = strength[lane], molality[lane].sum()
         held = min(i, 0.394979339)
@@ -111,21 +123,25 @@ def check(answer: Solved, totals: np.ndarray, water_mol: np.ndarray, *, availabl
         log_a = np.where(present, answer.log_activity[lane], 0.0)
         wanted = network.log_beta + network.nu @ log_a + network.nu_water * log_water - log_gamma
         big = there & (wanted > -250.0)
-        assert np.allclose(np.log10(molality[lane, big]), wanted[big], atol=1e-6)
-        assert np.all(answer.amounts[lane, ~there] == 0.0)
+        ask(np.isclose(np.log10(molality[lane, big]), wanted[big], atol=1e-6), "mass action fails", lane)
+        ask(answer.amounts[lane, ~there] == 0.0, "a species of an absent component", lane)
         index = network.solid_log_beta + network.solid_nu @ log_a + network.solid_nu_water * log_water
         can = (network.solid_nu[:, ~present] == 0.0).all(axis=1)
-        assert np.all(index[can] <= 1e-6)
+        ask(index[can] <= 1e-6, "a solid is supersaturated", lane)
         held_solids = answer.solids[lane] > 1e-12 * gross[lane].max()
-        assert np.all(np.abs(index[held_solids]) <= 1e-6)
-        assert np.all(answer.solids[lane] >= 0.0)
-        assert np.all(answer.solids[lane, ~can] == 0.0)
+        ask(np.abs(index[held_solids]) <= 1e-6, "a solid that is present is undersaturated", lane)
+        ask(answer.solids[lane] >= 0.0, "less than none of a solid", lane)
+        ask(answer.solids[lane, ~can] == 0.0, "a solid of an absent component", lane)
         pressures = 10.0 ** (network.gas_log_beta + network.gas_nu @ log_a + network.gas_nu_water * log_water)
         can_gas = (network.gas_nu[:, ~present] == 0.0).all(axis=1)
-        assert np.allclose(answer.pressures[lane], np.where(can_gas, pressures, 0.0), rtol=1e-5, atol=1e-300)
+        close = np.isclose(answer.pressures[lane], np.where(can_gas, pressures, 0.0), rtol=1e-5, atol=1e-300)
+        ask(close, "a pressure is another", lane)
         if available_atm is not None:
-            assert answer.pressures[lane].sum() <= available_atm * (1.0 + 1e-5)
+            total = answer.pressures[lane].sum()
+            ask(total <= available_atm * (1.0 + 1e-5), "the gases' pressure is above that of the surroundings", lane)
             if answer.bubbling[lane]:
-                assert answer.pressures[lane].sum() == pytest.approx(available_atm, rel=1e-5)
-                shares = answer.pressures[lane] / answer.pressures[lane].sum()
-                assert np.allclose(answer.gas[lane], shares * answer.gas[lane].sum(), rtol=1e-6, atol=1e-300)
+                ask(np.isclose(total, available_atm, rtol=1e-5), "bubbles at less than their pressure", lane)
+                shares = answer.pressures[lane] / total
+                close = np.isclose(answer.gas[lane], shares * answer.gas[lane].sum(), rtol=1e-6, atol=1e-300)
+                ask(close, "bubbles of another composition", lane)
+    return found

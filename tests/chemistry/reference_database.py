@@ -147,7 +147,24 @@ class Reference:
         """Equilibrium of ``totals`` (mol, neutral together) with all solids; ``gas`` is a GAS_PHASE block's options
         or nothing.
         """
-        lines = ["SOLUTION 1", f"temp {temperature_C}", "pH 7", "REACTION 1"]
+        question = self.question(totals)
+        knobs = "KNOBS\n-iterations 600\n-convergence_tolerance 1e-12\n"
+        start = f"SOLUTION 1\ntemp {temperature_C}\npH 7\n"
+        text = start + knobs + self.reaction(totals, water_mol) + question.phases(gas) + question.output() + "END\n"
+        return question.outcome(self.rows_of(text)[-1])
+
+    def rows_of(self, text: str) -> list[list[float]]:
+        """Run an input on an empty state; the rows of its selected output."""
+        self.code.ip.run_string("DELETE\n-all\nEND\n" + text)
+        return [list(row) for row in self.code.ip.get_selected_output_array()[1:]]
+
+    def reaction(
+        self, totals: Mapping[str, float], water_mol: float = MOL_PER_KG_WATER, number: int = 1, steps: int = 1
+    ) -> str:
+        """A REACTION that makes ``totals`` of the first kilogram of water, or adds them where ``water_mol`` is one
+        kilogram.
+        """
+        lines = [f"REACTION {number}"]
         hydrogen = totals.get("H+", 0.0) + 2.0 * (water_mol - MOL_PER_KG_WATER)
         oxygen = water_mol - MOL_PER_KG_WATER
         for token, amount in totals.items():
@@ -155,45 +172,63 @@ class Reference:
                 lines.append(f"{self.element[token]} {amount!r}")
                 hydrogen += amount * self.hydrogen[token]
                 oxygen += amount * self.oxygen[token]
-        lines += [f"H {hydrogen!r}", f"O {oxygen!r}", "1.0 moles in 1 step"]
+        lines += [f"H {hydrogen!r}", f"O {oxygen!r}", f"1.0 moles in {steps} steps", ""]
+        return "\n".join(lines)
+
+    def question(self, totals: Mapping[str, float]) -> Question:
+        """What to ask for where ``totals`` are the components."""
         present = {token for token, amount in totals.items() if amount} | {"H+", "H2O"}
         here = [(n, row) for n, row in enumerate(self.rows) if set(row.coefficients) <= present]
-        solids = [(f"Ph{n}", row.product) for n, row in here if row.kind == "solid"]
-        gases = [(f"Ph{n}(g)", row.product) for n, row in here if row.kind == "gas"]
-        if solids:
-            lines += ["EQUILIBRIUM_PHASES 1", *(f"{name} 0 0" for name, _ in solids)]
-        if gas:
-            lines += ["GAS_PHASE 1", gas, *(f"{name} 0" for name, _ in gases)]
         aqueous = [token for token, z in self.components.items() if token in present]
         aqueous += [row.product for _, row in here if row.kind == "aqueous"]
-        lines += [
-            "KNOBS",
-            "-iterations 600",
-            "-convergence_tolerance 1e-12",
-            "SELECTED_OUTPUT 1",
-            "-reset false",
-            "-high_precision true",
-            "USER_PUNCH 1",
-        ]
+        return Question(
+            aqueous={token: self.formula[token] for token in aqueous},
+            solids={row.product: f"Ph{n}" for n, row in here if row.kind == "solid"},
+            gases={row.product: f"Ph{n}(g)" for n, row in here if row.kind == "gas"},
+            elements={token: self.element[token] for token in totals if token in self.components},
+        )
+
+
+@dataclass
+class Question:
+    """The names under which the reference knows what may form; ours to theirs."""
+
+    aqueous: dict[str, str]
+    solids: dict[str, str]
+    gases: dict[str, str]
+    elements: dict[str, str]
+
+    def phases(self, gas: str = "") -> str:
+        """The blocks that let them form."""
+        lines: list[str] = []
+        if self.solids:
+            lines += ["EQUILIBRIUM_PHASES 1", *(f"{name} 0 0" for name in self.solids.values())]
+        if gas:
+            lines += ["GAS_PHASE 1", gas, *(f"{name} 0" for name in self.gases.values())]
+        return "\n".join([*lines, ""])
+
+    def output(self) -> str:
+        """The blocks that print them."""
         wanted = ['-LA("H+")', "MU", 'TOT("water")']
-        wanted += [f'MOL("{self.formula[token]}")' for token in aqueous]
-        wanted += [f'EQUI("{name}")' for name, _ in solids] + [f'GAS("{name}")' for name, _ in gases]
-        wanted += [f'TOT("{self.element[token]}")' for token in totals if token in self.components]
+        wanted += [f'MOL("{formula}")' for formula in self.aqueous.values()]
+        wanted += [f'EQUI("{name}")' for name in self.solids.values()]
+        wanted += [f'GAS("{name}")' for name in self.gases.values()]
+        wanted += [f'TOT("{name}")' for name in self.elements.values()]
+        lines = ["SELECTED_OUTPUT 1", "-reset false", "-high_precision true", "USER_PUNCH 1"]
         lines.append("-headings " + " ".join(f"c{n}" for n in range(len(wanted))))
         lines += [f"{10 * (n + 1)} PUNCH {what}" for n, what in enumerate(wanted)]
-        lines.append("END")
-        self.code.ip.run_string("DELETE\n-all\nEND\n" + "\n".join(lines) + "\n")
-        table = self.code.ip.get_selected_output_array()
-        values = list(table[-1])
-        names = aqueous, [product for _, product in solids], [product for _, product in gases]
+        return "\n".join([*lines, ""])
+
+    def outcome(self, row: Sequence[float]) -> Outcome:
+        """One row of that output."""
+        values = [float(value) for value in row]
         cut = 3
         parts: list[dict[str, float]] = []
-        for group in (*names, [token for token in totals if token in self.components]):
-            parts.append(dict(zip(group, (float(v) for v in values[cut : cut + len(group)]), strict=True)))
+        for group in (self.aqueous, self.solids, self.gases, self.elements):
+            parts.append(dict(zip(group, values[cut : cut + len(group)], strict=True)))
             cut += len(group)
-        water = float(values[2])
-        dissolved = {token: value * water for token, value in parts[3].items()}
-        return Outcome(float(values[0]), float(values[1]), water, parts[0], parts[1], parts[2], dissolved)
+        dissolved = {token: value * values[2] for token, value in parts[3].items()}
+        return Outcome(values[0], values[1], values[2], parts[0], parts[1], parts[2], dissolved)
 
 
 def _charge(value: int) -> str:

@@ -1,0 +1,91 @@
+"""How a gas's numbers were had: the equation, the numbers that went in, and each constant with its source."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from carboy.bench.make_up import MOLAR_VOLUME
+from carboy.bench.trace import Course
+from carboy.chemistry.stock import ChemicalStock
+from carboy.model.knowledge import Value
+from carboy.model.report import Measure
+
+
+def plain(quantity: str, value: float, unit: str, basis: str = "") -> Measure:
+    """A number that goes into another one."""
+    return Measure(quantity=quantity, value=value, unit=unit, basis=basis)
+
+
+def origin(value: Value) -> str:
+    """Where a value of the graph comes from, in words."""
+    return ", ".join(part for part in (value.source, value.basis, value.note) if part)
+
+
+def constants(stock: ChemicalStock, token: str) -> list[Measure]:
+    """The equilibrium constants by which a gas stands over the liquid: its Henry constant and those of the molecule in water."""
+    found: list[Measure] = []
+    for product in (token, stock.dissolved_form.get(token, "")):
+        made = stock.formation.get(product)
+        if made is not None:
+            found.append(plain(f"log10 K of {made.reaction}", made.printed.magnitude, "1", origin(made.printed)))
+    return found
+
+
+def gas_measures(
+    course: Course,
+    token: str,
+    leaving: float,
+    air_L: float,
+    limit: Measure | None,
+    limit_words: str,
+    lane: int,
+    stock: ChemicalStock,
+) -> list[Measure]:
+    """The numbers that judge a gas at one lane of a course, each with its equation and inputs."""
+    mixture = course.mixture
+    none = mixture.zeros()
+    bubbles = float(mixture.gases.get(token, none)[lane])
+    pressure = float(mixture.pressures.get(token, none)[lane])
+    molecule = stock.dissolved_form.get(token)
+    held = float(mixture.aqueous.get(molecule, none)[lane]) if molecule else 0.0
+    shown = [plain("in bubbles or headspace", bubbles, "mol"), plain("dissolved as molecules", held, "mol")]
+    state = [plain("pH", float(mixture.pH[lane]), "1"), *constants(stock, token)]
+    over = Measure(
+        quantity="in the air over the liquid",
+        value=min(pressure, 1.0) * 1e6,
+        unit="ppm",
+        basis="Henry's law at equilibrium",
+        equation="p = molality of the molecule (with its activity) / Henry constant, at most 1 atm",
+        inputs=[plain("partial pressure", pressure, "atm"), *state],
+    )
+    measures = [
+        Measure(
+            quantity="gas that can leave",
+            value=leaving,
+            unit="mol",
+            basis="bubbles, and what passes from the liquid into air that is still below the limit",
+            equation="n = n(bubbles) + n(dissolved) x (1 - limit / p)",
+            inputs=[*shown, *([limit] if limit is not None else []), plain("partial pressure", pressure, "atm")],
+        ),
+        Measure(
+            quantity="volume of that gas",
+            value=leaving * MOLAR_VOLUME,
+            unit="L",
+            basis="ideal gas, 25 degC, 1 atm",
+            equation="V = n x 24.465 L/mol",
+            inputs=[plain("gas that can leave", leaving, "mol")],
+        ),
+        over,
+    ]
+    if limit is not None and not np.isnan(air_L):
+        measures.append(
+            Measure(
+                quantity=f"air brought to the {limit_words}",
+                value=air_L / 1000,
+                unit="m3",
+                basis=limit.basis,
+                equation="V(air) = n x 24.465 L/mol / limit",
+                inputs=[plain("gas that can leave", leaving, "mol"), limit],
+            )
+        )
+    return measures
