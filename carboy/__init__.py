@@ -32,7 +32,7 @@ _HOMES = {
     "vet": "carboy.vetting",
 }
 
-__all__ = ["Case", "CarboyError", "InputError", "Report", "Setting", "VesselSpec", "__version__", "combine", "vet"]
+__all__ = ["CarboyError", "Case", "InputError", "Report", "Setting", "VesselSpec", "__version__", "combine", "vet"]
 
 
 def __getattr__(name: str) -> Any:

@@ -89,4 +89,6 @@ def test_only_the_package_itself_may_import_from_every_layer():
     """And it does so lazily: importing carboy brings in no other module of it."""
     tree = ast.parse(FILES["carboy"].read_text(encoding="utf-8"))
     at_once = [node for node in tree.body if isinstance(node, ast.Import | ast.ImportFrom)]
-    assert [node for node in at_once if isinstance(node, ast.ImportFrom) and (node.module or "").startswith("carboy")] == []
+    assert [
+        node for node in at_once if isinstance(node, ast.ImportFrom) and (node.module or "").startswith("carboy")
+    ] == []

@@ -26,7 +26,16 @@ def wheel(tmp_path_factory: pytest.TempPathFactory) -> Path:
     """The wheel of this checkout. Without hatchling here it is built in isolation."""
     folder = tmp_path_factory.mktemp("wheel")
     here = importlib.util.find_spec("hatchling") is not None
-    command = [sys.executable, "-m", "build", "--wheel", "--outdir", str(folder), *(["--no-isolation"] if here else []), str(ROOT)]
+    command = [
+        sys.executable,
+        "-m",
+        "build",
+        "--wheel",
+        "--outdir",
+        str(folder),
+        *(["--no-isolation"] if here else []),
+        str(ROOT),
+    ]
     ran = subprocess.run(command, capture_output=True, text=True, check=False)
     assert ran.returncode == 0, ran.stdout + ran.stderr
     (built,) = folder.glob("*.whl")
@@ -40,7 +49,18 @@ def installed(wheel: Path, tmp_path_factory: pytest.TempPathFactory) -> Path:
     subprocess.run([sys.executable, "-m", "venv", "--without-pip", str(place)], check=True)
     binaries = place / ("Scripts" if os.name == "nt" else "bin")
     python = binaries / ("python.exe" if os.name == "nt" else "python")
-    command = [sys.executable, "-m", "pip", "--python", str(python), "install", "--quiet", "--no-deps", "--no-index", str(wheel)]
+    command = [
+        sys.executable,
+        "-m",
+        "pip",
+        "--python",
+        str(python),
+        "install",
+        "--quiet",
+        "--no-deps",
+        "--no-index",
+        str(wheel),
+    ]
     ran = subprocess.run(command, capture_output=True, text=True, check=False)
     assert ran.returncode == 0, ran.stdout + ran.stderr
     code = "import sysconfig; print(sysconfig.get_path('purelib'))"
@@ -63,7 +83,8 @@ def shipped(folder: str) -> set[str]:
     return {
         file.relative_to(base).as_posix()
         for file in base.rglob("*")
-        if file.is_file() and not any(fnmatch.fnmatch(part, pattern) for part in file.relative_to(base).parts for pattern in LEFT_OUT)
+        if file.is_file()
+        and not any(fnmatch.fnmatch(part, pattern) for part in file.relative_to(base).parts for pattern in LEFT_OUT)
     }
 
 
@@ -89,10 +110,20 @@ def test_no_python_file_among_the_data():
 
 def test_installed_wheel_does_the_main_job_from_an_empty_folder(installed, elsewhere):
     where = subprocess.run(
-        [str(installed / "python"), "-c", "import carboy; print(carboy.__file__)"], capture_output=True, text=True, check=True, **elsewhere
+        [str(installed / "python"), "-c", "import carboy; print(carboy.__file__)"],
+        capture_output=True,
+        text=True,
+        check=True,
+        **elsewhere,
     )
     assert Path(where.stdout.strip()).is_relative_to(installed.parent)
-    command = [str(installed / "carboy"), "combine", "1 L of 0.1 M sodium sulfide", "1 L of 0.5 M hydrochloric acid", "--json"]
+    command = [
+        str(installed / "carboy"),
+        "combine",
+        "1 L of 0.1 M sodium sulfide",
+        "1 L of 0.5 M hydrochloric acid",
+        "--json",
+    ]
     ran = subprocess.run(command, capture_output=True, text=True, check=False, **elsewhere)
     assert ran.stderr == ""
     assert ran.returncode == 1
@@ -104,11 +135,19 @@ def test_installed_wheel_does_the_main_job_from_an_empty_folder(installed, elsew
 
 
 def test_installed_wheel_says_its_version(installed, elsewhere):
-    ran = subprocess.run([str(installed / "carboy"), "--version"], capture_output=True, text=True, check=True, **elsewhere)
+    ran = subprocess.run(
+        [str(installed / "carboy"), "--version"], capture_output=True, text=True, check=True, **elsewhere
+    )
     assert ran.stdout == f"carboy {carboy.__version__}\n"
 
 
 def test_module_runs_as_the_command(installed, elsewhere):
-    ran = subprocess.run([str(installed / "python"), "-m", "carboy", "combine", "water"], capture_output=True, text=True, check=False, **elsewhere)
+    ran = subprocess.run(
+        [str(installed / "python"), "-m", "carboy", "combine", "water"],
+        capture_output=True,
+        text=True,
+        check=False,
+        **elsewhere,
+    )
     assert ran.returncode == 2
     assert ran.stderr.startswith("carboy: ")

@@ -50,16 +50,16 @@ def ln_gamma_unit_charge(ionic_strength: FloatArray, slope: float) -> tuple[Floa
     strength = np.minimum(ionic_strength, DAVIES_HELD_FROM)  # where the slope is zero by itself
     root = np.sqrt(strength)
     above = 1.0 + root
-    value = (-_LN10 * slope) * (root / above - DAVIES_LINEAR * strength)
-    derivative = (-_LN10 * slope) * (0.5 / (np.maximum(root, 1e-6) * above**2) - DAVIES_LINEAR)
+    factor = -_LN10 * slope
+    value = factor * (root / above - DAVIES_LINEAR * strength)
+    derivative = factor * (0.5 / (np.maximum(root, 1e-6) * above * above) - DAVIES_LINEAR)
     return value, derivative
 
 
 def ln_gamma_neutral(ionic_strength: FloatArray) -> tuple[FloatArray, FloatArray]:
     """ln of the activity coefficient of a neutral species, and its derivative by I (mol/kg)."""
-    held = ionic_strength >= NEUTRAL_HELD_FROM
-    value = NEUTRAL_SLOPE * np.minimum(ionic_strength, NEUTRAL_HELD_FROM)
-    return _LN10 * value, np.where(held, 0.0, _LN10 * NEUTRAL_SLOPE)
+    slope = _LN10 * NEUTRAL_SLOPE
+    return slope * np.minimum(ionic_strength, NEUTRAL_HELD_FROM), slope * (ionic_strength < NEUTRAL_HELD_FROM)
 
 
 def ln_water_activity(sum_molality: FloatArray) -> tuple[FloatArray, FloatArray]:

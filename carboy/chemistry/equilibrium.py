@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 
 import numpy as np
 
@@ -58,6 +58,15 @@ class Solved:
     iterations: IntArray  # [L]
     outside_activity_range: BoolArray  # [L] ionic strength or dryness beyond the activity model
 
+    def take(self, which: IntArray | BoolArray) -> Solved:
+        """These lanes only."""
+        cut = {part.name: getattr(self, part.name)[which] for part in fields(self) if part.name not in _NO_LANES}
+        places = np.arange(self.converged.size)[which]
+        return Solved(network=self.network, reasons=[self.reasons[place] for place in places], **cut)
+
+
+_NO_LANES = ("network", "reasons")
+
 
 def solve(  # noqa: PLR0913
     network: Network,
@@ -103,10 +112,10 @@ def solve(  # noqa: PLR0913
 
 # Tried in turn on the lanes that are left: more rough passes, shorter steps, stronger damping, other starts.
 _PACES = (
-    Pace(passes=16, rounds=12, turns=50, rate=0.8, longest=8.0, close=1e-3),
-    Pace(passes=100, rounds=0, turns=120, rate=0.3, longest=3.0, close=1e-5),
-    Pace(passes=200, rounds=0, turns=250, rate=0.2, longest=1.5, close=1e-7, shift=-10.0),
-    Pace(passes=400, rounds=30, turns=400, rate=0.1, longest=1.0, close=1e-6, shift=9.0),
+    Pace(passes=16, rounds=12, turns=50, rate=1.0, longest=8.0, close=1e-3, direct=10),
+    Pace(passes=100, rounds=0, turns=120, rate=0.6, longest=3.0, close=1e-5),
+    Pace(passes=200, rounds=0, turns=250, rate=0.4, longest=1.5, close=1e-7, shift=-10.0),
+    Pace(passes=400, rounds=30, turns=400, rate=0.2, longest=1.0, close=1e-6, shift=9.0),
 )
 
 
@@ -125,18 +134,33 @@ class _Solution:
         self.iterations = np.zeros(count, dtype=np.intp)
 
     def attempt(self, which: IntArray, pace: Pace) -> None:
-        """All three stages for some lanes."""
+        """All three stages for some lanes; the second only where a phase seems to form."""
         lanes = self.lanes.take(which)
         state = first_state(lanes)
         state.x[:, 0] += pace.shift
         rough_start(self.terms, lanes, state, pace.passes)
         rough_solids(self.terms, lanes, state, pace.rounds)
+        if pace.direct:
+            clear = ~(state.phases > 0.0).any(axis=1) & (self._excess(lanes, state) < 0.0).all(axis=1)
+            if clear.any():
+                some = which[clear]
+                self._finish(some, lanes.take(clear), state.take(clear), lanes.allowed[clear] & False, pace.direct)
+                left = ~clear
+                left[clear] = [self.reasons[lane] != "" for lane in some]
+                if not left.any():
+                    return
+                which, lanes, state = which[left], lanes.take(left), state.take(left)
         self.iterations[which] += interior_point(self.terms, lanes, state, pace)
-        medium = Medium.at(self.terms, state.strength, state.molality)
-        excess = Constraints.at(self.terms, lanes, state, medium).excess
         # Of a phase and its undersaturation the larger, each in its own measure, says whether it is there.
-        present = lanes.allowed & (state.phases / lanes.most > np.maximum(-excess, 0.0))
-        ended, turns = finish(self.terms, lanes, state, present)
+        present = lanes.allowed & (state.phases / lanes.most > np.maximum(-self._excess(lanes, state), 0.0))
+        self._finish(which, lanes, state, present)
+
+    def _excess(self, lanes: Lanes, state: State) -> FloatArray:
+        medium = Medium.at(self.terms, state.strength, state.molality)
+        return Constraints.at(self.terms, lanes, state, medium).excess
+
+    def _finish(self, which: IntArray, lanes: Lanes, state: State, present: BoolArray, most_turns: int = 40) -> None:
+        ended, turns = finish(self.terms, lanes, state, present, most_turns=most_turns)
         self.iterations[which] += turns
         self._keep(which, lanes, state, ended)
 
@@ -155,12 +179,11 @@ class _Solution:
         state.x = LN10 * np.where(lanes.absent, 0.0, start.log_activity[pick])
         state.strength = start.ionic_strength[pick].copy()
         state.molality = start.amounts[pick].sum(axis=1) / start.water_kg[pick]
+        state.ln_water = np.clip(np.log(start.water_kg[pick] / self.scale[which]), -0.5, 0.5)
         bubbled = np.where(start.bubbling[pick], start.gas[pick].sum(axis=1), 0.0)
         phases = np.column_stack([start.solids[pick], bubbled]) / self.scale[which, None]
         state.phases = np.where(lanes.allowed, phases, 0.0)
-        ended, turns = finish(self.terms, lanes, state, state.phases > 0.0, most_turns=25)
-        self.iterations[which] += turns
-        self._keep(which, lanes, state, ended)
+        self._finish(which, lanes, state, state.phases > 0.0, most_turns=25)
 
     def _keep(self, which: IntArray, lanes: Lanes, state: State, ended: BoolArray) -> None:
         """Take over the state of some lanes, judged afresh by its residuals."""

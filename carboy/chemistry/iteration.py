@@ -27,6 +27,9 @@ from carboy.chemistry.mass_action import (
     Medium,
     State,
     Terms,
+    amounts_of,
+    diagonal_of,
+    ln_constants,
     ln_saturation,
     matrix_vector,
     term_amounts,
@@ -39,7 +42,9 @@ SUPERSATURATION = 1e-6 * np.log(10.0)  # in ln
 _TRACE = 1e-12  # mol of a phase, of the most that could form, below which its sign does not matter
 _LEAST_CENTRE = 1e-9
 _PATIENCE = 8  # turns of the finish without a change of phases
-_LAST_STEP = 1e-7  # of an ln activity; the error after a Newton step is of the order of its square
+_LAST_STEP = 1e-6  # of an ln activity; the error after a Newton step is of the order of its square
+_LEAVING = 0.25  # share of the lanes at work that must be done before they are taken out, which has its price too
+_STEADY = 3  # turns of the interior point with the same activity coefficients and water
 _SHRINK = 0.05  # of the centring, from turn to turn
 _TIE = 0.02  # of the error of the balances, below which the centring does not go
 
@@ -51,10 +56,11 @@ class Pace:
     passes: int  # of the rough start
     rounds: int  # of the first guess of solids
     turns: int  # of the interior point, at most
-    rate: float  # share by which ionic strength and water follow at each turn
+    rate: float  # share by which ionic strength and water follow when they do
     longest: float  # largest step of an ln activity
     close: float  # relative error of balances and complementarity at which the interior point hands over
     shift: float = 0.0  # of the first guess of ln a(H+)
+    direct: int = 0  # turns of the finish without the interior point, where no phase seems to form
 
 
 def first_state(lanes: Lanes) -> State:
@@ -80,8 +86,8 @@ def _update_medium(lanes: Lanes, state: State, sums: FloatArray, rate: float, ta
     state.strength += rate * (np.minimum(0.5 * sums[:, 0] / kg, 100.0) - state.strength)
     state.molality += rate * (np.minimum(sums[:, 3] / kg, 200.0) - state.molality)
     left = KG_PER_MOL_WATER * (lanes.water - sums[:, 2] - taken)
-    target = np.log(np.maximum(np.maximum(left, lanes.least_water), 0.2 * kg))
-    state.ln_water += rate * np.clip(target - state.ln_water, -0.5, 0.5)
+    change = np.log(np.maximum(np.maximum(left, lanes.least_water), 0.2 * kg)) - state.ln_water
+    state.ln_water += rate * np.minimum(np.maximum(change, -0.5), 0.5)
 
 
 def rough_start(terms: Terms, lanes: Lanes, state: State, passes: int) -> None:
@@ -89,22 +95,22 @@ def rough_start(terms: Terms, lanes: Lanes, state: State, passes: int) -> None:
     size = terms.size
     surplus, deficit = np.maximum(lanes.totals, 0.0), np.maximum(-lanes.totals, 0.0)
     none = np.zeros(lanes.number.size)
-    medium = Medium.at(terms, state.strength, state.molality)
+    absent = lanes.absent if lanes.absent.any() else None
+    fixed = ln_constants(terms, lanes, state, Medium.at(terms, state.strength, state.molality))
     for turn in range(passes):
-        amounts = term_amounts(terms, lanes, state, medium)
+        amounts = amounts_of(terms, state, fixed)
         parts = amounts @ terms.scaling
-        supply = surplus + parts[:, size : 2 * size]
-        demand = deficit + parts[:, :size]
-        stiffness = (parts[:, 2 * size : 3 * size] + parts[:, 3 * size :]) / np.maximum(
-            parts[:, :size] + parts[:, size : 2 * size], 1e-300
-        )
-        step = np.log(np.maximum(supply, 1e-300) / np.maximum(demand, 1e-300)) / np.maximum(stiffness, 1.0)
+        demand, supply = parts[:, :size], parts[:, size : 2 * size]
+        stiffness = (parts[:, 2 * size : 3 * size] + parts[:, 3 * size :]) / np.maximum(demand + supply, 1e-300)
+        ratio = np.maximum(surplus + supply, 1e-300) / np.maximum(deficit + demand, 1e-300)
+        step = np.log(ratio) / np.maximum(stiffness, 1.0)
         np.minimum(np.maximum(step, -20.0, out=step), 20.0, out=step)
-        step[lanes.absent] = 0.0
+        if absent is not None:
+            step[absent] = 0.0
         state.x += step
         if turn % 4 == 3:
             _update_medium(lanes, state, amounts @ terms.features[:, size:], 0.5, none)
-            medium = Medium.at(terms, state.strength, state.molality)
+            fixed = ln_constants(terms, lanes, state, Medium.at(terms, state.strength, state.molality))
 
 
 def rough_solids(terms: Terms, lanes: Lanes, state: State, rounds: int) -> None:
@@ -155,8 +161,12 @@ def _solve(matrix: FloatArray, right: FloatArray) -> FloatArray:
 
 
 def interior_point(terms: Terms, lanes: Lanes, state: State, pace: Pace) -> IntArray:
-    """Primal-dual interior point in place; returns the iterations of each lane."""
-    longest, most_turns = pace.longest, pace.turns
+    """Primal-dual interior point in place; returns the iterations of each lane.
+
+    The activities take their own length of step: where only the slacks are held back, their difference from the
+    undersaturation is made up by the next turn. Activity coefficients and water are held for a few turns at a time.
+    """
+    longest = pace.longest
     count, size = lanes.totals.shape
     turns = np.zeros(count, dtype=np.intp)
     live = np.arange(count)
@@ -164,38 +174,43 @@ def interior_point(terms: Terms, lanes: Lanes, state: State, pace: Pace) -> IntA
     state = whole.take(live)
     centre = np.full(count, 0.1)
     slack = np.ones(lanes.allowed.shape)
-    diagonal = np.arange(size)
-    for turn in range(most_turns):
-        medium = Medium.at(terms, state.strength, state.molality)
-        amounts = term_amounts(terms, lanes, state, medium)
+    for turn in range(pace.turns):
+        if turn % _STEADY == 0:
+            medium = Medium.at(terms, state.strength, state.molality)
+            fixed = ln_constants(terms, lanes, state, medium)
+        amounts = amounts_of(terms, state, fixed)
         held = Constraints.at(terms, lanes, state, medium)
         if turn == 0:
-            guessed = state.phases > 1e-3 * lanes.most
-            slack = np.maximum(-held.excess, np.where(guessed, 0.1, 1.0))
+            slack = np.maximum(-held.excess, 1.0)
             state.phases = np.where(lanes.allowed, np.maximum(state.phases, centre[:, None] * lanes.most / slack), 0.0)
         sums = amounts @ terms.sums
         in_phases = held.sum_over(terms, state.phases)
         gradient = sums[:, :size] - lanes.totals + in_phases
         gross = sums[:, size : 2 * size] + np.abs(lanes.totals) + np.abs(in_phases) + 1e-300
         gradient[lanes.absent] = 0.0
-        error = (np.abs(gradient) / gross).max(axis=1)
+        share = np.abs(gradient) / gross
         off = np.where(lanes.allowed, held.excess + slack, 0.0)
         gaps = state.phases * slack
         gap = (gaps / lanes.most).max(axis=1)
-        done = (error < 10.0 * pace.close) & (gap < pace.close) & (np.abs(off).max(axis=1) < pace.close)
-        if turn and done.any():
-            whole.put(live[done], state.take(done))
-            turns[live[done]] = turn
-            stay = ~done
-            live = live[stay]
-            if live.size == 0:
-                return turns
-            lanes, state, held = lanes.take(stay), state.take(stay), held.take(stay)
-            centre, slack, gap, gaps = centre[stay], slack[stay], gap[stay], gaps[stay]
-            amounts, sums, gradient, off, gross = amounts[stay], sums[stay], gradient[stay], off[stay], gross[stay]
+        if turn:
+            open_by = np.maximum(np.maximum(0.1 * share.max(axis=1), gap), np.abs(off).max(axis=1))
+            done = open_by < pace.close
+            ready = int(np.count_nonzero(done))
+            if ready and (ready == live.size or ready >= _LEAVING * live.size):
+                whole.put(live[done], state.take(done))
+                turns[live[done]] = turn
+                stay = ~done
+                live = live[stay]
+                if live.size == 0:
+                    return turns
+                lanes, state, held = lanes.take(stay), state.take(stay), held.take(stay)
+                centre, slack, gap, gaps = centre[stay], slack[stay], gap[stay], gaps[stay]
+                amounts, sums, gradient, off = amounts[stay], sums[stay], gradient[stay], off[stay]
+                share, gross = share[stay], gross[stay]
+                medium, fixed = medium.take(stay), fixed[stay]
         # The proton balance may be of tiny terms; it is held against all that is there, or it would keep the centre up.
-        gross[:, 0] += 0.01 * lanes.totals[:, 1:].sum(axis=1)
-        loose = np.minimum((np.abs(gradient) / gross).max(axis=1), 1.0)
+        share[:, 0] *= gross[:, 0] / (gross[:, 0] + lanes.hundredth)
+        loose = np.minimum(share.max(axis=1), 1.0)
         centre = np.minimum(centre, np.maximum(np.minimum(centre, gap) * _SHRINK, _TIE * loose))
         centre = np.maximum(centre, _LEAST_CENTRE)
         phases = state.phases
@@ -211,11 +226,14 @@ def interior_point(terms: Terms, lanes: Lanes, state: State, pace: Pace) -> IntA
         wanted = centre[:, None] * lanes.most - gaps
         pull = np.where(lanes.allowed, (wanted + phases * off) / slack, 0.0)
         right = -gradient - held.sum_over(terms, pull)
-        scale = matrix[:, diagonal, diagonal]
-        root = 1.0 / np.sqrt(np.where(lanes.absent | (scale <= 0.0), 1.0, scale))
+        diagonal = diagonal_of(matrix)
+        root = np.where(diagonal > 0.0, diagonal, 1.0)
+        root[lanes.absent] = 1.0
+        np.divide(1.0, np.sqrt(root, out=root), out=root)
         matrix *= root[:, :, None]
         matrix *= root[:, None, :]
-        matrix[:, diagonal, diagonal] = np.where(lanes.absent, 1.0, matrix[:, diagonal, diagonal] + 1e-13)
+        diagonal += 1e-13
+        diagonal[lanes.absent] = 1.0
         step = root * _solve(matrix, root * right)
         step[lanes.absent] = 0.0
         if not np.isfinite(step).all():
@@ -224,14 +242,15 @@ def interior_point(terms: Terms, lanes: Lanes, state: State, pace: Pace) -> IntA
         phase_step = np.where(lanes.allowed, (wanted - phases * slack_step) / slack, 0.0)
         primal = np.minimum(1.0, longest / np.maximum(np.abs(step).max(axis=1), 1e-300))
         # As far as 99 % of the way to where a slack or an amount of phase would vanish.
-        primal = np.minimum(primal, 0.99 / np.maximum((-slack_step / slack).max(axis=1), 1e-300))
-        dual = np.minimum(1.0, 0.99 / np.maximum((-phase_step / np.maximum(phases, 1e-300)).max(axis=1), 1e-300))
+        short = np.minimum(primal, -0.99 / np.minimum((slack_step / slack).min(axis=1), -1e-300))
+        dual = -0.99 / np.minimum((phase_step / np.maximum(phases, 1e-300)).min(axis=1), -1e-300)
         state.x += primal[:, None] * step
-        slack = slack + primal[:, None] * slack_step
-        state.phases = phases + dual[:, None] * phase_step
-        _update_medium(lanes, state, sums[:, 2 * size :], pace.rate, held.water_in(terms, state.phases))
+        slack = slack + short[:, None] * slack_step
+        state.phases = phases + np.minimum(dual, 1.0)[:, None] * phase_step
+        if turn % _STEADY == _STEADY - 1:
+            _update_medium(lanes, state, sums[:, 2 * size :], pace.rate, held.water_in(terms, state.phases))
     whole.put(live, state)
-    turns[live] = most_turns
+    turns[live] = pace.turns
     return turns
 
 
@@ -310,34 +329,31 @@ class Elimination:
         every = np.arange(lanes)
         sequence = np.argsort(np.where(present, -order, np.inf), axis=1)[:, :most]
         here = np.take_along_axis(present, sequence, axis=1)
-        rows = np.where(here[:, :, None], solid_nu[sequence], 0.0)
-        reduced = np.zeros((lanes, most, solids))
-        for step in range(most):
-            reduced[every, step, sequence[:, step]] = here[:, step]
+        # The solids' components, and beside them the solids of which the row is the sum.
+        both = np.zeros((lanes, most, size + solids))
+        both[:, :, :size] = np.where(here[:, :, None], solid_nu[sequence], 0.0)
+        both[every[:, None], np.arange(most), size + sequence] = here
         pivot = np.zeros((lanes, most, size))
         hydration = np.zeros((lanes, solids))
         for step in range(most):
-            row = rows[:, step]
-            usable = np.abs(row) > 1e-9
+            row = both[:, step]
+            usable = np.abs(row[:, :size]) > 1e-9
             column = np.where(usable, weight, np.inf).argmin(axis=1)
             found = usable[every, column]
-            lost = here[:, step] & ~found
-            for lane in np.flatnonzero(lost):
-                water = float(reduced[lane, step] @ terms.solid_water)
-                if abs(water) > 1e-9 and not hydration[lane].any():
-                    hydration[lane] = reduced[lane, step] / water
-                else:
-                    present[lane, sequence[lane, step]] = False
-            divisor = np.where(found, row[every, column], 1.0)
-            rows[:, step] = np.where(found[:, None], row / divisor[:, None], 0.0)
-            reduced[:, step] = np.where(found[:, None], reduced[:, step] / divisor[:, None], 0.0)
+            if not found.all():
+                for lane in np.flatnonzero(here[:, step] & ~found):
+                    water = float(row[lane, size:] @ terms.solid_water)
+                    if abs(water) > 1e-9 and not hydration[lane].any():
+                        hydration[lane] = row[lane, size:] / water
+                    else:
+                        present[lane, sequence[lane, step]] = False
+            row = np.where(found[:, None], row / np.where(found, row[every, column], 1.0)[:, None], 0.0)
             pivot[every, step, column] = found
-            factor = rows[every, :, column].copy()
-            factor[:, step] = 0.0
-            factor[~found] = 0.0
-            rows -= factor[:, :, None] * rows[:, step][:, None, :]
-            reduced -= factor[:, :, None] * reduced[:, step][:, None, :]
-            rows[np.abs(rows) < 1e-12] = 0.0
+            factor = np.where(found[:, None], both[every, :, column], 0.0)
+            both -= factor[:, :, None] * row[:, None, :]
+            both[:, step] = row
+        rows, reduced = both[:, :, :size], np.ascontiguousarray(both[:, :, size:])
+        rows[np.abs(rows) < 1e-12] = 0.0
         taken: BoolArray = np.asarray(pivot.any(axis=1))
         free = -pivot.swapaxes(1, 2) @ np.where(taken[:, None, :], 0.0, rows)
         place = np.arange(size)
@@ -370,7 +386,6 @@ def finish(
     gas_pairs = (gas[:, :, None] * gas[:, None, :]).reshape(len(gas), (size + 4) ** 2)
     at_b, at_i, at_m, at_w = size, size + 1, size + 2, size + 3  # bubbled gas, ionic strength, molality, ln water
     n = size + 4
-    square = np.arange(size)
     elimination: Elimination | None = None
     for turn in range(most_turns):
         count = live.size
@@ -379,7 +394,7 @@ def finish(
         held = Constraints.at(terms, lanes, state, medium)
         pairs = (amounts @ terms.feature_pairs).reshape(count, size + 4, size + 4)
         if elimination is None:
-            weight = np.where(lanes.absent, np.inf, pairs[:, square, square])
+            weight = np.where(lanes.absent, np.inf, diagonal_of(pairs)[:, :size])
             filled = state.phases[:, :solids] / lanes.most[:, :solids]
             elimination = Elimination.of(terms, present[:, :solids], filled, weight)
             state.phases[~present] = 0.0
@@ -474,7 +489,7 @@ def finish(
         matrix[still, :, at_b] = 0.0
         matrix[still, at_b, at_b] = 1.0
         right[still, at_b] = 0.0
-        diagonal = matrix[:, square, square]
+        diagonal = diagonal_of(matrix)[:, :size]
         fixed = diagonal <= 0.0  # pivots and absent components
         column_scale = np.ones((count, n))
         column_scale[:, :size] = np.where(fixed, 1.0, 1.0 / np.sqrt(np.where(fixed, 1.0, diagonal)))
@@ -485,7 +500,7 @@ def finish(
         matrix *= column_scale[:, :, None]
         matrix *= column_scale[:, None, :]
         right *= column_scale
-        matrix[:, square, square] = np.where(fixed, 1.0, matrix[:, square, square])
+        diagonal[fixed] = 1.0
         medium_error = np.abs(right[:, at_i:]).max(axis=1) / (1.0 + state.strength + state.molality)
         step = column_scale * _solve(matrix, right)
         if not np.isfinite(step).all():

@@ -37,7 +37,8 @@ class Terms:
     scaling: FloatArray  # [J, 4 C]: gains, losses as positive numbers, and both times the sum of |nu| of the term
     sums: FloatArray  # [J, 2 C + 4]: nu, |nu|, z^2, neutral, water, aqueous
     features: FloatArray  # [J, C + 4]: nu, z^2, neutral, water, aqueous
-    features_across: FloatArray  # [C + 4, J]
+    nu_across: FloatArray  # [C, J]
+    medium_across: FloatArray  # [4, J]: z^2, neutral, water, aqueous
     feature_pairs: FloatArray  # [J, (C + 4)^2]
     nu_pairs: FloatArray  # [J, C^2]
     solid_nu: FloatArray  # [M, C]
@@ -80,7 +81,8 @@ class Terms:
             scaling=np.hstack([positive, negative, *weighted]),
             sums=np.hstack([nu, np.abs(nu), features[:, nu.shape[1] :]]),
             features=features,
-            features_across=np.ascontiguousarray(features.T),
+            nu_across=np.ascontiguousarray(nu.T),
+            medium_across=np.ascontiguousarray(features[:, nu.shape[1] :].T),
             feature_pairs=_pairs(features),
             nu_pairs=_pairs(nu),
             solid_nu=network.solid_nu,
@@ -104,6 +106,7 @@ class Lanes:
     water: FloatArray  # [L] mol H2O per kg of starting water
     least_water: FloatArray  # [L] kg per kg
     absent: BoolArray  # [L, C]
+    hundredth: FloatArray  # [L] of all components but H+, mol per kg
     ln_beta: FloatArray  # [L, J]
     solid_ln_beta: FloatArray  # [L, M]
     gas_ln_beta: FloatArray  # [L, G]
@@ -186,6 +189,7 @@ def make_lanes(network: Network, totals: FloatArray, water_mol: FloatArray, vess
             water=water_mol / scale,
             least_water=floor_kg / scale,
             absent=absent,
+            hundredth=0.01 * scaled[:, 1:].sum(axis=1),
             ln_beta=ln_beta,
             solid_ln_beta=np.where(solid_missing, ABSENT, LN10 * network.solid_log_beta),
             gas_ln_beta=gas_ln_beta,
@@ -215,6 +219,12 @@ def vector_matrix(vector: FloatArray, matrix: FloatArray) -> FloatArray:
     return np.asarray((vector[:, None, :] @ matrix)[:, 0, :])
 
 
+def diagonal_of(matrices: FloatArray) -> FloatArray:
+    """A view of the diagonals of [L, A, A], [L, A]; what is written to it is written to them. They must be contiguous."""
+    size = matrices.shape[1]
+    return matrices.reshape(matrices.shape[0], size * size)[:, :: size + 1]
+
+
 def _pairs(rows: FloatArray) -> FloatArray:
     return np.ascontiguousarray((rows[:, :, None] * rows[:, None, :]).reshape(rows.shape[0], rows.shape[1] ** 2))
 
@@ -239,19 +249,28 @@ class Medium:
             *activity.ln_water_activity(molality),
         )
 
+    def take(self, which: BoolArray) -> Medium:
+        """These lanes only."""
+        return Medium(**{part.name: getattr(self, part.name)[which] for part in fields(self)})
+
+
+def ln_constants(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
+    """ln of what each term would be with all components at unit activity, [L, J]."""
+    return np.stack((-medium.ion, -medium.neutral, medium.water, state.ln_water), axis=1) @ terms.medium_across + (
+        lanes.ln_beta
+    )
+
+
+def amounts_of(terms: Terms, state: State, constants: FloatArray) -> FloatArray:
+    """mol of each term per kg of starting water, [L, J], from :func:`ln_constants`."""
+    logs = state.x @ terms.nu_across
+    logs += constants
+    return np.exp(np.minimum(logs, _CEILING, out=logs), out=logs)
+
 
 def term_amounts(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
     """mol of each term per kg of starting water, [L, J]."""
-    size = terms.size
-    given = np.empty((state.x.shape[0], size + 4))
-    given[:, :size] = state.x
-    given[:, size] = -medium.ion
-    given[:, size + 1] = -medium.neutral
-    given[:, size + 2] = medium.water
-    given[:, size + 3] = state.ln_water
-    logs = given @ terms.features_across
-    logs += lanes.ln_beta
-    return np.exp(np.minimum(logs, _CEILING, out=logs), out=logs)
+    return amounts_of(terms, state, ln_constants(terms, lanes, state, medium))
 
 
 def ln_pressures(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:

@@ -27,7 +27,7 @@ def _shown(thing: tuple[str, str], index: Index, style: Style) -> str:
         record = index.species.get(key)
         name = index.substances[key].name if key in index.substances else (record.name if record is not None else "")
         formula = style.formula(key)
-        return name if key in index.substances or formula == key and name else f"{formula} {name}".strip()
+        return name if key in index.substances or (formula == key and name) else f"{formula} {name}".strip()
     if sort == "material":
         return index.materials[key].name
     if sort == "container":

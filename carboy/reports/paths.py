@@ -42,9 +42,9 @@ def path_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
             count = len(finding.other_paths)
             words = "1 other way leads" if count == 1 else f"{count} other ways lead"
             yield from wrapped(f"{words} there as well; --full draws them.", style.width, " " * 6)
-        for other in finding.other_paths if full else []:
+        for derivation in finding.other_paths if full else []:
             yield from wrapped("or", style.width, " " * 6)
-            yield from drawn(other, finding.species, style, indent=6)
+            yield from drawn(derivation, finding.species, style, indent=6)
 
 
 def _shape(path: list[PathStep]) -> list[tuple[str, ...]]:

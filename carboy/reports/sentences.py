@@ -73,7 +73,7 @@ def _head(word: str, style: Style) -> str:
     return shown + " " * (_MARGIN - len(word))
 
 
-def _told(  # noqa: PLR0913
+def _told(
     number: int, finding: Finding, actions: dict[int, str], style: Style, citations: Citations, told: dict[str, int]
 ) -> Iterator[str]:
     """One finding. ``told`` has what was said of others before, so that nothing is said twice."""

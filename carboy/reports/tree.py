@@ -98,9 +98,9 @@ def _joined(blocks: list[Block]) -> Block:
     """Blocks one below the other, their rows led to one line."""
     if len(blocks) == 1:
         block = blocks[0]
-        lines = list(block.lines)
-        lines[block.row] += " ──"
-        return Block(lines, block.row)
+        single = list(block.lines)
+        single[block.row] += " ──"
+        return Block(single, block.row)
     width = max(block.width for block in blocks)
     lines: list[str] = []
     rows: list[int] = []

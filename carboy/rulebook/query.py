@@ -27,7 +27,7 @@ from carboy.model.knowledge import Index
 from carboy.model.rule import Bound, Earlier, Kind, Measured, Present, ReactionTerm, Rule
 from carboy.rulebook.composition import Composition
 from carboy.span import Span
-from carboy.text.formulas import elements
+from carboy.text.formulas import elements, plain_formula
 
 Sort = Literal["chemical", "class", "rule", "kind", "source", "material", "container", "element"]
 Thing = tuple[Sort, str]
@@ -119,8 +119,8 @@ class Questions:
         where = start + found.start("object")
         value = self._end(pattern, where, body, relation, first=False)
         without: set[Thing] = set()
-        for words in excluded:
-            things = self._end(pattern, where + found["object"].find(words), words, relation, first=False)
+        for exception in excluded:
+            things = self._end(pattern, where + found["object"].find(exception), exception, relation, first=False)
             if isinstance(things, str):
                 raise InputError(
                     "what is excluded is named, not asked for", span=Span(pattern, where, where + len(found["object"]))
@@ -169,12 +169,13 @@ class Questions:
             found = reader(word.strip())
             if found:
                 return found
-        what = {
+        special: dict[Callable[[str], set[Thing]], str] = {
             self._rule: "rule",
             self._kind: "kind of hazard",
             self._source: "source",
             self._container: "container material",
-        }.get(readers[relation, first][0], "class, species or substance")
+        }
+        what = special.get(readers[relation, first][0], "class, species or substance")
         choices: dict[str, Iterable[str]] = {
             "rule": self.rules,
             "kind of hazard": get_args(Kind),
@@ -313,18 +314,32 @@ class Questions:
 
     @cached_property
     def _canonical(self) -> dict[str, str]:
-        """Substance id or gas token -> the species in water that is the same molecule."""
+        """Substance id or gas token -> the species that is the same molecule, that in water before that in the air."""
+        species = self.index.species
         same = {}
-        for key, item in self.index.substances.items():
-            if len(item.yields) == 1:
-                ((token, count),) = item.yields.items()
-                record = self.index.species.get(token)
-                if count == 1.0 and record is not None and record.charge == 0 and record.atoms == item.atoms:
-                    same[key] = token
-        for token in (*self.index.gases, *self.index.species):
+        for token in species:
             bare = token.removesuffix("(g)")
-            if bare != token and bare in self.index.species:
+            if bare != token and bare in species:
                 same[token] = bare
+        by_formula: dict[str, list[str]] = {}
+        for key, item in self.index.substances.items():
+            by_formula.setdefault(plain_formula(item.formula), []).append(key)
+        for key, item in self.index.substances.items():
+            formula = plain_formula(item.formula)
+            candidates = [token for token, count in item.yields.items() if len(item.yields) == 1 and count == 1.0]
+            # a formula that isomers share tells nothing, and a salt is no molecule
+            if len(by_formula[formula]) == 1 and item.state != "s":
+                candidates += [formula, f"{formula}(g)"]
+            for token in candidates:
+                record = species.get(token)
+                if (
+                    record is not None
+                    and record.charge == 0
+                    and record.phase in ("aq", "g")
+                    and record.atoms == item.atoms
+                ):
+                    same[key] = same.get(token, token)
+                    break
         return same
 
     def canonical(self, token: str) -> str:
@@ -333,10 +348,12 @@ class Questions:
 
     def _is_pairs(self) -> Iterator[tuple[Thing, Thing]]:
         ancestors = self.index.ancestors
-        for key, item in (*self.index.substances.items(), *self.index.species.items()):
+        stated = [(key, item.classes) for key, item in self.index.substances.items()]
+        stated += [(key, item.classes) for key, item in self.index.species.items()]
+        for key, groups in stated:
             thing: Thing = ("chemical", self.canonical(key))
             yield thing, thing
-            for group in item.classes:
+            for group in groups:
                 for above in ancestors.get(group, (group,)):
                     yield thing, ("class", above)
         for key in self.index.classes:
@@ -352,8 +369,8 @@ class Questions:
                     tokens.update(self._expanded(term, choices))
             for flag in rule.flags:
                 for name in flag.terms:
-                    term, _, part = name.partition(".") if name.startswith("?") else (name, "", "")
-                    tokens.update(self._expanded(ReactionTerm(term, part), choices))
+                    subject, _, part = name.partition(".") if name.startswith("?") else (name, "", "")
+                    tokens.update(self._expanded(ReactionTerm(subject, part), choices))
             for token in sorted(tokens):
                 yield ("rule", rule.id), ("chemical", self.canonical(token))
 
@@ -392,8 +409,10 @@ class Questions:
             for substance in (*(part.substance for part in item.parts), item.balance):
                 if substance in self.index.substances:
                     yield ("material", key), ("chemical", self.canonical(substance))
-        for key, record in (*self.index.substances.items(), *self.index.species.items()):
-            for symbol in record.atoms:
+        atoms = [(key, record.atoms) for key, record in self.index.substances.items()]
+        atoms += [(key, record.atoms) for key, record in self.index.species.items()]
+        for key, counts in atoms:
+            for symbol in counts:
                 yield ("chemical", self.canonical(key)), ("element", symbol)
 
     def _dissolves_pairs(self) -> Iterator[tuple[Thing, Thing]]:

@@ -66,6 +66,15 @@ def test_ask_joins_over_the_graph(carboy):
     assert "household bleach" in bleach
 
 
+def test_ask_takes_a_molecule_for_one_thing_as_substance_in_water_and_in_the_air(carboy):
+    by_name, by_formula, by_gas = (
+        json.loads(carboy("ask", f"?r gives {name}, ?r needs acid", "--json").out)
+        for name in ("hydrogen cyanide", "HCN", "HCN(g)")
+    )
+    assert {"?r": "acid-frees-hydrogen-cyanide"} in by_formula
+    assert by_name == by_formula == by_gas
+
+
 def test_ask_with_exception_leaves_out_what_is_excluded(carboy):
     every = {row["?s"] for row in json.loads(carboy("ask", "?s is oxidiser", "--json").out)}
     but = {row["?s"] for row in json.loads(carboy("ask", "?s is oxidiser but not nitrate", "--json").out)}

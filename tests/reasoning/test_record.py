@@ -6,6 +6,7 @@ import pytest
 
 from carboy.model.report import PathStep
 from carboy.reasoning.record import Record
+from carboy.text.cases import case_from_mapping
 from carboy.vetting import laboratory
 from tests.bench.reports import combined, labels, only, select
 from tests.reasoning.small_book import rules, walk
@@ -160,7 +161,6 @@ def test_three_bottles_path_holds_all_three() -> None:
 
 
 def test_path_through_a_filter_and_a_second_vessel() -> None:
-    from carboy.text.cases import case_from_mapping
 
     lab = laboratory()
     plan = {

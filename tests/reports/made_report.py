@@ -7,7 +7,9 @@ from carboy.model.report import Finding, GoalReport, Measure, PathStep, Report, 
 
 SOURCES = {
     "mendel-2001": Source("mendel-2001", "Mendel F. Gases over waste. Tarn, 2001."),
-    "long-one": Source("long-one", "A title that goes on and on about the gases over waste and what is known of them, " * 3),
+    "long-one": Source(
+        "long-one", "A title that goes on and on about the gases over waste and what is known of them, " * 3
+    ),
 }
 
 
@@ -51,7 +53,9 @@ def report(**given: object) -> Report:
         "verdict": "refuse",
         "findings": [finding()],
         "steps": [
-            StepReport(step=1, action="add 20 g of sodium sulfide", vessel="vessel", pH=None, temperature_C=(25, 25), gauge_kPa=(0, 0), volume_L=0.02),
+            StepReport(
+                step=1, action="add 20 g of sodium sulfide", vessel="vessel", pH=None, temperature_C=(25, 25), gauge_kPa=(0, 0), volume_L=0.02
+            ),
             StepReport(
                 step=2, action="add 1 L of 0.5 M HCl", vessel="vessel", pH=(0.951, 0.951), temperature_C=(26.04, 26.04), gauge_kPa=(0, 0),
                 volume_L=(1.02, 1.02), dissolved_mol={"S": (0.1, 0.1), "S(-II)": (0.1, 0.1), "Na": (0.2, 0.2)}, gas_mol={"H2S": (0.05, 0.06)},
@@ -64,4 +68,6 @@ def report(**given: object) -> Report:
 
 
 def goal(met: bool | None) -> GoalReport:
-    return GoalReport(goal="dissolved mercury in jug below 0.2 mg/L", met=met, value=None if met is None else (0.01, 0.5), unit="mg/L")
+    return GoalReport(
+        goal="dissolved mercury in jug below 0.2 mg/L", met=met, value=None if met is None else (0.01, 0.5), unit="mg/L"
+    )

@@ -77,7 +77,10 @@ def test_ascii_of_anything_is_ascii(text):
 @given(st.text(alphabet="ab ₂→", max_size=200), st.integers(min_value=20, max_value=80))
 def test_wrapped_keeps_every_word_within_the_width(text, width):
     lines = list(wrapped(text, width, "  - "))
-    assert " ".join(" ".join(lines).split()).removeprefix("-").split() == text.split(" ") or text.split() == " ".join(lines).split()[1:]
+    assert (
+        " ".join(" ".join(lines).split()).removeprefix("-").split() == text.split(" ")
+        or text.split() == " ".join(lines).split()[1:]
+    )
     assert all(columns_of(line) <= width or len(line.split()) <= 2 for line in lines)
 
 
@@ -102,7 +105,10 @@ def test_colour_only_on_a_terminal_that_wants_it(monkeypatch):
 
 
 def test_words_show_ions_and_leave_the_rest():
-    assert Style().words("mostly as HgS2-2, at pH 7-8, by 2-fold, well-known H-bond") == "mostly as HgS₂²⁻, at pH 7-8, by 2-fold, well-known H-bond"
+    assert (
+        Style().words("mostly as HgS2-2, at pH 7-8, by 2-fold, well-known H-bond")
+        == "mostly as HgS₂²⁻, at pH 7-8, by 2-fold, well-known H-bond"
+    )
     assert Style(plain=True).words("as HgS2-2") == "as HgS2-2"
 
 

@@ -99,7 +99,12 @@ def test_dangers_before_warnings_before_notes_and_the_graver_kind_first():
 
 
 def test_the_other_order_is_told_apart():
-    made = report(findings=[finding(order="as written"), finding(order="other order", kind="heat", summary="It boils over.", says="Hot.")])
+    made = report(
+        findings=[
+            finding(order="as written"),
+            finding(order="other order", kind="heat", summary="It boils over.", says="Hot."),
+        ]
+    )
     shown = text(made)
     before, after = shown.split("If poured the other way round:")
     assert "It boils over." not in before
@@ -152,7 +157,16 @@ def test_no_line_is_wider_than_the_terminal(width):
 
 
 def test_what_holds_for_several_steps_is_said_once():
-    made = report(assumptions=["One.", "Step 1: strong.", "Step 2: strong.", "Step 3: weak.", "Step 3: strong.", "Step 5: strong."])
+    made = report(
+        assumptions=[
+            "One.",
+            "Step 1: strong.",
+            "Step 2: strong.",
+            "Step 3: weak.",
+            "Step 3: strong.",
+            "Step 5: strong.",
+        ]
+    )
     assert "  - One.\n  - Steps 1 to 3, 5: strong.\n  - Step 3: weak.\n" in text(made)
 
 

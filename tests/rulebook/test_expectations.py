@@ -9,7 +9,11 @@ from carboy.rulebook.expectations import check_expectations, expectation_text
 from tests.reports.made_report import finding, goal, report
 
 MADE = report(
-    findings=[finding(), finding(kind="heat", signal="warning", species=[], summary="It warms by 30 K."), finding(order="other order", kind="foam")],
+    findings=[
+        finding(),
+        finding(kind="heat", signal="warning", species=[], summary="It warms by 30 K."),
+        finding(order="other order", kind="foam"),
+    ],
     goals=[goal(True)],
     questions=["Titrate the unknown."],
 )
@@ -25,7 +29,14 @@ def reasons(**fields: object) -> list[str]:
     "fields",
     [
         {"step": 2, "kind": "toxic-gas"},
-        {"step": 2, "kind": "toxic-gas", "species": "H2S", "signal": "danger", "moment": "during", "rule": "acid-frees-sulfide"},
+        {
+            "step": 2,
+            "kind": "toxic-gas",
+            "species": "H2S",
+            "signal": "danger",
+            "moment": "during",
+            "rule": "acid-frees-sulfide",
+        },
         {"step": 1, "kind": "toxic-gas", "absent": True},
         {"kind": "explosive", "absent": True},
         {"kind": "foam", "absent": True},  # what only the other order brings does not count
@@ -51,7 +62,10 @@ def test_holds(fields):
 @pytest.mark.parametrize(
     ("fields", "reason"),
     [
-        ({"step": 1, "kind": "toxic-gas"}, "there is no such finding; of that kind there is step 2 danger toxic-gas H2S during"),
+        (
+            {"step": 1, "kind": "toxic-gas"},
+            "there is no such finding; of that kind there is step 2 danger toxic-gas H2S during",
+        ),
         ({"kind": "toxic-gas", "species": "HCN"}, "no such finding"),
         ({"kind": "toxic-gas", "signal": "note"}, "no such finding"),
         ({"kind": "toxic-gas", "moment": "storage"}, "no such finding"),
@@ -83,7 +97,10 @@ def test_failures_keep_the_order_of_the_file():
         steps=(Add(to="jug"),),
         expect=(Expectation(verdict="no objection"), Expectation(kind="toxic-gas"), Expectation(kind="fire")),
     )
-    assert [failure.expectation.verdict + failure.expectation.kind for failure in check_expectations(MADE, case)] == ["no objection", "fire"]
+    assert [failure.expectation.verdict + failure.expectation.kind for failure in check_expectations(MADE, case)] == [
+        "no objection",
+        "fire",
+    ]
 
 
 def test_an_expectation_in_words():

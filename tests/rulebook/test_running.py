@@ -31,7 +31,11 @@ def test_what_was_found(lab):
 
 
 def test_the_setting_of_an_example_is_carried_out(lab):
-    example = Example("", FIRES.portions, {"cover": "sealed", "container": "HDPE", "volume": "4 L", "wait": "24 h", "temperature": "30 degC"})
+    example = Example(
+        "",
+        FIRES.portions,
+        {"cover": "sealed", "container": "HDPE", "volume": "4 L", "wait": "24 h", "temperature": "30 degC"},
+    )
     case = ExampleRunner(lab).case(example)
     (vessel,) = case.vessels
     assert (vessel.cover, vessel.material, vessel.volume.low) == ("sealed", "hdpe", 4.0)
