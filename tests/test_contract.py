@@ -134,22 +134,7 @@ def test_one_finding_per_kind_species_step_and_vessel(name: str) -> None:
     assert len(seen) == len(set(seen)), seen
 
 
-@pytest.mark.parametrize(
-    "name",
-    [
-        pytest.param(
-            name,
-            marks=pytest.mark.xfail(
-                strict=True,
-                reason="a rule whose needs are all of the kind 'X present' binds nothing, and the path of its flag is then "
-                "the rule alone, without the labels",
-            ),
-        )
-        if name == "silver and ammonia"
-        else name
-        for name in MIXTURES
-    ],
-)
+@every_mixture
 def test_paths_start_at_labels_and_end_in_the_species(name: str) -> None:
     for found in report_of(name).findings:
         if found.kind == "heat":

@@ -53,26 +53,33 @@ class ChemicalStock:
                     links[item.product] = molecule
         return links
 
+    def carriers(self, molecule: str) -> tuple[str, ...]:
+        """A molecule in water and its loose adducts with one anion (Cl2 and Cl3-, HF and HF2-), which give it up at once."""
+        known = self._carriers.get(molecule)
+        if known is None:
+            inner = dict(self._make(molecule))
+            makes = ((other, dict(self._make(other))) for other in self._with_component.get(next(iter(inner)), ()) if other != molecule)
+            adducts = [other for other, make in makes if self._adds_an_anion(make, inner)]
+            known = self._carriers[molecule] = (molecule, *adducts)
+        return known
+
     @cached_property
-    def carriers(self) -> dict[str, tuple[str, ...]]:
-        """Molecule in water -> the molecule and its loose adducts with one anion (Cl2 and Cl3-, HF and HF2-), which give it up at once."""
-        found: dict[str, tuple[str, ...]] = {}
-        for molecule in set(self.dissolved_form.values()):
-            inner = self.components_of(molecule)
-            adducts = []
-            for token, made in self.formation.items():
-                if made.kind == "aqueous" and token != molecule:
-                    rest = {
-                        part: made.coefficients.get(part, 0.0) - inner.get(part, 0.0)
-                        for part in {*made.coefficients, *inner}
-                    }
-                    rest = {part: count for part, count in rest.items() if part != WATER and abs(count) > 1e-9}
-                    if len(rest) == 1 and all(
-                        count > 0 and part != PROTON and self.species(part).charge < 0 for part, count in rest.items()
-                    ):
-                        adducts.append(token)
-            found[molecule] = (molecule, *adducts)
+    def _carriers(self) -> dict[str, tuple[str, ...]]:
+        return {}
+
+    @cached_property
+    def _with_component(self) -> dict[str, list[str]]:
+        found: dict[str, list[str]] = {}
+        for item in self.index.equilibria:
+            if item.kind == "aqueous":
+                for component in item.coefficients:
+                    found.setdefault(component, []).append(item.product)
         return found
+
+    def _adds_an_anion(self, make: dict[str, float], inner: dict[str, float]) -> bool:
+        rest = {part: make.get(part, 0.0) - inner.get(part, 0.0) for part in {*make, *inner}}
+        over = [(part, count) for part, count in rest.items() if abs(count) > 1e-9]
+        return len(over) == 1 and over[0][1] > 0 and over[0][0] != PROTON and self.species(over[0][0]).charge < 0
 
     def _make(self, token: str) -> tuple[tuple[str, float], ...]:
         return tuple(sorted((key, value) for key, value in self.components_of(token).items() if key != WATER))

@@ -71,7 +71,7 @@ def load(mixture: Mixture, token: str, swept_L: float = np.inf) -> Load:
     gas, pressure = mixture.gases.get(token, none), mixture.pressures.get(token, none)
     molecule = mixture.stock.dissolved_form.get(token)
     if molecule is not None:
-        held = sum((mixture.aqueous.get(form, none) for form in mixture.stock.carriers[molecule]), none)
+        held = sum((mixture.aqueous.get(form, none) for form in mixture.stock.carriers(molecule)), none)
         return Load(gas, held, pressure, True, swept_L)
     reserve = [
         mixture.total(part) / count

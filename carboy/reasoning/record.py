@@ -7,15 +7,17 @@ fast equilibria). Edges run from cause to effect and carry the mol that passed.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from itertools import islice
-from typing import Literal
-
-import networkx as nx
+from itertools import islice, product
+from typing import TYPE_CHECKING, Literal
 
 from carboy.model.report import PathStep
 
+if TYPE_CHECKING:
+    import networkx
+
 Node = tuple[str, ...]
 MOST_PATHS = 12
+_MOST_TRIED = 200
 
 
 @dataclass(frozen=True)
@@ -35,8 +37,9 @@ class Record:
     """Grows while a plan is walked; read afterwards."""
 
     def __init__(self) -> None:
-        self.graph: nx.MultiDiGraph = nx.MultiDiGraph()
         self._events: dict[Node, Event] = {}
+        self._causes: dict[Node, dict[str, dict[Node, float]]] = {}  # event -> token it used -> who supplied it, mol
+        self._supplied: dict[Node, dict[str, float]] = {}  # event -> mol of each token that it brought
         self._sources: dict[tuple[str, str], set[Node]] = {}  # (vessel, token) -> events that supply it now
         self._count = 0
 
@@ -44,13 +47,27 @@ class Record:
         self._count += 1
         node = (event.sort, event.key, str(self._count))
         self._events[node] = event
-        self.graph.add_node(node)
+        self._causes[node] = {}
         return node
+
+    def graph(self) -> networkx.MultiDiGraph:
+        """The whole record as a graph: nodes carry their ``event``; edges run from cause to effect, keyed by the token that passed, with the
+        mol that the cause supplied as ``weight``."""
+        import networkx  # costs a tenth of a second, and only those who look at the whole need it
+
+        graph = networkx.MultiDiGraph()
+        for node, event in self._events.items():
+            graph.add_node(node, event=event)
+        for node, by_token in self._causes.items():
+            for token, suppliers in by_token.items():
+                for source, weight in suppliers.items():
+                    graph.add_edge(source, node, key=token, weight=weight)
+        return graph
 
     def poured(self, vessel: str, label: str, equation: str, tokens: dict[str, float], step: int) -> None:
         """A labelled substance came into a vessel and brought ``tokens`` (mol each)."""
         node = self._node(Event(label, "label", equation, (label,), tuple(tokens), step, "label"))
-        self.graph.nodes[node]["weight"] = tokens
+        self._supplied[node] = dict(tokens)
         for token in tokens:
             self._sources.setdefault((vessel, token), set()).add(node)
 
@@ -78,8 +95,10 @@ class Record:
         for token, weight in consumed.items():
             for source in self._sources.get((vessel, token), ()):
                 if source != node and self._events[source].step <= step:
-                    self.graph.add_edge(source, node, key=token, weight=weight)
+                    brought = self._supplied.get(source, {}).get(token, weight)
+                    self._causes[node].setdefault(token, {})[source] = brought
         if sort == "firing":
+            self._supplied[node] = dict(made)
             for token in made:
                 self._sources.setdefault((vessel, token), set()).add(node)
         return node
@@ -102,33 +121,27 @@ class Record:
         A way holds every label that the event needs through one choice of its events, so it is a small tree written in order:
         causes before effects.
         """
-        ways = list(islice(self._ways(node, frozenset()), MOST_PATHS))
-        ways.sort(key=lambda way: (-way[0], len(way[1])))
-        return [[self._as_step(step) for step in steps] for _, steps in ways]
+        return [[self._as_step(step) for step in steps] for _, steps in self._ways(node, frozenset())]
 
-    def _ways(self, node: Node, above: frozenset[Node]):  # type: ignore[no-untyped-def]
-        if node in above:
-            return
-        by_token: dict[str, list[tuple[float, Node]]] = {}
-        for source, _, token, weight in self.graph.in_edges(node, keys=True, data="weight"):
-            brought = self.graph.nodes[source].get("weight", {}).get(token, weight)
-            by_token.setdefault(token, []).append((brought, source))
-        if not by_token:
-            yield 0.0, [node]
-            return
-        for choices in by_token.values():
-            choices.sort(key=lambda pair: -pair[0])
-        depth = max(len(choices) for choices in by_token.values())
-        for rank in range(min(depth, MOST_PATHS)):
-            steps: list[Node] = []
-            weight = 0.0
-            for choices in by_token.values():
-                amount, source = choices[min(rank, len(choices) - 1)]
-                weight += amount
-                best = next(self._ways(source, above | {node}), None)
-                if best is not None:
-                    steps += [step for step in best[1] if step not in steps]
-            yield weight, [*steps, node]
+    def _ways(self, node: Node, above: frozenset[Node]) -> list[tuple[float, tuple[Node, ...]]]:
+        """Ways to an event with the mol that its own suppliers brought, the weightiest first; none through an event that is on the way."""
+        by_token: list[list[tuple[float, tuple[Node, ...]]]] = []
+        for suppliers in self._causes[node].values():
+            options = [
+                (weight, steps)
+                for source, weight in suppliers.items()
+                if source not in above
+                for _, steps in self._ways(source, above | {node})
+            ]
+            if options:
+                by_token.append(sorted(options, key=lambda option: -option[0])[:MOST_PATHS])
+        ways: dict[tuple[Node, ...], float] = {}
+        for chosen in islice(product(*by_token), _MOST_TRIED):
+            steps = tuple(dict.fromkeys([step for _, part in chosen for step in part]))
+            weight = sum(share for share, _ in chosen)
+            ways[(*steps, node)] = max(ways.get((*steps, node), 0.0), weight)
+        ordered = sorted(ways.items(), key=lambda way: (-way[1], len(way[0])))
+        return [(weight, steps) for steps, weight in ordered[:MOST_PATHS]]
 
     def _as_step(self, node: Node) -> PathStep:
         event = self._events[node]

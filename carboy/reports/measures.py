@@ -27,7 +27,7 @@ def measure_lines(report: Report, style: Style) -> Iterator[str]:
         own = [_formed(finding, style)] if finding.amount_mol is not None and finding.species else []
         for measure in finding.measures:
             value = list(measure.value) if isinstance(measure.value, Sequence) else measure.value
-            own.append([measure.quantity, quantity(value, measure.unit), measure.basis])
+            own.append([measure.quantity, quantity(value, measure.unit), style.words(measure.basis)])
         rows += [[f"({number})" if place == 0 else "", *row] for place, row in enumerate(own)]
     yield from table(rows, style.width, indent=2, limits={1: _LABEL, 2: _VALUE})
 

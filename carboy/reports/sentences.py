@@ -140,5 +140,5 @@ def listed(title: str, items: Sequence[str], style: Style, *, faint: bool = Fals
     yield ""
     yield style.strong(title)
     for item in items:
-        for line in wrapped(item, style.width, "  - "):
+        for line in wrapped(style.words(item), style.width, "  - "):
             yield style.faint(line) if faint else line

@@ -28,6 +28,8 @@ _ASCII = {
 _SUPERSCRIPTS = str.maketrans("⁰¹²³⁴⁵⁶⁷⁸⁹⁺⁻", "0123456789+-")
 _BOXES = str.maketrans("─│┐┘┤├┬┴┼└┌", "-|+++++++++")
 _ION = re.compile(r"(?<![\w+-])(?:[A-Z][a-z]?\d*|\((?:[A-Z][a-z]?\d*)+\)\d*)+[+-]\d?(?![\w+-])")
+_SIGNS = {"degC": "°C", "m3": "m³"}
+_UNIT = re.compile(r"(?<=[\d\s])(?:degC|m3)(?![\w])")
 _POWER = re.compile("×10([⁰¹²³⁴⁵⁶⁷⁸⁹⁻]+)")
 
 
@@ -44,8 +46,10 @@ class Style:
         return token if self.plain else pretty_formula(token)
 
     def words(self, text: str) -> str:
-        """A sentence in which the ions are shown as formulas."""
-        return text if self.plain else _ION.sub(lambda found: pretty_formula(found[0]), text)
+        """A sentence in which ions are shown as formulas, and units with their signs."""
+        if self.plain:
+            return text
+        return _UNIT.sub(lambda found: _SIGNS[found[0]], _ION.sub(lambda found: pretty_formula(found[0]), text))
 
     def equation(self, text: str) -> str:
         """An equation likewise; text that is no equation is given back."""

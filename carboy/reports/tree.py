@@ -74,7 +74,7 @@ def _draw(link: Link, style: Style, label_width: int) -> Block:
     made = ", ".join(style.formula(token) for token in link.brings if token)
     if not link.suppliers:
         words = _label_lines(link, label_width)
-        return _extended(Block(words, (len(words) - 1) // 2), made, " ── ")
+        return _extended(Block(words, len(words) - 1), made, " ── ")
     joined = _joined([_draw(supplier, style, label_width) for supplier in link.suppliers])
     step = f"({link.number})─" if link.number else ""
     return _extended(joined, made, f"─{step} ")

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cache
 
 import numpy as np
@@ -12,8 +12,10 @@ from carboy.chemistry.equilibrium import Solved, solve
 from carboy.chemistry.network import Network
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.knowledge.index import load_index
+from tests.chemistry.mixtures import faults
 
 MOL_PER_KG = 1.0 / 0.01801528
+VAPOUR_ATM = 0.031271  # water at 25 degC
 STYLES = ("dilute", "ordinary", "strong", "end point", "with zeros", "crowded")
 VESSELS = ("open", "open", "sealed", "retained")
 
@@ -62,6 +64,53 @@ class Draw:
         if self.vessel == "sealed":
             return {"headspace_L": np.array([self.headspace_L])}
         return {"retain_gas": self.vessel == "retained"}
+
+
+    def wrong(self, answer: Solved) -> list[str]:
+        """What is wrong with the answer to this mixture; nothing where all is well."""
+        if not answer.converged.all():
+            return list(answer.reasons)
+        available = 1.0 - VAPOUR_ATM if self.vessel == "open" else None
+        return faults(answer, self.totals[None, :], np.array([self.water_mol]), available_atm=available)
+
+    def solve_in_order(self, order: np.ndarray) -> Solved:
+        """With the components after H+, and with them all species, solids and gases, in another order."""
+        net = self.network
+        columns = np.concatenate([[0], 1 + order])
+        size = len(columns)
+        rows = np.concatenate([columns, np.arange(size, len(net.species))[::-1]])
+        turned = replace(
+            net,
+            components=tuple(net.components[c] for c in columns),
+            species=tuple(net.species[r] for r in rows),
+            nu=net.nu[np.ix_(rows, columns)],
+            nu_water=net.nu_water[rows],
+            log_beta=net.log_beta[rows],
+            charge=net.charge[rows],
+            solids=net.solids[::-1],
+            solid_nu=net.solid_nu[::-1][:, columns],
+            solid_nu_water=net.solid_nu_water[::-1],
+            solid_log_beta=net.solid_log_beta[::-1],
+            gases=net.gases[::-1],
+            gas_nu=net.gas_nu[::-1][:, columns],
+            gas_nu_water=net.gas_nu_water[::-1],
+            gas_log_beta=net.gas_log_beta[::-1],
+        )
+        return solve(turned, self.totals[None, columns], np.array([self.water_mol]), **self.options())
+
+
+def difference(one: Solved, other: Solved) -> str:
+    """Where two answers to one question part, whatever the order of their components; nothing where they agree."""
+    if abs(one.pH[0] - other.pH[0]) > 1e-6:
+        return f"pH {one.pH[0]} and {other.pH[0]}"
+    for kind, amounts in (("species", "amounts"), ("solids", "solids"), ("gases", "gas")):
+        first = dict(zip(getattr(one.network, kind), getattr(one, amounts)[0], strict=True))
+        second = dict(zip(getattr(other.network, kind), getattr(other, amounts)[0], strict=True))
+        most = max([*first.values(), 1e-300])
+        for name, amount in first.items():
+            if abs(amount - second[name]) > 1e-5 * amount + 1e-9 * most:
+                return f"{name}: {amount} and {second[name]} mol"
+    return ""
 
 
 def components(portions: Mapping[str, float]) -> dict[str, float]:

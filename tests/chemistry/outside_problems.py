@@ -13,12 +13,11 @@ import numpy as np
 
 from carboy.chemistry.activity import DAVIES_HELD_FROM
 from carboy.chemistry.equilibrium import Solved
-from tests.chemistry.graph_mixtures import Draw, soluble, stock
+from tests.chemistry.graph_mixtures import VAPOUR_ATM, Draw, soluble, stock
 from tests.chemistry.mixtures import neutral
 from tests.chemistry.reference_database import Outcome, Reference
 from tests.chemistry.test_equilibrium_reference import PROBLEMS
 
-VAPOUR_ATM = 0.031271  # water at 25 degC
 LEAST = 1e-12  # mol; dissolved totals below it are not compared
 PH_ALLOWED, DISSOLVED_ALLOWED = 0.02, 0.01  # pH units; relative
 _STRONGEST = 0.9 * DAVIES_HELD_FROM

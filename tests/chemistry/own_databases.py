@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import importlib.util
 import re
+import tempfile
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
 from functools import cache
@@ -78,12 +79,13 @@ class OwnDatabase:
 
     def __post_init__(self) -> None:
         # "-gamma 0 0" is read as the limiting law; without it the code takes Davies, as MINTEQ means it.
-        text = re.sub(r"(?m)^\s*-gamma\s+0(\.0*)?\s+0(\.0*)?\s*$", "", self.path.read_text(errors="replace"))
+        text = re.sub(r"(?m)^\s*-gamma\s+0(\.0*)?\s+0(\.0*)?\s*$", "", self.path.read_text(encoding="utf-8", errors="replace"))
         masters, _, rest = text.partition("SOLUTION_SPECIES")
         names = {line.split()[0] for line in rest.partition("PHASES")[2].splitlines() if line[:1].isalpha()}
         self.solids = {ours: name for ours, theirs in SOLIDS.items() for name in theirs if name in names}
-        self.code = phreeqpython.PhreeqPython(database=_SHIPPED[0])
-        self.code.ip.load_database_string(text)
+        with tempfile.TemporaryDirectory() as folder:
+            (Path(folder) / "own.dat").write_text(text)
+            self.code = phreeqpython.PhreeqPython(database="own.dat", database_directory=Path(folder))
         index = stock().index
         rows = [row for row in index.equilibria if row.kind == "aqueous" or row.product in self.solids]
         self.networks = NetworkFactory(rows, index.species)

@@ -121,6 +121,22 @@ def test_acid_brings_a_hydroxide_sludge_back() -> None:
     assert not select(report, "remobilised", step=2)
 
 
+@pytest.mark.parametrize(
+    ("strength", "signal"),
+    # all of it dissolves again in some 1.15 L: 7e-5 M 6.8 mg/L, 7e-6 M 0.68 mg/L, 4e-4 M 39 mg/L, against 1 mg/L
+    [("0.0004 M", "danger"), ("0.00007 M", "warning"), ("0.000007 M", "note")],
+)
+def test_signal_of_a_metal_by_its_limit(strength: str, signal: str) -> None:
+    report = vetted(
+        [
+            {"add": f"1 L of {strength} cadmium sulfate"},
+            {"add": "100 mL of 0.1 M sodium hydroxide"},
+            {"add": "100 mL of 0.2 M hydrochloric acid"},
+        ]
+    )
+    assert [one.signal for one in select(report, "remobilised", step=3)] == [signal], outline(report)
+
+
 def test_water_on_a_sludge_brings_nothing_back() -> None:
     report = vetted(
         [

@@ -37,7 +37,7 @@ How it comes about
       (1) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2
 
 Taken as given
-  - The chemistry is that of 25 degC.
+  - The chemistry is that of 25 °C.
 
 Sources
   [1] Mendel F. Gases over waste. Tarn, 2001.

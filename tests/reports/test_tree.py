@@ -51,4 +51,9 @@ def test_long_labels_are_wrapped_within_the_width_and_dropped_where_nothing_help
         lines = drawn(path, ["H2S"], Style(width), indent=4)
         assert all(columns_of(line) <= width for line in lines)
         assert any("HS⁻ + H⁺ → H₂S" in line for line in lines)
-    assert "sulfide" in drawn(path, ["H2S"], Style(80))[0]
+    assert drawn(path, ["H2S"], Style(80))[:4] == [
+        "sodium sulfide nonahydrate in 4 L of",
+        "(0.1 M sodium sulfide nonahydrate + 2",
+        "M sodium hydroxide)                   ── HS⁻ ─┬─(1)─ H₂S",
+        "1 L of 0.5 M HCl ── H⁺ ───────────────────────┘",
+    ]
