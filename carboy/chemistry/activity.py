@@ -6,6 +6,23 @@ has a maximum near I = 0.395 mol/kg; from there on it is **held at that maximum*
 bounded (0.73 for z = 1) at any strength and its slope stays continuous. Held so, it is nearer to the measured
 coefficients of sodium chloride at 1 to 4 mol/kg (0.65 to 0.78, from memory) than the untruncated equation.
 
+Error of log10 of the mean stoichiometric coefficient, ours less the tables of Robinson and Stokes (Electrolyte
+Solutions, 1959, as in the CRC Handbook; from memory), without ion pairs but with HSO4-; tested in
+tests/chemistry/test_activity_model.py:
+
+========== ====== ====== ====== ====== ====== ====== ======
+mol/kg        0.1    0.5      1      2      3      4      6
+========== ====== ====== ====== ====== ====== ====== ======
+NaCl        +0.00  +0.03  +0.05  +0.04  +0.01  -0.03  -0.13
+HCl         -0.01  -0.02  -0.04  -0.14  -0.26  -0.38  -0.64
+NaOH        +0.01  +0.03  +0.03  +0.01  -0.03  -0.09  -0.25
+CaCl2       +0.02  +0.08  +0.03  -0.17  -0.44  -0.74  -1.32
+H2SO4       -0.04  -0.05  -0.08  -0.16  -0.27  -0.39  -0.64
+========== ====== ====== ====== ====== ====== ====== ======
+
+So a pH in strong acid is too high by up to 0.3 at 2 mol/kg and 1.3 at 6, which is on the side of less gas; whatever is
+above I = 0.5 is reported as outside the range of the model.
+
 Neutral species: ``log10 g = 0.1 I``, held from I = 5 mol/kg. It salts gases out, which errs to more gas.
 
 Water: ``a = 1 - 0.017 sum(m)`` (Garrels and Christ 1965, from memory) up to sum(m) = 20 mol/kg, continued from there

@@ -68,7 +68,7 @@ class Solved:
 _NO_LANES = ("network", "reasons")
 
 
-def solve(  # noqa: PLR0913
+def solve(
     network: Network,
     totals: FloatArray,
     water_mol: FloatArray,
@@ -135,13 +135,14 @@ class _Solution:
 
     def attempt(self, which: IntArray, pace: Pace) -> None:
         """All three stages for some lanes; the second only where a phase seems to form."""
-        lanes = self.lanes.take(which)
+        lanes = self.lanes if which.size == len(self.reasons) else self.lanes.take(which)
         state = first_state(lanes)
         state.x[:, 0] += pace.shift
         rough_start(self.terms, lanes, state, pace.passes)
         rough_solids(self.terms, lanes, state, pace.rounds)
         if pace.direct:
-            clear = ~(state.phases > 0.0).any(axis=1) & (self._excess(lanes, state) < 0.0).all(axis=1)
+            none, below = (state.phases == 0.0).all(axis=1), (self._excess(lanes, state) < 0.0).all(axis=1)
+            clear: BoolArray = np.asarray(none & below)
             if clear.any():
                 some = which[clear]
                 self._finish(some, lanes.take(clear), state.take(clear), lanes.allowed[clear] & False, pace.direct)

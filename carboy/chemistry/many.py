@@ -94,7 +94,9 @@ def _grouped(sets: Sequence[frozenset[str]]) -> list[tuple[frozenset[str], list[
     for vessel, components in enumerate(sets):
         members.setdefault(components, []).append(vessel)
     groups: list[tuple[frozenset[str], list[int]]] = []
-    for components, vessels in sorted(members.items(), key=lambda item: (-len(item[0]), -len(item[1]), sorted(item[0]))):
+    for components, vessels in sorted(
+        members.items(), key=lambda item: (-len(item[0]), -len(item[1]), sorted(item[0]))
+    ):
         best, least = -1, _BATCH + _time(len(vessels), len(components))
         for number, (others, inside) in enumerate(groups):
             wide = len(others | components)

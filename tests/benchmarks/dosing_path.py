@@ -81,7 +81,9 @@ class DosingPath:
         return (
             first
             + "SAVE solution 1\nSAVE equilibrium_phases 1\nEND\nUSE solution 1\nUSE equilibrium_phases 1\n"
-            + "INCREMENTAL_REACTIONS true\n" + lye + "END\nINCREMENTAL_REACTIONS false\n"
+            + "INCREMENTAL_REACTIONS true\n"
+            + lye
+            + "END\nINCREMENTAL_REACTIONS false\n"
         )
 
     def separate(self) -> list[list[float]]:

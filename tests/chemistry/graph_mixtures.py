@@ -65,7 +65,6 @@ class Draw:
             return {"headspace_L": np.array([self.headspace_L])}
         return {"retain_gas": self.vessel == "retained"}
 
-
     def wrong(self, answer: Solved) -> list[str]:
         """What is wrong with the answer to this mixture; nothing where all is well."""
         if not answer.converged.all():

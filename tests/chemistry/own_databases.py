@@ -11,16 +11,19 @@ import importlib.util
 import re
 import tempfile
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from functools import cache
 from pathlib import Path
 from typing import Any
 
 import numpy as np
 import phreeqpython
+from msgspec import structs
 
 from carboy.chemistry.equilibrium import Solved, solve
 from carboy.chemistry.network import NetworkFactory
+from carboy.model.knowledge import Equilibrium, Value
+from tests.chemistry.database_constants import Make, constants, solids
 from tests.chemistry.graph_mixtures import MOL_PER_KG, stock
 
 # Salt -> our components; its formula is what the reference code is given.
@@ -74,12 +77,18 @@ class OwnDatabase:
     path: Path
     code: Any = field(init=False, repr=False)
     networks: NetworkFactory = field(init=False, repr=False)
+    rows: tuple[Equilibrium, ...] = field(init=False, repr=False)
+    constants: dict[Make, tuple[str, float]] = field(init=False, repr=False)
+    solid_constants: dict[str, tuple[dict[str, float], float]] = field(init=False, repr=False)
     solids: dict[str, str] = field(init=False)
     salts: list[str] = field(init=False)
 
     def __post_init__(self) -> None:
         # "-gamma 0 0" is read as the limiting law; without it the code takes Davies, as MINTEQ means it.
-        text = re.sub(r"(?m)^\s*-gamma\s+0(\.0*)?\s+0(\.0*)?\s*$", "", self.path.read_text(encoding="utf-8", errors="replace"))
+        text = re.sub(
+            r"(?m)^\s*-gamma\s+0(\.0*)?\s+0(\.0*)?\s*$", "", self.path.read_text(encoding="utf-8", errors="replace")
+        )
+        text = re.sub(r"(?m)^(\s*-?log_k)\s*$", r"\1 0.0", text)  # three are blank in the wateq4f shipped
         masters, _, rest = text.partition("SOLUTION_SPECIES")
         names = {line.split()[0] for line in rest.partition("PHASES")[2].splitlines() if line[:1].isalpha()}
         self.solids = {ours: name for ours, theirs in SOLIDS.items() for name in theirs if name in names}
@@ -87,21 +96,17 @@ class OwnDatabase:
             (Path(folder) / "own.dat").write_text(text)
             self.code = phreeqpython.PhreeqPython(database="own.dat", database_directory=Path(folder))
         index = stock().index
-        rows = [row for row in index.equilibria if row.kind == "aqueous" or row.product in self.solids]
-        self.networks = NetworkFactory(rows, index.species)
+        self.rows = tuple(row for row in index.equilibria if row.kind == "aqueous" or row.product in self.solids)
+        self.networks = NetworkFactory(self.rows, index.species)
+        self.constants, self.solid_constants = constants(text), solids(text)
         elements = set(re.findall(r"(?m)^\s*([A-Z][a-z]?)\s+\S+\s+\S+\s+\S+", masters)) | {"H", "O"}
         self.salts = [salt for salt in SALTS if set(re.findall(r"[A-Z][a-z]?", salt)) <= elements]
 
     def compare(self, portions: Mapping[str, float]) -> Compared:
         """Both on the same salts (mol) in 1 kg of water."""
-        amounts: dict[str, float] = {}
-        for salt, portion in portions.items():
-            for token, count in SALTS[salt].items():
-                amounts[token] = amounts.get(token, 0.0) + portion * count
-        water = MOL_PER_KG + amounts.pop("H2O", 0.0)
-        network = self.networks.network(set(amounts) - {"H+"})
-        totals = np.array([[amounts.get(token, 0.0) for token in network.components]])
-        answer = solve(network, totals, np.array([water]), retain_gas=True)
+        amounts = _components(portions)
+        answer = self.ours(portions, self.networks)
+        network = answer.network
         metals = {token: METALS[token] for token in amounts if token in METALS}
         lines = ["DELETE", "-all", "END", "SOLUTION 1", "temp 25", "pH 7", "REACTION 1"]
         lines += [*(f"{salt} {portion!r}" for salt, portion in portions.items()), "1.0 moles in 1 step"]
@@ -114,16 +119,80 @@ class OwnDatabase:
         lines += [f"{10 * (n + 1)} PUNCH {what}" for n, what in enumerate(wanted)]
         try:
             self.code.ip.run_string("\n".join([*lines, "END", ""]))
-        except Exception as error:  # noqa: BLE001 - the library raises bare Exception
+        except Exception as error:
             return Compared(self.path.name, portions, answer, float("nan"), {}, {}, str(error).splitlines()[1][:120])
         values = [float(value) for value in list(self.code.ip.get_selected_output_array())[-1]]
-        gaps = {}
-        for (token, _), theirs in zip(metals.items(), values[2:], strict=False):
-            ours = float(answer.amounts[0] @ network.nu[:, network.component_index[token]])
-            if max(ours, theirs * values[1]) > LEAST:
-                gaps[token] = float(np.log10(max(ours, 1e-30)) - np.log10(max(theirs * values[1], 1e-30)))
-        solids = dict(zip(network.solids, values[2 + len(metals) :], strict=True))
-        return Compared(self.path.name, portions, answer, values[0], gaps, solids)
+        theirs = {token: value * values[1] for token, value in zip(metals, values[2:], strict=False)}
+        formed = dict(zip(network.solids, values[2 + len(metals) :], strict=True))
+        return Compared(self.path.name, portions, answer, values[0], theirs, formed)
+
+    def ours(self, portions: Mapping[str, float], networks: NetworkFactory) -> Solved:
+        """Our answer with the equilibria of ``networks``."""
+        amounts = _components(portions)
+        water = MOL_PER_KG + amounts.pop("H2O", 0.0)
+        network = networks.network(set(amounts) - {"H+"})
+        totals = np.array([[amounts.get(token, 0.0) for token in network.components]])
+        return solve(network, totals, np.array([water]), retain_gas=True)
+
+    def constants_that_differ(self, compared: Compared, most: int = 3) -> list[str]:
+        """The fewest constants (up to ``most``, found one after the other) that, taken over from theirs, make ours agree.
+
+        Where they do not suffice, a last entry says whether all of them together do, or only the activity model is left.
+        """
+        present = set(_components(compared.portions)) | {"H+", "H2O"}
+        rows = {row.product: row for row in self.rows if set(row.coefficients) <= present}
+        species = stock().index.species
+        changes: dict[str, Equilibrium | None] = {}
+        told: dict[str, str] = {}
+        for product, row in rows.items():
+            if row.kind == "aqueous":
+                found = self.constants.get(frozenset(row.coefficients.items()))
+                theirs = None if found is None else found[1]
+            else:
+                theirs = self.solid_constants.get(self.solids[product], ({}, row.log10_beta))[1]
+            if theirs is None:
+                changes[product], told[product] = None, f"{product} (log K {row.log10_beta:.2f}) is only in ours"
+            elif abs(theirs - row.log10_beta) > 0.03:
+                changes[product] = structs.replace(row, log10_beta=theirs)
+                told[product] = f"{product}: log K {row.log10_beta:.2f}, there {theirs:.2f}"
+        mine = {frozenset(row.coefficients.items()) for row in rows.values() if row.kind == "aqueous"}
+        for make, (name, beta) in self.constants.items():
+            parts = dict(make)
+            if make not in mine and set(parts) <= present:
+                new = Equilibrium(f"{name} there", "aqueous", parts, beta, "", Value(beta, "1", self.path.name))
+                changes[new.product], told[new.product] = new, f"{name} (log K {beta:.2f}) is only there"
+        taken: list[str] = []
+        off = compared.off
+        for _ in range(most):
+            trials = {}
+            for product, new in changes.items():
+                if product not in taken:
+                    trial = dict(rows)
+                    trial.pop(product, None)
+                    if new is not None:
+                        trial[product] = new
+                    answer = self.ours(compared.portions, NetworkFactory(tuple(trial.values()), species))
+                    trials[product] = replace(compared, answer=answer).off
+            if not trials or min(trials.values()) > 0.97 * off:
+                break
+            best = min(trials, key=lambda product: trials[product])
+            off = trials[best]
+            taken.append(best)
+            chosen = changes[best]
+            rows.pop(best, None)
+            if chosen is not None:
+                rows[best] = chosen
+            if off <= 1.0:
+                break
+        if off <= 1.0:
+            return [told[product] for product in taken]
+        for product, new in changes.items():
+            rows.pop(product, None)
+            if new is not None:
+                rows[product] = new
+        answer = self.ours(compared.portions, NetworkFactory(tuple(rows.values()), species))
+        rest = "several together" if replace(compared, answer=answer).off <= 1.0 else "activity coefficients"
+        return [*(told[product] for product in taken), rest]
 
 
 @dataclass
@@ -134,7 +203,7 @@ class Compared:
     portions: Mapping[str, float]
     answer: Solved
     their_pH: float
-    metals: dict[str, float]  # log units of the dissolved
+    their_metals: dict[str, float]  # mol dissolved
     their_solids: dict[str, float]
     complaint: str = ""
 
@@ -144,15 +213,39 @@ class Compared:
         return float(self.answer.pH[0]) - self.their_pH
 
     @property
+    def metals(self) -> dict[str, float]:
+        """log units of the dissolved, where either has more than LEAST."""
+        network, gaps = self.answer.network, {}
+        for token, theirs in self.their_metals.items():
+            ours = float(self.answer.amounts[0] @ network.nu[:, network.component_index[token]])
+            if max(ours, theirs) > LEAST:
+                gaps[token] = float(np.log10(max(ours, 1e-30)) - np.log10(max(theirs, 1e-30)))
+        return gaps
+
+    @property
+    def off(self) -> float:
+        """The largest gap in units of what is allowed."""
+        gaps = [abs(self.pH_gap) / PH_ALLOWED, *(abs(gap) / METAL_ALLOWED for gap in self.metals.values())]
+        return float(max(gaps))
+
+    @property
     def agrees(self) -> bool:
         """Within what is asked."""
-        return abs(self.pH_gap) <= PH_ALLOWED and all(abs(gap) <= METAL_ALLOWED for gap in self.metals.values())
+        return self.off <= 1.0
 
     def solids(self) -> dict[str, tuple[float, float]]:
         """Solid -> mol, ours and theirs, where either has some."""
         pairs = zip(self.answer.network.solids, self.answer.solids[0], strict=True)
         both = {name: (float(ours), self.their_solids.get(name, 0.0)) for name, ours in pairs}
         return {name: pair for name, pair in both.items() if max(pair) > 1e-9}
+
+
+def _components(portions: Mapping[str, float]) -> dict[str, float]:
+    amounts: dict[str, float] = {}
+    for salt, portion in portions.items():
+        for token, count in SALTS[salt].items():
+            amounts[token] = amounts.get(token, 0.0) + portion * count
+    return amounts
 
 
 @cache

@@ -18,7 +18,9 @@ def _told(compared: Compared) -> str:
 @pytest.mark.parametrize("number", range(4))
 def test_random_problems_with_the_same_constants(number: int) -> None:
     """40 each; all within 0.02 in pH and 1 % of every dissolved total."""
-    assert [_told(c) for c in (compare(*problem) for problem in random_problems(100 + number, 40)) if not c.agrees] == []
+    assert [
+        _told(c) for c in (compare(*problem) for problem in random_problems(100 + number, 40)) if not c.agrees
+    ] == []
 
 
 def test_chosen_problems_with_the_same_constants() -> None:

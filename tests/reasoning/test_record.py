@@ -70,11 +70,6 @@ def test_both_labels_are_found_one_link_away() -> None:
     assert every_label(record.paths(node)) == {"little", "much"}
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="behind an intermediate only the weightiest derivation of it is followed: a second label that supplies the "
-    "same thing two links back is in no path",
-)
 def test_both_labels_are_found_two_links_away() -> None:
     record = deep()
     node = record.fired(VESSEL, "two", "B -> C", {"B": 5.0}, {"C": 5.0}, 2)
