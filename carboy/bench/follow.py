@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 import numpy as np
 
 from carboy.bench.trace import Course
 from carboy.chemistry.heat import HeatBook, heat_book
-from carboy.chemistry.mixture import Array, Mixture, poured_together
-from carboy.chemistry.stock import WATER
+from carboy.chemistry.mixture import WATER_MOLAR_MASS, Array, Mixture, poured_together
+from carboy.chemistry.stock import PROTON, WATER
 from carboy.model.knowledge import Threshold
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.firing import Firing, Reactor
@@ -18,6 +20,7 @@ _MANY = 12  # lanes of ranges above which the path is followed more coarsely
 _WATER_TO_DISSOLVE = (
     3.0  # mol of water that takes up one mol of salt or base with its heat; common practice, the order of a hydrate
 )
+_SOLUBLE = 10.0  # g/L: a less soluble salt is left to the equilibria
 _CONTACT_SHARES = np.array(
     [0.03, 0.1, 0.25, 0.5, 0.75, 0.9, 0.97]
 )  # share of the vessel's liquid where the stream falls in
@@ -40,19 +43,23 @@ def along(
 ) -> Course:
     """The vessel along the dosing path. Every point is the vessel with that fraction of the addition in it, reacted.
 
+    Of a dry salt only what the water at hand can dissolve takes part; the rest lies there and is in the vessel afterwards.
+
     ``capacity_L`` given: sealed, with ``air_mol`` of air shut in.
     """
     fractions = path_fractions(vessel.lanes)
     points = len(fractions)
     start = vessel.repeated(points)
     dose = added.repeated(points).scaled(np.tile(fractions, vessel.lanes))
-    together = poured_together(start, dose)
+    wetted = _wetted(start, dose)
+    parts = [part.scaled(wetted) if part.neat else part for part in (start, dose)]
+    together = poured_together(*parts)
     if capacity_L is not None:
         together.headspace_L = np.maximum(np.repeat(capacity_L, points) - together.volume_L, 1e-3)
         together.air_mol = None if air_mol is None else np.repeat(air_mol, points)
-    return _reacted(
-        together, (vessel, added), (np.ones(points), fractions), fractions, reactor, surroundings, "minutes"
-    )
+    course = _reacted(together, parts, fractions, reactor, surroundings)
+    course.dissolved_share = wetted
+    return course
 
 
 def at_contact(
@@ -85,28 +92,22 @@ def stored(vessel: Mixture, reactor: Reactor, surroundings: Surroundings, slowes
 
 
 def _reacted(
-    together: Mixture,
-    sources: tuple[Mixture, Mixture],
-    weights: tuple[Array, Array],
-    fractions: Array,
-    reactor: Reactor,
-    surroundings: Surroundings,
-    slowest: str,
+    together: Mixture, sources: Sequence[Mixture], fractions: Array, reactor: Reactor, surroundings: Surroundings
 ) -> Course:
+    """React a course and add up its heat."""
     book = heat_book(together.stock)
-    mixture, firings = reactor.run(together, surroundings, slowest=slowest)
-    points = len(fractions)
+    mixture, firings = reactor.run(together, surroundings, slowest="minutes")
     before = together.zeros()
     unknown: list[str] = []
-    end = points - 1  # the nominal range at the end of the addition
+    end = len(fractions) - 1  # the nominal range at the end of the addition
     parts: list[tuple[str, float]] = []
-    for source, weight in zip(sources, weights, strict=True):
+    for source in sources:
         if source.amounts:
             held, missing = _held_by(book, source)
-            before = before + np.repeat(held, points) * np.tile(weight, source.lanes)
+            before = before + held
             unknown += missing
             if source.neat and not missing:
-                parts.append((f"dissolving {' and '.join(_names(source))}", float(held[0] * weight[-1])))
+                parts.append((f"dissolving {' and '.join(_names(source))}", float(held[end])))
     steps, missing = _reaction_heat(book, firings)
     after = book.of_speciation(mixture)
     dissolving = sum(share for _, share in parts)
@@ -115,7 +116,6 @@ def _reacted(
     heat = sum((kJ for _, kJ in steps), before - after)
     if together.neat:  # solids side by side: nothing dissolves
         heat = together.zeros()
-    heat = heat * _wetted(sources, together)
     capacity = np.maximum(book.heat_capacity(together), 1e-6)
     return Course(
         mixture,
@@ -147,23 +147,40 @@ def _names(source: Mixture) -> list[str]:
     return [source.stock.index.substances[name].name for name in source.neat]
 
 
-def _wetted(sources: tuple[Mixture, Mixture], together: Mixture) -> Array:
-    """Share of what was dry or neat that the water at hand can take up, ``[L]``: the first drops on a heap do not dissolve the heap."""
-    dry = together.zeros()
-    for source in sources:
-        for name in source.neat:
-            if together.stock.index.substances[name].yields:
-                dry = dry + together.labelled.get(name, together.zeros())
-    return np.clip(
-        np.divide(together.total(WATER), _WATER_TO_DISSOLVE * dry, out=np.ones_like(dry), where=dry > 0), 0.0, 1.0
-    )
+def _wetted(vessel: Mixture, dose: Mixture) -> Array:
+    """Share of what was dry that the water at hand can take up, ``[lanes]``: the first drops on a heap do not dissolve the heap.
+
+    A salt of known solubility dissolves to saturation, and with as much acid or base as there is beside it; anything else takes
+    _WATER_TO_DISSOLVE mol of water per mol.
+    """
+    needed = np.zeros(vessel.lanes)
+    water = np.zeros(vessel.lanes)
+    for part, other in ((vessel, dose), (dose, vessel)):
+        own = np.zeros(part.lanes)  # water that a hydrate or base holds in itself is not there to dissolve it
+        for name in part.neat:
+            substance = part.stock.index.substances[name]
+            if not substance.yields or set(substance.yields) == {name}:
+                continue
+            moles = part.labelled[name]
+            own = own + max(part.stock.yield_of(name).get(WATER, 0.0), 0.0) * moles
+            per_mole = _WATER_TO_DISSOLVE
+            if substance.solubility is not None and _SOLUBLE <= substance.solubility.magnitude < np.inf:
+                molar = part.stock.molar_mass(name)
+                per_mole = max(per_mole, 1000 / WATER_MOLAR_MASS * molar / substance.solubility.magnitude)
+            reacting = np.abs(other.total(PROTON)) if not other.neat else np.zeros(part.lanes)
+            needed = needed + per_mole * np.maximum(moles - reacting, 0.0)
+        water = water + np.maximum(part.total(WATER) - own, 0.0)
+    return np.clip(np.divide(water, needed, out=np.ones_like(needed), where=needed > 0), 0.0, 1.0)
 
 
 def _held_by(book: HeatBook, source: Mixture) -> tuple[Array, list[str]]:
-    """kJ ``[L]`` of a content before pouring, against its components at infinite dilution; and names whose heat of dissolving is unknown."""
+    """kJ ``[lanes]`` of a content before pouring, against its components at infinite dilution; and names whose heat of dissolving is unknown
+    (these are taken to dissolve without heat to the molecule or ions that they are made of)."""
     if not source.neat:
         return book.of_speciation(source), []
     missing = [source.stock.index.substances[name].name for name, value in source.neat.items() if value is None]
-    if missing:
-        return book.of_speciation(source), missing
-    return -sum(((value or 0.0) * source.labelled[name] for name, value in source.neat.items()), source.zeros()), []
+    held = source.zeros()
+    for name, value in source.neat.items():
+        dissolving = -book.of_molecule(name) if value is None else value
+        held = held - dissolving * source.labelled[name]
+    return held, missing

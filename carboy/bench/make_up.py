@@ -68,11 +68,15 @@ class Bench:
 
     def density(self, substance_id: str, mass_fraction: Array) -> Array:
         """g/mL of a solution in water, between the strengths whose density the graph knows."""
+        plain = 1.0 / ((1.0 - mass_fraction) / WATER_DENSITY + mass_fraction / DISSOLVED_SALT_DENSITY)
         points = self._solution_points.get(substance_id)
-        if points:
-            grid = [(0.0, WATER_DENSITY), *(point for point in points if point[0] > 0.005)]
-            return np.interp(mass_fraction, [point[0] for point in grid], [point[1] for point in grid])
-        return 1.0 / ((1.0 - mass_fraction) / WATER_DENSITY + mass_fraction / DISSOLVED_SALT_DENSITY)
+        if not points:
+            return plain
+        grid = [(0.0, WATER_DENSITY), *(point for point in points if point[0] > 0.005)]
+        within = np.interp(mass_fraction, [point[0] for point in grid], [point[1] for point in grid])
+        last, dense = grid[-1]
+        beyond = dense + plain - 1.0 / ((1.0 - last) / WATER_DENSITY + last / DISSOLVED_SALT_DENSITY)
+        return np.where(mass_fraction > last, beyond, within)
 
     def make_up(self, portion: Portion, key: str, temperature_C: float) -> MadeUp:
         """The content of ``portion``. ``key`` names it in the ranges ("bottle rinse-14", "portion 2")."""
@@ -372,12 +376,22 @@ class Bench:
         known = content.total(PROTON)
         span = np.maximum(20.0 * content.volume_L, 1e-6)
 
-        def error(excess: Array) -> Array:
-            return target - content.with_amounts({**content.amounts, PROTON: excess}).pH  # rises with the excess
+        def with_excess(excess: Array) -> dict[str, Array]:
+            amounts = {**content.amounts, PROTON: excess}
+            charge = sum((self._charge(token) * amount for token, amount in amounts.items()), content.zeros())
+            amounts[anion] = amounts.get(anion, content.zeros()) + np.maximum(charge, 0.0)
+            amounts[cation] = amounts.get(cation, content.zeros()) + np.maximum(-charge, 0.0)
+            return amounts
 
-        found = bracketed_root(error, known - span, known + span, tolerance=_PH_TOLERANCE)
+        def error(excess: Array) -> Array:
+            return target - content.with_amounts(with_excess(excess)).pH  # rises with the excess
+
         anion, cation = self._of_class("unspecified-anion"), self._of_class("unspecified-cation")
-        added = found - known
-        content.amounts[PROTON] = found
-        content.amounts[anion] = content.total(anion) + np.maximum(added, 0.0)
-        content.amounts[cation] = content.total(cation) + np.maximum(-added, 0.0)
+        found = bracketed_root(error, known - span, known + span, tolerance=_PH_TOLERANCE)
+        content.amounts = with_excess(found)
+
+    def _charge(self, token: str) -> float:
+        if token == PROTON:
+            return 1.0
+        record = self.index.species.get(token)
+        return 0.0 if record is None else float(record.charge)

@@ -31,6 +31,7 @@ class Course:
     reached_C: Array  # without loss, [lanes]
     unknown_heat: tuple[str, ...] = ()
     capacity_kJ_K: Array = field(default_factory=lambda: np.zeros(0))  # [lanes]
+    dissolved_share: Array | None = None  # of what was dry, the share that the water at hand took up, [lanes]
     heat_parts: tuple[tuple[str, float], ...] = ()  # what the heat of the nominal end comes from, kJ
 
     @property
@@ -73,6 +74,5 @@ class StepTrace:
     duration_s: Array | None = None
     notes: list[str] = field(default_factory=list)
     sludge: Mixture | None = None  # a filter's cake
-    left_before: Mixture | None = None  # the vessel as it was, left standing by itself: what storage is compared with
-    left_added: Mixture | None = None  # the addition, left standing by itself
-    left_firings: tuple[Firing, ...] = ()  # what would go on in either of them by itself
+    left_alone: tuple[Mixture, ...] = ()  # what was poured, each left standing by itself: what storage is compared with
+    left_firings: tuple[Firing, ...] = ()  # what would go on in each of them by itself

@@ -148,7 +148,7 @@ class Walker:
             portion = step.portion if isinstance(step, Add | Rinse) else None
             if portion is not None:
                 made[f"step {number}"] = bench.make_up(portion, f"step {number}", temperature)
-            if isinstance(step, Add) and step.part is not None:
+            if isinstance(step, Add | Transfer) and step.part is not None:
                 bench.ranges.draw(f"part taken in step {number}", step.part.low, step.part.high)
         for vessel in case.vessels:
             for place, portion in enumerate(vessel.holds):
@@ -284,6 +284,8 @@ class Walker:
         for token in (*content.amounts, *content.labelled):
             state.pours[token] = state.pours.get(token, frozenset()) | {number}
         if made is not None and portion is not None:
+            whole = float(made.mixture.mass_g[0])
+            part = float(content.mass_g[0]) / whole if whole > 0 else 1.0
             for identity, equation, tokens in made.parts:
                 walk.record.poured(
                     state.spec.name,
@@ -291,7 +293,7 @@ class Walker:
                     if len(made.parts) == 1
                     else f"{self.stock.index.substances[identity].name} in {portion.text}",
                     equation,
-                    _brought(tokens),
+                    _brought(tokens, part),
                     number,
                 )
             state.labels.append(portion.text)
@@ -322,7 +324,7 @@ class Walker:
                 air_mol=state.air_mol,
             )
             contact = at_contact(before, added, self.reactor, surroundings, self.stock.index.thresholds)
-            after = path.mixture.take(path.last())
+            after = _with_rest(path, before, added)
             after.temperature_C = np.minimum(path.reached_C[path.last()], 100.0)
             self._record(path.firings, state, number, walk)
         over_capacity = after.volume_L > state.capacity_L * (1 + 1e-6)
@@ -383,13 +385,18 @@ class Walker:
         trace.storage = stored(whole, self.reactor, surroundings, "days")
         self._record(trace.storage.firings, state, trace.number, walk)
         alone = Surroundings(surroundings.cover, surroundings.container, surroundings.container_words)
-        parts = [part.take(np.arange(part.lanes)) for part in (trace.before, trace.added)]
+        poured = [
+            one.added
+            for one in walk.steps
+            if one.vessel == trace.vessel and one.added is not None and one.added.amounts
+        ]
+        parts = [part.take(np.arange(part.lanes)) for part in poured]
         if whole.headspace_L is not None:
             for part in parts:
                 part.headspace_L, part.air_mol = whole.headspace_L, whole.air_mol
-        first, second = (stored(part, self.reactor, alone, "days") for part in parts)
-        trace.left_before, trace.left_added = first.mixture, second.mixture
-        trace.left_firings = (*first.firings, *second.firings)
+        courses = [stored(part, self.reactor, alone, "days") for part in parts]
+        trace.left_alone = tuple(course.mixture for course in courses)
+        trace.left_firings = tuple(firing for course in courses for firing in course.firings)
 
     def _record(self, firings: list[Firing], state: VesselState, number: int, walk: Walk) -> None:
         for firing in firings:
@@ -458,7 +465,7 @@ class Walker:
             before=before if state.filled else None,
             storage=course,
             duration_s=duration,
-            left_before=before if state.filled else None,
+            left_alone=(before,) if state.filled else (),
         )
         self._settle(state, after, walk, trace)
 
@@ -509,7 +516,8 @@ class Walker:
         whole = source.content.volume_L
         share = np.ones_like(whole)
         if step.part is not None:
-            share = np.minimum(0.5 * (step.part.low + step.part.high) / np.maximum(whole, 1e-9), 1.0)
+            wanted = walk.ranges.draw(f"part taken in step {number}", step.part.low, step.part.high)
+            share = np.minimum(wanted / np.maximum(whole, 1e-9), 1.0)
         elif step.heel is not None:
             share = np.clip(1.0 - step.heel.high / np.maximum(whole, 1e-9), 0.0, 1.0)
         moved = source.content.scaled(share)
@@ -598,11 +606,28 @@ class Walker:
         )
 
 
-def _brought(tokens: dict[str, float]) -> dict[str, float]:
-    """What a labelled substance brings, with protons that it takes away told as hydroxide that it brings."""
-    brought = {token: count for token, count in tokens.items() if token != WATER and count > 0}
+def _with_rest(path: Course, before: Mixture, added: Mixture) -> Mixture:
+    """The vessel at the end of a path, with what still lies undissolved in it."""
+    after = path.mixture.take(path.last())
+    if path.dissolved_share is not None:
+        rest = 1.0 - path.dissolved_share[path.last()]
+        if np.any(rest > 0):
+            for part in (before, added):
+                if part.neat:
+                    for token, amount in part.amounts.items():
+                        after.amounts[token] = after.total(token) + rest * amount
+                    for name, amount in part.labelled.items():
+                        after.labelled[name] = after.labelled.get(name, after.zeros()) + rest * amount
+                    after.volume_L = after.volume_L + rest * part.volume_L
+                    after.mass_g = after.mass_g + rest * part.mass_g
+    return after
+
+
+def _brought(tokens: dict[str, float], part: float) -> dict[str, float]:
+    """What ``part`` of a labelled substance brings, with protons that it takes away told as hydroxide that it brings."""
+    brought = {token: part * count for token, count in tokens.items() if token != WATER and count > 0}
     if tokens.get(PROTON, 0.0) < 0:
-        brought[HYDROXIDE] = -tokens[PROTON]
+        brought[HYDROXIDE] = -part * tokens[PROTON]
     return brought
 
 

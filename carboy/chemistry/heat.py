@@ -132,6 +132,24 @@ class HeatBook:
         after = self.of_reaction(self.stock.yield_of(substance_id))
         return None if after is None else after - substance.formation.magnitude
 
+    def of_molecule(self, substance_id: str) -> float:
+        """kJ per mol, against its components, of the species that a substance is made of when it dissolves as a molecule or zwitterion: the
+        formed species with the substance's own components, or all but its spectator ions. Zero where there is none."""
+        wanted = {part: count for part, count in self.stock.yield_of(substance_id).items() if part != WATER}
+        best = 0.0
+        most = 1
+        for product, made in self.stock.formation.items():
+            parts = {part: count for part, count in made.coefficients.items() if part != WATER}
+            if made.kind != "aqueous" or made.enthalpy_formation is None or len(parts) <= most:
+                continue
+            spectators = [part for part in wanted if part not in parts]
+            if (
+                all(abs(wanted.get(part, 0.0) - count) < 1e-9 for part, count in parts.items())
+                and PROTON not in spectators
+            ):
+                best, most = self.of_forming(product) or 0.0, len(parts)
+        return best
+
     def heat_capacity(self, mixture: Mixture) -> Array:
         """kJ/K of the content."""
         water = mixture.water_kg

@@ -58,7 +58,11 @@ class ChemicalStock:
         known = self._carriers.get(molecule)
         if known is None:
             inner = dict(self._make(molecule))
-            makes = ((other, dict(self._make(other))) for other in self._with_component.get(next(iter(inner)), ()) if other != molecule)
+            makes = (
+                (other, dict(self._make(other)))
+                for other in self._with_component.get(next(iter(inner)), ())
+                if other != molecule
+            )
             adducts = [other for other, make in makes if self._adds_an_anion(make, inner)]
             known = self._carriers[molecule] = (molecule, *adducts)
         return known

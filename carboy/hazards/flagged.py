@@ -24,6 +24,7 @@ from carboy.text.formulas import elements, molar_mass
 GAS_KINDS: tuple[Kind, ...] = ("toxic-gas", "flammable-gas", "asphyxiant-gas", "oxygen")
 COMPUTED: tuple[Kind, ...] = (*GAS_KINDS, "heat", "foam", "pressure", "remobilised")
 _END_STATE_ONLY: tuple[Kind, ...] = ("incomplete", "remobilised")
+Mark = tuple[str, int, tuple[tuple[str, str], ...]]  # one flag of one rule with what it bound
 _GRADES = {"": DANGER, "danger": DANGER, "warning": WARNING, "note": NOTE}
 _ANYWAY_AT_CONTACT: tuple[Kind, ...] = ("explosive", "fire")
 
@@ -152,7 +153,7 @@ def class_drafts(
     """Drafts for flags without a computed magnitude; flags with one lend their words to the drafts in ``computed``."""
     drafts: dict[tuple[str, ...], Draft] = {}
     for where, course in courses(trace):
-        standing = _standing(trace, rules, stock) if trace.added is not None else {}
+        standing = _standing(trace, rules, stock, where) if trace.added is not None else {}
         for raised in raised_flags(course, trace, where, rules, stock):
             flag = raised.flag
             if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
@@ -191,15 +192,17 @@ def _gas_of(term: str, bound: dict[str, str], stock: ChemicalStock) -> str:
     return named_by(term, bound, stock).removesuffix("(g)")
 
 
-def _standing(
-    trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock
-) -> dict[tuple[str, tuple[tuple[str, str], ...]], float]:
+def _mark(rule: Rule, flag: Flag, bound: dict[str, str]) -> Mark:
+    return rule.id, rule.flags.index(flag), tuple(sorted(bound.items()))
+
+
+def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, where: Where) -> dict[Mark, float]:
     """Flags that stood already in the vessel or in the bottle, with the grams that weighed them; what each would do if left by itself
     stands whatever its weight."""
-    stood: dict[tuple[str, tuple[tuple[str, str], ...]], float] = {
-        (firing.rule.id, tuple(sorted(firing.bound.items()))): np.inf for firing in trace.left_firings
+    stood: dict[Mark, float] = {
+        _mark(firing.rule, flag, firing.bound): np.inf for firing in trace.left_firings for flag in firing.rule.flags
     }
-    for mixture in (trace.before, trace.added):
+    for mixture in trace.left_alone if where == "storage" else (trace.before, trace.added):
         if mixture is None or not mixture.amounts:
             continue
         view = View(mixture, trace.surroundings)
@@ -208,7 +211,7 @@ def _standing(
                 continue
             for flag in rule.flags:
                 for names, mask, grams, _ in _matches(rule, flag, view, stock):
-                    key = (rule.id, tuple(sorted(names.items())))
+                    key = _mark(rule, flag, names)
                     stood[key] = max(stood.get(key, 0.0), float(grams[mask].max()))
     return stood
 
@@ -308,7 +311,7 @@ def _class_draft(
     course: Course,
     stock: ChemicalStock,
     scale: Scale,
-    standing: dict[tuple[str, tuple[tuple[str, str], ...]], float],
+    standing: dict[Mark, float],
 ) -> Draft | None:
     flag, rule = raised.flag, raised.rule
     grams = np.where(raised.mask, raised.grams, 0.0)
@@ -333,7 +336,7 @@ def _class_draft(
             scale["reactive-danger-amount"],
         )
     levels = np.where(raised.mask, np.minimum(levels, _GRADES[flag.grade]), 0)
-    stood = standing.get((rule.id, tuple(sorted(raised.bound.items()))))
+    stood = standing.get(_mark(rule, flag, raised.bound))
     if (
         stood is not None
         and (raised.firing is None or np.isinf(stood))

@@ -182,8 +182,10 @@ def _standing(
     """Molecules, mol that can leave and pressure of the vessel and of the addition before they met, laid out over the course."""
     molecules, leaving, pressure = (np.zeros(course.mixture.lanes) for _ in range(3))
     ones = np.ones(course.points)
-    parts = (trace.left_before, trace.left_added) if where == "storage" else (trace.before, trace.added)
-    for mixture, along_path in zip(parts, (ones, course.fractions), strict=True):
+    parts: list[tuple[Mixture | None, Array]] = [(trace.before, ones), (trace.added, course.fractions)]
+    if where == "storage":
+        parts = [(part, ones) for part in trace.left_alone]
+    for mixture, along_path in parts:
         if mixture is None or not mixture.amounts:
             continue
         if mixture.neat:

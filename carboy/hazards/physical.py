@@ -32,6 +32,7 @@ def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     watery = course.table(course.mixture.water_fraction) > 0.05
     boils = warmed & watery & (reached >= BOILING_WATER - scale["boiling-margin"])
     levels = np.where(boils, DANGER, levels)
+    levels = np.where(course.table(course.heat_kJ) < scale["least-heat"], np.minimum(levels, NOTE), levels)
     reasons: list[str] = []
     for name, amount in course.unreacted.labelled.items():
         onset = stock.index.substances[name].onset

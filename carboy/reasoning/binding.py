@@ -77,7 +77,7 @@ class View:
             yield Carrier(token, "solid", classes.get(token, frozenset()), amount)
         for name in mixture.labelled:
             substance = self.stock.index.substances[name]
-            if substance.yields and classes.get(name):
+            if set(substance.yields) - {name} and classes.get(name):
                 amount = mixture.remaining(name)
                 if np.any(amount > TRACE):
                     yield Carrier(name, "dissolved", classes[name], amount, labelled=True)
@@ -96,6 +96,8 @@ class View:
 
     def bindings(self, rule: Rule) -> Iterator[Binding]:
         """Every way to bind the variables of the ``needs`` of a rule, one thing never under two names."""
+        if not self._possible(rule):
+            return
         asked = [condition for condition in rule.needs if isinstance(condition, Bound)]
         choices = [self.having(one.classes, one.but_not, one.where) for one in asked]
         if not all(choices):
@@ -103,6 +105,21 @@ class View:
         for picked in product(*choices):
             if len({carrier.token for carrier in picked}) == len(picked):
                 yield {one.variable: carrier for one, carrier in zip(asked, picked, strict=True)}
+
+    def _possible(self, rule: Rule) -> bool:
+        """Whether the things and the vessel that a rule needs are there at all, before any figure is looked at."""
+        for one in rule.needs:
+            if isinstance(one, Present) and not one.negated and one.term not in self._by_class:
+                formed = one.term in self.stock.index.species and self.stock.kind(one.term) in (
+                    "aqueous",
+                    "gas",
+                    "water",
+                )
+                if not formed or not (self.mixture.amount_of(one.term) > TRACE).any():
+                    return False
+            elif isinstance(one, Vessel | Earlier) and not self.holds(one, {}).any():
+                return False
+        return True
 
     def amount(self, term: str, binding: Binding) -> Array:
         """mol of a variable's carrier, a species, a substance, or everything of a class."""

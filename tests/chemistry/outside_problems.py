@@ -10,6 +10,7 @@ from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
+from msgspec import structs
 
 from carboy.chemistry.activity import DAVIES_HELD_FROM
 from carboy.chemistry.equilibrium import Solved
@@ -82,8 +83,8 @@ class Compared:
         )
 
 
-def compare(name: str, draw: Draw) -> Compared:
-    """Both codes on one problem."""
+def compare(name: str, draw: Draw, code: Reference | None = None) -> Compared:
+    """Both codes on one problem; ``code`` None is :func:`reference`."""
     answer = draw.solve()
     totals = dict(zip(draw.network.components, draw.totals, strict=True))
     gas = ""
@@ -92,10 +93,54 @@ def compare(name: str, draw: Draw) -> Compared:
     elif draw.network.gases and draw.vessel == "sealed":
         gas = f"-fixed_volume\n-volume {draw.headspace_L!r}\n-temperature 25"
     try:
-        outcome = reference().run({token: float(n) for token, n in totals.items()}, gas=gas, water_mol=draw.water_mol)
+        outcome = (code or reference()).run({token: float(n) for token, n in totals.items()}, gas=gas, water_mol=draw.water_mol)
     except Exception as error:
         return Compared(name, draw, answer, None, str(error).strip().splitlines()[0][:200])
     return Compared(name, draw, answer, outcome)
+
+
+def compare_strong(name: str, draw: Draw) -> Compared:
+    """Both codes beyond Davies: our activity coefficients, at the ionic strength that we found, go into the constants of
+    the reference code, which then has none of its own. Its pH is of the molality, and is brought to ours.
+    """
+    answer = draw.solve()
+    network = answer.network
+    size = len(network.components)
+    strength = float(answer.ionic_strength[0])
+    held = min(strength, DAVIES_HELD_FROM)
+    ion = -0.509 * (np.sqrt(held) / (1.0 + np.sqrt(held)) - 0.3 * held)
+    log_g = np.where(network.charge == 0.0, 0.1 * min(strength, 5.0), ion * network.charge**2)
+    shift = dict(zip(network.species[size:], network.nu[size:] @ log_g[:size] - log_g[size:], strict=True))
+    shift |= dict(zip(network.solids, network.solid_nu @ log_g[:size], strict=True))
+    shift |= dict(zip(network.gases, network.gas_nu @ log_g[:size], strict=True))
+    rows = [
+        structs.replace(row, log10_beta=row.log10_beta + float(shift[row.product]))
+        for row in stock().index.equilibria
+        if row.product in shift
+    ]
+    species = stock().index.species
+    code = Reference(rows, {token: species[token].charge for token in network.components[1:]}, ideal=True)
+    compared = compare(name, draw, code)
+    if compared.outcome is not None:
+        compared.outcome.pH -= float(log_g[0])
+    return compared
+
+
+def strong_problems(seed: int, count: int) -> Iterator[tuple[str, Draw]]:
+    """Two to five substances of the graph, 0.1 to 2.5 mol, from where the models part up to I = 8 mol/kg."""
+    made = number = 0
+    while made < count:
+        random = np.random.default_rng((seed, number))
+        number += 1
+        names = [str(name) for name in random.choice(soluble(), size=int(random.integers(1, 4)), replace=False)]
+        names += [str(name) for name in random.choice(_ADJUST, size=int(random.integers(1, 3)), replace=False)]
+        portions = {name: float(10.0 ** random.uniform(-1.0, 0.4)) for name in names}
+        drawn = Draw("strong", ("open", "sealed", "retained")[number % 3], portions, headspace_L=1.0)
+        answer = drawn.solve()
+        wet = answer.water_kg[0] > 0.5 and answer.amounts[0].sum() / answer.water_kg[0] < 15.0
+        if DAVIES_HELD_FROM < answer.ionic_strength[0] < 8.0 and wet:
+            made += 1
+            yield f"strong {number - 1}", drawn
 
 
 def random_problems(seed: int, count: int) -> Iterator[tuple[str, Draw]]:

@@ -62,7 +62,12 @@ class Outcome:
 class Reference:
     """PHREEQC with a database written from ``equilibria`` over ``components`` (token to charge)."""
 
-    def __init__(self, equilibria: Sequence[Equilibrium], components: Mapping[str, int]) -> None:
+    def __init__(
+        self, equilibria: Sequence[Equilibrium], components: Mapping[str, int], *, ideal: bool = False
+    ) -> None:
+        """``ideal``: all activity coefficients are one, for constants that hold them already."""
+        # An ion of endless size has no Debye-Hueckel term.
+        self.gamma = "-gamma 1e12 0\n" if ideal else ""
         self.components = {token: charge for token, charge in components.items() if token not in ("H+", "H2O")}
         self.element = {
             token: f"X{ascii_lowercase[number // 26]}{ascii_lowercase[number % 26]}"
@@ -119,17 +124,18 @@ class Reference:
         return [f"{sign * n:g} {names.get(t) or self.formula[t]}" for t, n in coefficients.items() if sign * n > 0]
 
     def _database(self) -> str:
-        masters, species, phases = _HEAD, _SPECIES, "PHASES\n"
+        masters, phases = _HEAD, "PHASES\n"
+        species = _SPECIES.replace("H+ = H+\nlog_k 0.\n", "H+ = H+\nlog_k 0.\n" + self.gamma)
         first = next(iter(self.components))
         for token in self.components:
             masters += f"{self.element[token]} {self.formula[token]} 0. {self.element[token]} 10.0\n"
-            species += f"{self.formula[token]} = {self.formula[token]}\nlog_k 0.\n"
+            species += f"{self.formula[token]} = {self.formula[token]}\nlog_k 0.\n" + self.gamma
         masters += f"Alkalinity {self.formula[first]} 1. {self.element[first]} 10.0\n"
         for number, row in enumerate(self.rows):
             given, made = self._side(row.coefficients, 1.0), self._side(row.coefficients, -1.0)
             if row.kind == "aqueous":
                 species += f"{' + '.join(given)} = {' + '.join([self.formula[row.product], *made])}\n"
-                species += f"log_k {row.log10_beta!r}\n"
+                species += f"log_k {row.log10_beta!r}\n" + self.gamma
             else:
                 name = f"Ph{number}" + ("(g)" if row.kind == "gas" else "")
                 phases += f"{name}\n{' + '.join([self._formula(row.coefficients), *made])} = {' + '.join(given)}\n"
