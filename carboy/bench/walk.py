@@ -310,7 +310,10 @@ class Walker:
         path: Course | None = None
         contact: Course | None = None
         if before is None:
-            after, firings = self.reactor.run(added.take(np.arange(added.lanes)), self._surroundings(state, None))
+            start = added.take(np.arange(added.lanes))
+            after, firings = self.reactor.run(start, self._surroundings(state, None))
+            still = np.zeros(added.lanes)
+            path = Course(after, start, firings, np.ones(1), still, start.temperature_C, capacity_kJ_K=still)
             self._record(firings, state, number, walk)
         else:
             if sealed:

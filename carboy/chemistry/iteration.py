@@ -122,28 +122,30 @@ def rough_solids(terms: Terms, lanes: Lanes, state: State, rounds: int) -> None:
     solids = terms.solid_nu.shape[0]
     if solids == 0:
         return
-    medium = Medium.at(terms, state.strength, state.molality)
+    excess = ln_saturation(terms, lanes, state, Medium.at(terms, state.strength, state.molality))
     left = np.maximum(lanes.totals, 0.0)
     every = np.arange(lanes.number.size)
     uses = terms.solid_nu > 0.0
     uses[:, 0] = False
     divisor = np.where(uses, terms.solid_nu, 1.0)
-    usable = uses.any(axis=1)
+    excess[:, ~uses.any(axis=1)] = -np.inf
     for _ in range(min(rounds, solids)):
-        excess = ln_saturation(terms, lanes, state, medium)
-        excess[:, ~usable] = -1.0
         solid = excess.argmax(axis=1)
         over = excess[every, solid]
         which = np.flatnonzero(over > 0.0)
         if which.size == 0:
             return
-        solid = solid[which]
+        if which.size < over.size:
+            solid, over = solid[which], over[which]
+        rows = terms.solid_nu[solid]
         shares = np.where(uses[solid], left[which] / divisor[solid], np.inf)
         amount = np.maximum(shares.min(axis=1), 0.0)
         scarce = shares <= (1.0 + 1e-3) * amount[:, None]  # at an equivalence point more than one
-        state.x[which] -= scarce * (over[which] / (scarce * terms.solid_nu[solid]).sum(axis=1))[:, None]
+        lowered = scarce * (over / (scarce * rows).sum(axis=1))[:, None]
+        state.x[which] -= lowered
+        excess[which] -= lowered @ terms.solid_nu.T
         state.phases[which, solid] += amount
-        left[which] = np.maximum(left[which] - amount[:, None] * terms.solid_nu[solid], 0.0)
+        left[which] = np.maximum(left[which] - amount[:, None] * rows, 0.0)
 
 
 def _solve(matrix: FloatArray, right: FloatArray) -> FloatArray:
@@ -365,6 +367,11 @@ class Elimination:
         return Elimination(self.free[which], self.pivot[which], self.reduced[which], self.hydration[which])
 
 
+def _kept_near(value: FloatArray, change: FloatArray) -> FloatArray:
+    """``value + change``, not below a fifth nor far above five times of it."""
+    return np.minimum(np.maximum(value + change, 0.2 * value), 5.0 * value + 0.1)
+
+
 def finish(
     terms: Terms, lanes: Lanes, state: State, present: BoolArray, *, most_turns: int = 40
 ) -> tuple[BoolArray, IntArray]:
@@ -518,12 +525,8 @@ def finish(
             released = np.where(hydrates, (water_row * step).sum(axis=1) * part, 0.0)
             state.phases[:, :solids] -= released[:, None] * elimination.hydration
         state.phases[:, -1] = np.where(bubbling, bubbled + part * step[:, at_b], 0.0)
-        state.strength = np.clip(
-            state.strength + part * step[:, at_i], 0.2 * state.strength, 5.0 * state.strength + 0.1
-        )
-        state.molality = np.clip(
-            state.molality + part * step[:, at_m], 0.2 * state.molality, 5.0 * state.molality + 0.1
-        )
+        state.strength = _kept_near(state.strength, part * step[:, at_i])
+        state.molality = _kept_near(state.molality, part * step[:, at_m])
         state.ln_water += part * step[:, at_w]
         turns[live] = turn + 1
         # Phases that should go or come, once the lane is near a solution of its present set.

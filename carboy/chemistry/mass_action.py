@@ -256,9 +256,12 @@ class Medium:
 
 def ln_constants(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
     """ln of what each term would be with all components at unit activity, [L, J]."""
-    return np.stack((-medium.ion, -medium.neutral, medium.water, state.ln_water), axis=1) @ terms.medium_across + (
-        lanes.ln_beta
-    )
+    given = np.empty((lanes.number.size, 4))
+    given[:, 0] = -medium.ion
+    given[:, 1] = -medium.neutral
+    given[:, 2] = medium.water
+    given[:, 3] = state.ln_water
+    return given @ terms.medium_across + lanes.ln_beta
 
 
 def amounts_of(terms: Terms, state: State, constants: FloatArray) -> FloatArray:

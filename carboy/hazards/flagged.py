@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -202,10 +202,11 @@ def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, w
     stood: dict[Mark, float] = {
         _mark(firing.rule, flag, firing.bound): np.inf for firing in trace.left_firings for flag in firing.rule.flags
     }
+    own = replace(trace.surroundings, container="", container_words=frozenset())  # its own bottle, which it stood
     for mixture in trace.left_alone if where == "storage" else (trace.before, trace.added):
         if mixture is None or not mixture.amounts:
             continue
-        view = View(mixture, trace.surroundings)
+        view = View(mixture, own)
         for rule in rules:
             if rule.off or rule.does:
                 continue

@@ -83,7 +83,11 @@ class Judge:
             *pressure_drafts(trace, self.stock, self.scale),
             *remobilised_drafts(trace, self.stock, self.scale),
         ]
-        return [*computed, *class_drafts(trace, self.rules, self.stock, self.scale, computed)]
+        drafts = [*computed, *class_drafts(trace, self.rules, self.stock, self.scale, computed)]
+        if trace.before is None and trace.added is not None:
+            # a bottle poured into an empty vessel is what it was; only what it does to the vessel, or in itself at once, is news
+            drafts = [draft for draft in drafts if draft.level > NOTE]
+        return drafts
 
     def _merged(self, drafts: list[Draft]) -> list[Draft]:
         """One draft per kind and species; the gravest leads, then the one along the path; the others lend rules and measures."""

@@ -10,7 +10,14 @@ from collections import Counter
 
 import numpy as np
 
-from tests.chemistry.outside_problems import Compared, chosen_problems, compare, random_problems
+from tests.chemistry.outside_problems import (
+    Compared,
+    chosen_problems,
+    compare,
+    compare_strong,
+    random_problems,
+    strong_problems,
+)
 from tests.chemistry.own_databases import databases, own_problems
 
 SEED = 2026
@@ -18,8 +25,12 @@ SEED = 2026
 
 def same_constants(count: int) -> None:
     """How far apart the answers are, and each that is further than asked."""
-    for kind, problems in (("random", random_problems(SEED, count)), ("chosen", chosen_problems())):
-        answers = [compare(*problem) for problem in problems]
+    for kind, problems, asked in (
+        ("random", random_problems(SEED, count), compare),
+        ("chosen", chosen_problems(), compare),
+        ("strong", strong_problems(SEED, max(count // 5, 1)), compare_strong),
+    ):
+        answers = [asked(*problem) for problem in problems]
         answered = [c for c in answers if c.outcome is not None]
         apart = [c for c in answers if not c.agrees]
         pH = np.abs([c.pH_gap for c in answered])

@@ -7,7 +7,14 @@ from __future__ import annotations
 
 import pytest
 
-from tests.chemistry.outside_problems import Compared, chosen_problems, compare, random_problems
+from tests.chemistry.outside_problems import (
+    Compared,
+    chosen_problems,
+    compare,
+    compare_strong,
+    random_problems,
+    strong_problems,
+)
 from tests.chemistry.own_databases import OwnDatabase, databases, own_problems
 
 
@@ -26,6 +33,13 @@ def test_random_problems_with_the_same_constants(number: int) -> None:
 def test_chosen_problems_with_the_same_constants() -> None:
     answers = [compare(*problem) for problem in chosen_problems()]
     assert len(answers) >= 60
+    assert [_told(c) for c in answers if not c.agrees] == []
+
+
+def test_strong_problems_with_the_same_constants_and_coefficients() -> None:
+    """Ionic strength 0.4 to 8 mol/kg."""
+    answers = [compare_strong(*problem) for problem in strong_problems(3, 40)]
+    assert max(c.answer.ionic_strength[0] for c in answers) > 5.0
     assert [_told(c) for c in answers if not c.agrees] == []
 
 
