@@ -5,6 +5,7 @@ The folder may be deleted at any time; what cannot be read or written is passed 
 
 from __future__ import annotations
 
+import gc
 import hashlib
 import os
 import tempfile
@@ -29,6 +30,11 @@ def cache_folder() -> Path:
     return Path(user_cache_dir("carboy", appauthor=False))
 
 
+def is_cached(sort: str, digest: str) -> bool:
+    """Whether something is kept under that name; it may still turn out not to be whole."""
+    return (cache_folder() / f"{sort}-{digest}.msgpack").is_file()
+
+
 def read_cached(sort: str, digest: str, record: type[Record]) -> Record | None:
     """The record kept as ``sort`` (``index``, ``rules``) under ``digest``, or None if there is none that is whole."""
     try:
@@ -38,10 +44,15 @@ def read_cached(sort: str, digest: str, record: type[Record]) -> Record | None:
     check, body = content[:_CHECK_SIZE], content[_CHECK_SIZE:]
     if hashlib.blake2b(body, digest_size=_CHECK_SIZE).digest() != check:
         return None
+    collecting = gc.isenabled()
+    gc.disable()  # ten thousand fresh records, none of them garbage
     try:
         return msgspec.msgpack.decode(body, type=record)
     except msgspec.MsgspecError:
         return None
+    finally:
+        if collecting:
+            gc.enable()
 
 
 def write_cached(sort: str, digest: str, record: object) -> None:

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import fnmatch
-import importlib.util
 import json
 import os
 import subprocess
@@ -23,19 +22,9 @@ LEFT_OUT = ("*~", "*.bak", "*.tmp", "*.pyc", "__pycache__", ".*")
 
 @pytest.fixture(scope="session")
 def wheel(tmp_path_factory: pytest.TempPathFactory) -> Path:
-    """The wheel of this checkout. Without hatchling here it is built in isolation."""
+    """The wheel of this checkout, built with the hatchling of the test extra: isolation would fetch one from the network."""
     folder = tmp_path_factory.mktemp("wheel")
-    here = importlib.util.find_spec("hatchling") is not None
-    command = [
-        sys.executable,
-        "-m",
-        "build",
-        "--wheel",
-        "--outdir",
-        str(folder),
-        *(["--no-isolation"] if here else []),
-        str(ROOT),
-    ]
+    command = [sys.executable, "-m", "build", "--wheel", "--no-isolation", "--outdir", str(folder), str(ROOT)]
     ran = subprocess.run(command, capture_output=True, text=True, check=False)
     assert ran.returncode == 0, ran.stdout + ran.stderr
     (built,) = folder.glob("*.whl")

@@ -40,6 +40,9 @@ class Draft:
     controls: list[str] = field(default_factory=list)
     sources: list[str] = field(default_factory=list)
     at_most: bool = False  # the amount is the most that there can be, known only by class
+    lane: int | None = None  # that the summary and the measures speak of; None where no measure was computed
+    bound_by: dict[str, dict[str, str]] = field(default_factory=dict)  # rule -> variable -> token
+    thresholds: tuple[str, ...] = ()
     cause_rule: str = ""  # a firing whose node in the record is the cause itself
 
     @property
@@ -79,13 +82,23 @@ class Draft:
 
 
 class Scale:
-    """The thresholds of the assessment by name."""
+    """The thresholds of the assessment by name; ``used`` keeps which were looked at."""
 
     def __init__(self, index: Index) -> None:
         self.index = index
+        self._used: dict[str, None] = {}
 
     def __getitem__(self, key: str) -> float:
+        self._used[key] = None
         return self.index.thresholds[key].value.magnitude
+
+    @property
+    def used(self) -> tuple[str, ...]:
+        return tuple(self._used)
+
+    def afresh(self) -> Scale:
+        """The same thresholds, none of them looked at yet."""
+        return Scale(self.index)
 
 
 def graded(values: Array, note: float, warning: float, danger: float) -> Levels:
@@ -101,6 +114,11 @@ def courses(trace: StepTrace) -> list[tuple[Where, Course]]:
         if course is not None:
             found.append((name, course))  # type: ignore[arg-type]
     return found
+
+
+def course_of(draft: Draft) -> Course | None:
+    """The course that a draft was found on."""
+    return {"path": draft.trace.path, "contact": draft.trace.contact, "storage": draft.trace.storage}[draft.where]
 
 
 def worst_lane(levels: Levels, size: Array) -> int:

@@ -14,7 +14,7 @@ from carboy.chemistry.stock import WATER, ChemicalStock
 from carboy.hazards.draft import DANGER, NONE, NOTE, WARNING, Draft, Levels, Scale, courses, graded, worst_lane
 from carboy.hazards.numbers import amount_words, litres_words
 from carboy.hazards.ventilation import pace_measures
-from carboy.hazards.workings import gas_measures, plain
+from carboy.hazards.workings import gas_measures
 from carboy.model.knowledge import Gas, Value
 from carboy.model.report import Measure
 from carboy.model.rule import Kind
@@ -163,9 +163,12 @@ def gas_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dra
             if not np.any(now.gas + now.dissolved * (now.pressure > 0) > TRACE):
                 continue
             for stick in yardsticks(record, record_classes(stock, token), scale):
-                judged = _judge(trace, where, course, token, stick, now, scale)
+                looked_at = scale.afresh()
+                judged = _judge(trace, where, course, token, stick, now, looked_at)
                 if judged is not None:
-                    drafts.append(_draft(trace, where, course, token, record, stick, judged, stock, scale))
+                    draft = _draft(trace, where, course, token, record, stick, judged, stock, looked_at)
+                    draft.thresholds = looked_at.used
+                    drafts.append(draft)
     return drafts
 
 
@@ -296,7 +299,7 @@ def _draft(
     limit = (
         None
         if np.isnan(stick.ppm)
-        else plain(stick.words, stick.ppm, "ppm", ", ".join(filter(None, (stick.basis, stick.source))))
+        else Measure(quantity=stick.words, value=stick.ppm, unit="ppm", basis=stick.basis, source=stick.source)
     )
     measures = gas_measures(course, token, leaving, air, limit, stick.words, lane, stock)
     if where == "path" and not judged.stood:
@@ -325,6 +328,7 @@ def _draft(
         measures,
         equations=[("equilibrium", equation, left, right)],
         sources=[stick.source] if stick.source else [],
+        lane=lane,
     )
 
 

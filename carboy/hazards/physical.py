@@ -216,7 +216,8 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
             ]
         )
         if standing > 0 and float(gauge.max()) <= scale["markedly-worse-factor"] * standing:
-            levels = np.minimum(levels, NOTE)
+            stood = graded(np.array([standing]), scale["pressure-warning"], scale["pressure-warning"], danger.min())[0]
+            levels = np.where(levels <= stood, np.minimum(levels, NOTE), levels)  # a bottle bursts at what it bears
         if not levels.any():
             continue
         lane = worst_lane(levels, gauge)

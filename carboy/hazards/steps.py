@@ -7,7 +7,7 @@ import numpy as np
 from carboy.bench.trace import StepTrace
 from carboy.chemistry.mixture import TRACE, Array, Mixture
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
-from carboy.model.report import Pair, StepReport
+from carboy.model.report import Pair, Pour, StepReport
 
 
 def pair(values: Array) -> Pair:
@@ -44,6 +44,19 @@ def apart(token: str, stock: ChemicalStock) -> bool:
     return stock.species(token).phase == "s" or "metal" in stock.classes.get(token, ())
 
 
+def poured(trace: StepTrace, stock: ChemicalStock) -> Pour | None:
+    """What came into the vessel in a step; None where nothing did."""
+    added = trace.added
+    if added is None or not trace.added_label:
+        return None
+    return Pour(
+        label=trace.added_label,
+        volume_L=pair(added.volume_L),
+        mass_g=pair(added.mass_g),
+        holds_mol={stock.index.substances[name].name: pair(amount) for name, amount in added.labelled.items()},
+    )
+
+
 def step_report(trace: StepTrace, stock: ChemicalStock) -> StepReport:
     """The numbers of a step over the stated ranges."""
     mixture = trace.after
@@ -67,4 +80,5 @@ def step_report(trace: StepTrace, stock: ChemicalStock) -> StepReport:
         dissolved_mol={key: pair(amount) for key, amount in sorted(dissolved_by_key(mixture, stock).items())},
         solids_mol={key: pair(amount) for key, amount in sorted(solids.items()) if np.any(amount > TRACE)},
         gas_mol={key: pair(amount) for key, amount in sorted(gases.items())},
+        poured=poured(trace, stock),
     )

@@ -1,6 +1,8 @@
-"""How a gas's numbers were had: the equation, the numbers that went in, and each constant with its source."""
+"""How numbers were had: the equation, the numbers that went in, and each constant with its source."""
 
 from __future__ import annotations
+
+from collections.abc import Iterable
 
 import numpy as np
 
@@ -16,19 +18,21 @@ def plain(quantity: str, value: float, unit: str, basis: str = "") -> Measure:
     return Measure(quantity=quantity, value=value, unit=unit, basis=basis)
 
 
-def origin(value: Value) -> str:
-    """Where a value of the graph comes from, in words."""
-    return ", ".join(part for part in (value.source, value.basis, value.note) if part)
+def looked_up(quantity: str, value: Value) -> Measure:
+    """A value of the graph, with how it was had and from where."""
+    basis = ", ".join(part for part in (value.basis, value.note) if part)
+    return Measure(quantity=quantity, value=value.magnitude, unit=value.unit, basis=basis, source=value.source)
 
 
 def constants(stock: ChemicalStock, token: str) -> list[Measure]:
     """The equilibrium constants by which a gas stands over the liquid: its Henry constant and those of the molecule in water."""
-    found: list[Measure] = []
-    for product in (token, stock.dissolved_form.get(token, "")):
-        made = stock.formation.get(product)
-        if made is not None:
-            found.append(plain(f"log10 K of {made.reaction}", made.printed.magnitude, "1", origin(made.printed)))
-    return found
+    return formation_constants(stock, [token, stock.dissolved_form.get(token, "")])
+
+
+def formation_constants(stock: ChemicalStock, tokens: Iterable[str]) -> list[Measure]:
+    """The equilibrium constants of species, solids and gases; nothing for components, which are given."""
+    made = [stock.formation[token] for token in dict.fromkeys(tokens) if token in stock.formation]
+    return [looked_up(f"log10 K of {one.reaction}", one.printed) for one in made]
 
 
 def gas_measures(
@@ -84,6 +88,7 @@ def gas_measures(
                 value=air_L / 1000,
                 unit="m3",
                 basis=limit.basis,
+                source=limit.source,
                 equation="V(air) = n x 24.465 L/mol / limit",
                 inputs=[plain("gas that can leave", leaving, "mol"), limit],
             )

@@ -31,7 +31,8 @@ class PathStep(ReportPart):
 
 
 class Measure(ReportPart):
-    """One number that judges a finding, with what it rests on: the equation it came from and the numbers that went in."""
+    """One number that judges a finding, with what it rests on: the equation it came from and the numbers that went in; ``source`` is the
+    key of the source of a number that was looked up."""
 
     quantity: str
     value: float | list[float] | None
@@ -39,6 +40,14 @@ class Measure(ReportPart):
     basis: str
     equation: str = ""
     inputs: list[Measure] = []
+    source: str = ""
+
+
+class RuleSight(ReportPart):
+    """What a rule saw where the finding is gravest: one measure a condition, its ``quantity`` the condition as the rule file has it."""
+
+    rule: str
+    conditions: list[Measure]
 
 
 class Finding(ReportPart):
@@ -63,6 +72,18 @@ class Finding(ReportPart):
     sources: list[str] = []
     rules: list[str] = []  # every rule that supports it
     order: str = ""  # for combine: "as written", "other order", "either order"
+    speed: str = ""  # of what goes on in storage: "hours", "days"
+    sight: list[RuleSight] = []
+    thresholds: list[str] = []  # keys of the thresholds that were looked at in grading it
+
+
+class Pour(ReportPart):
+    """What a step poured, as it was read off the label: the least and the most of it, and of each substance in it."""
+
+    label: str
+    volume_L: Pair
+    mass_g: Pair
+    holds_mol: dict[str, Pair]
 
 
 class StepReport(ReportPart):
@@ -78,6 +99,7 @@ class StepReport(ReportPart):
     dissolved_mol: dict[str, Pair] = {}
     solids_mol: dict[str, Pair] = {}
     gas_mol: dict[str, Pair] = {}
+    poured: Pour | None = None
 
 
 class GoalReport(ReportPart):

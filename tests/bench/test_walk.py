@@ -356,7 +356,6 @@ def test_what_takes_hours_happens_in_a_long_wait(time: str, reacts: bool) -> Non
     assert walk.steps[2].after.total("NH2Cl") == pytest.approx(0.01 if reacts else 0.0, rel=1e-3)
 
 
-@pytest.mark.xfail(strict=True, reason="the part transferred is taken at the middle of its range in every lane")
 def test_a_range_of_what_is_transferred_is_followed_to_its_ends() -> None:
     walk = follow(
         [{"add": "2 L of 0.1 M sodium chloride", "to": "tank"}, {"transfer": "tank", "to": "drum", "part": "0.5-1 L"}],
@@ -366,9 +365,6 @@ def test_a_range_of_what_is_transferred_is_followed_to_its_ends() -> None:
     assert (moved.min(), moved.max()) == pytest.approx((0.05, 0.1))
 
 
-@pytest.mark.xfail(
-    strict=True, reason="the record weighs the label with the whole bottle where only a part of it is poured"
-)
 def test_part_of_a_bottle_is_recorded_as_that_part() -> None:
     # 100 mL of a strong bottle (0.1 mol of Na) weigh less than 1 L of 0.5 M
     walk = follow(

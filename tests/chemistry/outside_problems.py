@@ -93,7 +93,9 @@ def compare(name: str, draw: Draw, code: Reference | None = None) -> Compared:
     elif draw.network.gases and draw.vessel == "sealed":
         gas = f"-fixed_volume\n-volume {draw.headspace_L!r}\n-temperature 25"
     try:
-        outcome = (code or reference()).run({token: float(n) for token, n in totals.items()}, gas=gas, water_mol=draw.water_mol)
+        outcome = (code or reference()).run(
+            {token: float(n) for token, n in totals.items()}, gas=gas, water_mol=draw.water_mol
+        )
     except Exception as error:
         return Compared(name, draw, answer, None, str(error).strip().splitlines()[0][:200])
     return Compared(name, draw, answer, outcome)

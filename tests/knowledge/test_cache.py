@@ -11,6 +11,7 @@ from pathlib import Path
 import pytest
 from rdflib import URIRef
 
+from carboy import cache as cache_module
 from carboy.errors import CarboyError, KnowledgeError
 from carboy.knowledge import index as index_module
 from carboy.knowledge.files import digest, read_files
@@ -82,7 +83,7 @@ def test_a_folder_that_cannot_be_written_is_passed_over(
     def refuse(*args: object, **options: object) -> None:
         raise PermissionError(13, "Permission denied")
 
-    monkeypatch.setattr(index_module.os, "replace", refuse)
+    monkeypatch.setattr(cache_module.os, "replace", refuse)
     assert load_index(small_kb).species
     assert cached(cache) == []  # no half-written file stays behind
 

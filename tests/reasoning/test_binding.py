@@ -122,10 +122,6 @@ def test_phase_asked_for() -> None:
     assert not tokens("1 L of 0.1 M zinc sulfate", needs="?m is metal, solid")
 
 
-@pytest.mark.xfail(
-    strict=True,
-    reason="a labelled substance is always taken as dissolved, also a metal or an insoluble solid that stands aside",
-)
 def test_a_metal_is_not_dissolved() -> None:
     assert not tokens("5 g of zinc powder", needs="?m is metal, dissolved")
 

@@ -8,8 +8,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from carboy.errors import RuleError
 from carboy.chemistry.balance import Formula, balance, imbalance
+from carboy.errors import RuleError
 
 H, H2, H2O, OH = ({"H": 1.0}, 1), ({"H": 2.0}, 0), ({"H": 2.0, "O": 1.0}, 0), ({"H": 1.0, "O": 1.0}, -1)
 MNO4, MN = ({"Mn": 1.0, "O": 4.0}, -1), ({"Mn": 1.0}, 2)

@@ -7,13 +7,13 @@ from pathlib import Path
 
 import pytest
 
+from carboy.chemistry.relations import part_of
 from carboy.chemistry.stock import ChemicalStock
 from carboy.errors import InputError
 from carboy.model.plan import Ingredient, Interval, Portion
 from carboy.model.rule import Example, Rule
 from carboy.rulebook.examples import Runner, portion_words, run_examples
 from carboy.rulebook.lint import lint_rules
-from carboy.chemistry.relations import part_of
 from carboy.text.rule_reader import read_rule_files, read_rules
 from tests.rulebook.small_index import small_index
 
