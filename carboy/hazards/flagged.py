@@ -14,7 +14,8 @@ from carboy.chemistry.stock import ChemicalStock
 from carboy.hazards.draft import DANGER, NOTE, WARNING, Draft, Levels, Scale, Where, courses, graded, worst_lane
 from carboy.hazards.metals import element_of, limit_for
 from carboy.hazards.numbers import figures
-from carboy.hazards.workings import plain
+from carboy.hazards.workings import dissolved_measure, limit_measure, plain
+from carboy.model.knowledge import Limit
 from carboy.model.report import Measure
 from carboy.model.rule import Bound, Flag, Kind, Present, Rule
 from carboy.reasoning.binding import Binding, Mask, View
@@ -170,9 +171,11 @@ def class_drafts(
                 and all(f"{_gas_of(term, raised.bound, stock)}(g)" in stock.formation for term in flag.terms)
             ):
                 continue  # a gas whose amount is computed, and is too little for a line
-            draft = _class_draft(raised, where, trace, course, stock, scale, standing)
+            looked_at = scale.afresh()
+            draft = _class_draft(raised, where, trace, course, stock, looked_at, standing)
             if draft is None:
                 continue
+            draft.thresholds = looked_at.used
             key = (draft.kind, *draft.tokens, raised.rule.id, "storage" if where == "storage" else "")
             known = drafts.get(key)
             if known is None or (known.where == where and draft.level > known.level):
@@ -236,6 +239,7 @@ def _lend(raised: Raised, where: str, computed: list[Draft], stock: ChemicalStoc
             draft.rules.append(raised.rule)
             draft.names.update({variable: name_of(token, stock) for variable, token in raised.bound.items()})
             draft.bound.update(raised.bound)
+            draft.bound_by[raised.rule.id] = dict(raised.bound)
         if raised.firing is not None:
             draft.cause_rule = draft.cause_rule or raised.rule.id
     return lent
@@ -269,10 +273,11 @@ class Shortfall:
     """A treatment that leaves something above its limit: mg/L and severity, ``[lanes]``."""
 
     element: str
+    moles: Array
+    litres: Array
     mg_L: Array
     levels: Levels
-    limit: float
-    basis: str
+    limit: Limit
 
 
 def _shortfall(raised: Raised, course: Course, stock: ChemicalStock, scale: Scale) -> Shortfall | None:
@@ -286,12 +291,12 @@ def _shortfall(raised: Raised, course: Course, stock: ChemicalStock, scale: Scal
         element = element_of(record.report_key)
         if limit is None or element not in elements():
             continue
-        grams = course.mixture.dissolved(token) * record.atoms.get(element, 1.0) * molar_mass({element: 1.0})
+        moles = course.mixture.dissolved(token) * record.atoms.get(element, 1.0)
         volume = np.maximum(course.mixture.volume_L, 1e-9)
-        strength = np.where(raised.mask, 1000 * grams / volume, 0.0)
+        strength = np.where(raised.mask, 1000 * moles * molar_mass({element: 1.0}) / volume, 0.0)
         worst = limit.value.magnitude
         levels = graded(strength, worst, worst, scale["remobilised-danger-factor"] * worst)
-        return Shortfall(element, strength, levels, worst, f"{limit.kind.replace('-', ' ')}, {limit.value.source}")
+        return Shortfall(element, moles, volume, strength, levels, limit)
     return None
 
 
@@ -362,19 +367,33 @@ def _class_draft(
     names = {variable: name_of(token, stock) for variable, token in raised.bound.items()}
     subject = flag.words or ", ".join(name_of(term, stock) for term in terms)
     weight = float(grams.max())
+    lane = int(np.argmax(grams))
     measures: list[Measure] = []
     summary = f"{rule.title}{': ' + subject if subject else ''}."
     if shortfall is not None:
         lane = worst_lane(levels, course.table(shortfall.mg_L))
         left = float(shortfall.mg_L[lane])
-        summary = f"{rule.title}: {figures(left)} mg/L of {shortfall.element} stay dissolved, against a limit of {shortfall.limit:g} mg/L."
+        limit = shortfall.limit.value.magnitude
+        summary = f"{rule.title}: {figures(left)} mg/L of {shortfall.element} stay dissolved, against a limit of {limit:g} mg/L."
         measures = [
-            plain(f"dissolved {shortfall.element}", left, "mg/L", "equilibrium"),
-            plain("limit", shortfall.limit, "mg/L", shortfall.basis),
+            dissolved_measure(
+                shortfall.element, left, float(shortfall.moles[lane]), float(shortfall.litres[lane]), "equilibrium"
+            ),
+            limit_measure(shortfall.element, shortfall.limit),
         ]
     elif weight > 0 and flag.kind not in ("attack", "incomplete", "pressure"):
         summary = f"{summary[:-1]} ({figures(weight)} g at stake)."
-        measures = [plain("amount at stake", weight, "g", "the scarcest of what the rule needs")]
+        moles = float(raised.moles[lane])
+        measures = [
+            Measure(
+                quantity="amount at stake",
+                value=weight,
+                unit="g",
+                basis="what the flag is weighed by" if flag.weighed_by else "the scarcest of what the rule needs",
+                equation="m = n x M" if moles else "",
+                inputs=[plain("n", moles, "mol"), plain("M", weight / moles, "g/mol")] if moles else [],
+            )
+        ]
     draft = Draft(
         flag.kind,
         terms,
@@ -388,6 +407,8 @@ def _class_draft(
         rules=[rule],
         names=names,
         bound=dict(raised.bound),
+        bound_by={rule.id: dict(raised.bound)},
+        lane=lane,
     )
     if raised.firing is not None:
         draft.amount = course.table(np.where(raised.mask, raised.moles, 0.0))

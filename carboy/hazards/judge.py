@@ -10,15 +10,17 @@ import numpy as np
 from carboy.bench.trace import StepTrace
 from carboy.bench.walk import Walk
 from carboy.chemistry.stock import ChemicalStock
-from carboy.hazards.draft import NOTE, Draft, Scale
+from carboy.hazards.draft import NOTE, Draft, Scale, course_of, worst_lane
 from carboy.hazards.flagged import class_drafts
 from carboy.hazards.gas import gas_drafts
 from carboy.hazards.metals import remobilised_drafts
 from carboy.hazards.physical import foam_drafts, heat_drafts, pressure_drafts
+from carboy.hazards.sight import sights
 from carboy.model.knowledge import Index
-from carboy.model.report import Finding, PathStep, Signal
+from carboy.model.report import Finding, PathStep, RuleSight, Signal
 from carboy.model.rule import Rule
 from carboy.reasoning.equation import consumed_for
+from carboy.reasoning.firing import SPEEDS
 from carboy.reasoning.record import Node, Record
 
 _SIGNALS: dict[int, Signal] = {1: "note", 2: "warning", 3: "danger"}
@@ -76,13 +78,12 @@ class Judge:
     def _drafts(self, trace: StepTrace) -> list[Draft]:
         if trace.path is None and trace.contact is None and trace.storage is None:
             return []
-        computed = [
-            *gas_drafts(trace, self.stock, self.scale),
-            *heat_drafts(trace, self.stock, self.scale),
-            *foam_drafts(trace, self.stock, self.scale),
-            *pressure_drafts(trace, self.stock, self.scale),
-            *remobilised_drafts(trace, self.stock, self.scale),
-        ]
+        computed = gas_drafts(trace, self.stock, self.scale)
+        for drafts_of in (heat_drafts, foam_drafts, pressure_drafts, remobilised_drafts):
+            looked_at = self.scale.afresh()
+            for draft in drafts_of(trace, self.stock, looked_at):
+                draft.thresholds = looked_at.used
+                computed.append(draft)
         drafts = [*computed, *class_drafts(trace, self.rules, self.stock, self.scale, computed)]
         if trace.before is None and trace.added is not None:
             # a bottle poured into an empty vessel is what it was; only what it does to the vessel, or in itself at once, is news
@@ -103,6 +104,7 @@ class Judge:
                 for rule in other.rules:
                     if rule not in leader.rules:
                         leader.rules.append(rule)
+                        leader.bound_by[rule.id] = other.bound_by.get(rule.id, {})
                         leader.names = {**other.names, **leader.names}
                 leader.equations += [one for one in other.equations if one not in leader.equations]
             leaders.append(leader)
@@ -139,7 +141,26 @@ class Judge:
             controls=controls,
             sources=sources,
             rules=rule_ids,
+            speed=self._speed(draft),
+            sight=self._sight(draft),
+            thresholds=list(draft.thresholds),
         )
+
+    def _speed(self, draft: Draft) -> str:
+        """How fast it goes on in storage: the pace of the quickest of its rules that is slow."""
+        if draft.moment != "storage":
+            return ""
+        slow = [rule.speed for rule in draft.rules if rule.speed in ("hours", "days")]
+        return min(slow, key=SPEEDS.index) if slow else ""
+
+    def _sight(self, draft: Draft) -> list[RuleSight]:
+        course = course_of(draft)
+        if course is None or not draft.rules or draft.level <= NOTE:
+            return []
+        lane = draft.lane
+        if lane is None:
+            lane = worst_lane(draft.levels, draft.levels if draft.amount is None else draft.amount)
+        return sights(draft.rules, draft.bound_by, course, draft.trace.surroundings, lane, self.stock)
 
     def plain_formula(self, token: str) -> str:
         """``H2S`` for the token of a species, gas, solid or substance."""

@@ -9,6 +9,7 @@ from carboy.chemistry.mixture import TRACE, Mixture
 from carboy.chemistry.stock import ChemicalStock
 from carboy.hazards.draft import Draft, Scale, courses, graded, worst_lane
 from carboy.hazards.numbers import amount_words, figures
+from carboy.hazards.workings import dissolved_measure, formation_constants, limit_measure, plain
 from carboy.model.knowledge import Limit
 from carboy.model.report import Measure
 from carboy.reasoning.equation import formation_equation
@@ -115,23 +116,38 @@ def remobilised_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> 
                     back,
                     [
                         Measure(
-                            quantity=f"dissolved {element}",
-                            value=float(dissolved.flat[lane]),
-                            unit="mg/L",
-                            basis="equilibrium with the solids present",
+                            quantity=f"{element} gone back into the liquid",
+                            value=float(back.flat[lane]),
+                            unit="mol",
+                            basis="the most that was solid before or on the way, less what is solid now",
+                            equation="n(back) = n(solid, most so far) - n(solid, now), no more than is dissolved",
+                            inputs=[
+                                plain("n(solid, most so far)", float(held.flat[lane]), "mol"),
+                                plain("n(solid, now)", float(solid.flat[lane]), "mol"),
+                            ],
                         ),
-                        Measure(
-                            quantity=f"limit for {element}",
-                            value=magnitude,
-                            unit="mg/L",
-                            basis=limit.kind.replace("-", " "),
+                        dissolved_measure(
+                            element,
+                            float(dissolved.flat[lane]),
+                            float(free.flat[lane]),
+                            float(volume.flat[lane]),
+                            "equilibrium with the solids present",
+                            formation_constants(stock, [*forms, *_solids_with(mixture, before, tokens)]),
                         ),
+                        limit_measure(element, limit),
                     ],
                     sources=[limit.value.source],
                     equations=_dissolution(stock, forms, tokens),
+                    lane=lane,
                 )
             )
     return drafts
+
+
+def _solids_with(mixture: Mixture, before: Mixture | None, tokens: list[str]) -> list[str]:
+    """The solids of a metal that are there, or were there before."""
+    solids = [*mixture.solids, *(before.solids if before is not None else ())]
+    return [one for one in solids if any(mixture.stock.components_of(one).get(token, 0.0) > 0 for token in tokens)]
 
 
 def _main_forms(mixture: Mixture, tokens: list[str], lane: int) -> list[str]:

@@ -6,16 +6,19 @@ import numpy as np
 
 from carboy.bench.make_up import MOLAR_VOLUME
 from carboy.bench.trace import Course, StepTrace
+from carboy.chemistry.heat import LIQUID_HEAT_CAPACITY, SOLUTE_HEAT_CAPACITY, WATER_HEAT_CAPACITY
+from carboy.chemistry.mixture import GAS_CONSTANT_KPA, TRACE, Array, water_vapour_kPa
 from carboy.chemistry.stock import ChemicalStock
 from carboy.hazards.draft import DANGER, NOTE, Draft, Scale, courses, graded, worst_lane
 from carboy.hazards.gas import load
 from carboy.hazards.numbers import figures, litres_words
-from carboy.hazards.workings import plain
+from carboy.hazards.workings import constants, plain
 from carboy.model.report import Measure
 from carboy.reasoning.equation import formation_equation
 
 BOILING_WATER = 100.0  # degC at one atmosphere
 WATER_BOILS = 2257.0  # kJ/kg, enthalpy of vaporisation at 100 degC, CRC Handbook (from memory)
+KELVIN = 273.15
 ICE_MELTS = 334.0  # kJ/kg, enthalpy of fusion, CRC Handbook (from memory)
 
 
@@ -52,7 +55,7 @@ def heat_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
         words += "; so near boiling it spatters" if boils.any() else ""
     summary = "; ".join([words, *reasons]) + "."
     measures = _heat_measures(course, lane, most, top, scale)
-    draft = Draft("heat", (), levels, course.fractions, "path", trace, summary, None, measures)
+    draft = Draft("heat", (), levels, course.fractions, "path", trace, summary, None, measures, lane=lane)
     if course.unknown_heat:
         draft.measures.append(
             Measure(
@@ -70,11 +73,14 @@ def _heat_measures(course: Course, lane: int, rise: float, top: float, scale: Sc
     heat = float(course.heat_kJ[lane])
     capacity = heat / rise if rise else 0.0
     ceiling = scale["heat-warning"]
+    whole = float(course.table(course.heat_kJ)[0, -1])
+    capacity_basis = (
+        f"water {WATER_HEAT_CAPACITY:g} (CRC Handbook, from memory), dissolved {SOLUTE_HEAT_CAPACITY:g}, organic liquids "
+        f"{LIQUID_HEAT_CAPACITY:g} kJ/(kg K) (common practice)"
+    )
     inputs = [
         plain("heat set free", heat, "kJ"),
-        plain(
-            "heat capacity of the content", capacity, "kJ/K", "water 4.18, dissolved 1.0, organic liquids 2.0 kJ/(kg K)"
-        ),
+        plain("heat capacity of the content", capacity, "kJ/K", capacity_basis),
     ]
     measures = [
         Measure(
@@ -83,7 +89,15 @@ def _heat_measures(course: Course, lane: int, rise: float, top: float, scale: Sc
             unit="kJ",
             basis="Hess's law from enthalpies of formation and dilution",
             equation="Q = H(parts before) - H(mixture) - sum of reaction enthalpy x extent",
-            inputs=[plain(words, share, "kJ") for words, share in course.heat_parts],
+            inputs=[
+                Measure(
+                    quantity="once all is in, as stated",
+                    value=whole,
+                    unit="kJ",
+                    basis="the sum of its parts",
+                    inputs=[plain(words, share, "kJ") for words, share in course.heat_parts],
+                )
+            ],
         ),
         Measure(
             quantity="warming without loss",
@@ -98,21 +112,38 @@ def _heat_measures(course: Course, lane: int, rise: float, top: float, scale: Sc
             value=top,
             unit="degC",
             basis="start temperature of the mixed liquids plus the warming; water boils before it goes beyond 100 degC",
+            equation="T = T(start) + rise",
+            inputs=[plain("T(start)", float(course.unreacted.temperature_C[lane]), "degC"), plain("rise", rise, "K")],
         ),
     ]
-    whole = course.table(course.heat_kJ)[0, -1]
-    surplus = float(whole) - ceiling * float(course.table(course.capacity_kJ_K)[0, -1])
+    row = lane // course.points
+    heats, capacities = course.table(course.heat_kJ)[row], course.table(course.capacity_kJ_K)[row]
+    most = int(np.argmax(heats - ceiling * capacities))  # where along the addition most is beyond what the content may keep
+    surplus = float(heats[most] - ceiling * capacities[most])
     if surplus > 0:
-        measures.append(
+        power = scale["bath-cooling"]
+        measures += [
             Measure(
                 quantity=f"to be carried off so that it stays within {ceiling:g} K",
                 value=surplus,
                 unit="kJ",
                 basis=f"as much as {figures(surplus / ICE_MELTS)} kg of melting ice takes up",
-                equation="surplus = Q - C x allowed rise",
-                inputs=inputs,
-            )
-        )
+                equation="surplus = Q - C x allowed rise, where it is most",
+                inputs=[
+                    plain("Q", float(heats[most]), "kJ"),
+                    plain("C", float(capacities[most]), "kJ/K", capacity_basis),
+                    plain("allowed rise", ceiling, "K"),
+                ],
+            ),
+            Measure(
+                quantity=f"shortest time of addition, evenly, in a bath that takes away {power:g} W",
+                value=surplus / (power / 1000) / 60,
+                unit="min",
+                basis=f"what is beyond {ceiling:g} K goes into the bath; half the bath's power, twice the time",
+                equation="time = surplus / power",
+                inputs=[plain("surplus", surplus, "kJ"), plain("power", power, "W", "bath-cooling of the assessment")],
+            ),
+        ]
     if top > BOILING_WATER:
         boiled = (top - BOILING_WATER) * capacity / WATER_BOILS
         measures.append(
@@ -138,8 +169,11 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     }
     gas = course.mixture.zeros()
     most: dict[str, float] = {}
+    bubbling: list[tuple[str, Array, bool]] = []
     for token, amount in course.mixture.gases.items():
-        pace = scale["foam-share-of-slow-gas"] if stock.dissolved_form.get(token, token) in slow else 1.0
+        slowed = stock.dissolved_form.get(token, token) in slow
+        bubbling.append((token, amount, slowed))
+        pace = scale["foam-share-of-slow-gas"] if slowed else 1.0
         gas = gas + pace * amount
         most[token] = pace * float(amount.max())
     litres = course.table(gas) * MOLAR_VOLUME
@@ -172,12 +206,38 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
             value=float(litres.flat[lane]),
             unit="L",
             basis="bubbles of an open vessel at 1 atm, 25 degC",
+            equation="V = n x 24.465 L/mol" + (" x time that foam lasts / time of addition" if spread else ""),
+            inputs=[
+                *(
+                    plain(
+                        f"n({stock.label(one)})",
+                        float(amount[lane]),
+                        "mol",
+                        "slow: a share of it counts" if slowed else "",
+                    )
+                    for one, amount, slowed in bubbling
+                    if amount[lane] > TRACE
+                ),
+                *(
+                    [
+                        plain("time that foam lasts", scale["foam-time"], "min"),
+                        plain("time of addition", float(trace.duration_s[0]) / 60, "min"),
+                    ]
+                    if trace.duration_s is not None
+                    else []
+                ),
+            ],
         ),
         Measure(
             quantity="free space (freeboard)",
             value=float(room.flat[lane]),
             unit="L",
             basis="vessel volume less liquid volume",
+            equation="V(free) = V(vessel) - V(liquid)",
+            inputs=[
+                plain("V(vessel)", float(np.repeat(trace.capacity_L, course.points)[lane]), "L"),
+                plain("V(liquid)", float(course.mixture.volume_L[lane]), "L"),
+            ],
         ),
     ]
     return [
@@ -192,6 +252,7 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
             course.table(molecules),
             measures,
             equations=[("equilibrium", equation, left, right)],
+            lane=lane,
         )
     ]
 
@@ -237,8 +298,34 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
                 value=top,
                 unit="kPa",
                 basis="ideal gas in the headspace: air shut in, water vapour and the gases at equilibrium with the liquid",
+                equation="p = (n(air) + sum of n(gas)) x R x T / V + p(water) - 101.325 kPa",
+                inputs=[
+                    plain(
+                        "n(air)", 0.0 if course.mixture.air_mol is None else float(course.mixture.air_mol[lane]), "mol"
+                    ),
+                    *(
+                        plain(f"n({stock.label(one)})", amount, "mol")
+                        for one, amount in gases.items()
+                        if amount > TRACE
+                    ),
+                    plain("R", GAS_CONSTANT_KPA, "kPa L/(mol K)"),
+                    plain("T", float(course.mixture.temperature_C[lane]) + KELVIN, "K"),
+                    plain("V", room, "L"),
+                    plain("p(water)", float(water_vapour_kPa(course.mixture.temperature_C)[lane]), "kPa"),
+                    *(constants(stock, token) if token else []),
+                ],
             ),
-            Measure(quantity="headspace", value=room, unit="L", basis="vessel volume less liquid volume"),
+            Measure(
+                quantity="headspace",
+                value=room,
+                unit="L",
+                basis="vessel volume less liquid volume",
+                equation="V = V(vessel) - V(liquid)",
+                inputs=[
+                    plain("V(vessel)", float(np.repeat(trace.capacity_L, course.points)[lane]), "L"),
+                    plain("V(liquid)", float(course.mixture.volume_L[lane]), "L"),
+                ],
+            ),
         ]
         if trace.rating_kPa is not None:
             measures.append(
@@ -247,7 +334,16 @@ def pressure_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> lis
                 )
             )
         draft = Draft(
-            "pressure", (token,) if token else (), levels, course.fractions, where, trace, summary, None, measures
+            "pressure",
+            (token,) if token else (),
+            levels,
+            course.fractions,
+            where,
+            trace,
+            summary,
+            None,
+            measures,
+            lane=lane,
         )
         if token:
             draft.amount = course.table(load(course.mixture, token).molecules)

@@ -44,9 +44,7 @@ def sights(
     for rule in rules:
         order = views if rule.does else views[::-1]
         bound = bound_by.get(rule.id, {})
-        found.append(
-            RuleSight(rule=rule.id, conditions=[_seen(one, bound, order, lane, stock) for one in rule.needs])
-        )
+        found.append(RuleSight(rule=rule.id, conditions=[_seen(one, bound, order, lane, stock) for one in rule.needs]))
     return found
 
 

@@ -8,7 +8,7 @@ Where flow or room are stated as a range, the least of it is taken.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -25,7 +25,7 @@ _HOUR = 3600.0
 _ROOMS = ("room", "bench", "store")
 _NO_SUCH_AIR = ("outdoors", "glovebox", "cabinet")  # neither a hood nor a room: without a stated flow there is no telling
 _PRECISION = 1e-4  # of a time of addition
-_SLOWEST = 1e7  # s: what would take months is as good as never
+_AT_ONCE = 1e-9  # s
 
 
 @dataclass(frozen=True)
@@ -83,13 +83,12 @@ def peak_fraction(release: Array, fractions: Array, seconds: float, air: Air) ->
 
 def shortest_time(release: Array, fractions: Array, limit: float, air: Air) -> float:
     """The least time of addition, s, at which :func:`peak_fraction` stays within ``limit``; 0 where even all at once does."""
-    if air.gathers is None:
-        return peak_fraction(release, fractions, 1.0, air) / limit
-    if peak_fraction(release, fractions, 1e-9, air) <= limit:
+    steady = peak_fraction(release, fractions, 1.0, replace(air, gathers=None)) / limit  # long enough for any room
+    if air.gathers is None or steady == 0.0:
+        return steady
+    if peak_fraction(release, fractions, _AT_ONCE, air) <= limit:
         return 0.0
-    low, high = 0.0, 60.0
-    while peak_fraction(release, fractions, high, air) > limit and high < _SLOWEST:
-        low, high = high, 2 * high
+    low, high = 0.0, steady
     while high - low > _PRECISION * high:
         middle = 0.5 * (low + high)
         low, high = (middle, high) if peak_fraction(release, fractions, middle, air) > limit else (low, middle)

@@ -9,8 +9,9 @@ import numpy as np
 from carboy.bench.make_up import MOLAR_VOLUME
 from carboy.bench.trace import Course
 from carboy.chemistry.stock import ChemicalStock
-from carboy.model.knowledge import Value
+from carboy.model.knowledge import Limit, Value
 from carboy.model.report import Measure
+from carboy.text.formulas import molar_mass
 
 
 def plain(quantity: str, value: float, unit: str, basis: str = "") -> Measure:
@@ -33,6 +34,36 @@ def formation_constants(stock: ChemicalStock, tokens: Iterable[str]) -> list[Mea
     """The equilibrium constants of species, solids and gases; nothing for components, which are given."""
     made = [stock.formation[token] for token in dict.fromkeys(tokens) if token in stock.formation]
     return [looked_up(f"log10 K of {one.reaction}", one.printed) for one in made]
+
+
+def limit_measure(element: str, limit: Limit) -> Measure:
+    """The limit on a liquid that judges what is dissolved of an element."""
+    return Measure(
+        quantity=f"limit for {element}",
+        value=limit.value.magnitude,
+        unit="mg/L",
+        basis=limit.kind.replace("-", " "),
+        source=limit.value.source,
+    )
+
+
+def dissolved_measure(
+    element: str, mg_L: float, moles: float, litres: float, basis: str, constants_used: Iterable[Measure] = ()
+) -> Measure:
+    """mg/L of an element in the liquid, from mol and L."""
+    return Measure(
+        quantity=f"dissolved {element}",
+        value=mg_L,
+        unit="mg/L",
+        basis=basis,
+        equation="c = 1000 x n x M / V",
+        inputs=[
+            plain("n, all dissolved forms", moles, "mol"),
+            plain("M", molar_mass({element: 1.0}), "g/mol"),
+            plain("V", litres, "L"),
+            *constants_used,
+        ],
+    )
 
 
 def gas_measures(

@@ -8,13 +8,13 @@ import math
 import re
 from collections.abc import Mapping
 from difflib import get_close_matches
-from typing import Literal, cast
+from typing import TYPE_CHECKING, Literal, cast
 
 from carboy.errors import InputError
 from carboy.knowledge.cas import check_digit_fits
 from carboy.knowledge.equilibria import PrintedEquilibrium, reduce_to_components
 from carboy.knowledge.loading import Facts, Node
-from carboy.knowledge.naming import build_names
+from carboy.knowledge.naming import add_ions, build_names
 from carboy.knowledge.problems import Problem
 from carboy.model.knowledge import (
     Attack,
@@ -46,6 +46,9 @@ from carboy.text.formulas import (
     split_token,
 )
 
+if TYPE_CHECKING:
+    from carboy.knowledge.structures import ClassPatterns
+
 _GHS = re.compile(r"H\d{3}[A-Za-z]{0,2}(?:\+H\d{3}[A-Za-z]{0,2})*|EUH\d{3}[A-Z]?")
 _PHASES: Mapping[str, Phase] = {":Component": "aq", ":Species": "aq", ":Solid": "s", ":Gas": "g"}
 _WATER, _PROTON = "H2O", "H+"
@@ -64,6 +67,8 @@ class _Compiler:
         self.problems: list[Problem] = []
         self.species: dict[str, Species] = {}
         self.groups: dict[str, dict[str, float]] = {}  # ligand names in tokens -> atoms
+        self.derived: dict[str, tuple[str, ...]] = {}  # substance id -> classes by its structure
+        self.written: dict[str, tuple[str, ...]] = {}  # substance id -> its structure as RDKit writes it
 
     def run(self) -> Index:
         self._check_elements()
@@ -71,6 +76,7 @@ class _Compiler:
         self._declared_species()
         substances = {node.name.partition(":")[2]: node for node in self.facts.of_type(":Substance")}
         compositions = {key: self._substance_atoms(node) for key, node in substances.items()}
+        self._structures(substances, classes)
         self._molecular_species(substances, compositions)
         equilibria = self._equilibria()
         self._lone_species(equilibria)
@@ -78,7 +84,8 @@ class _Compiler:
         materials = {node.name.partition(":")[2]: self._material(node) for node in self.facts.of_type(":Material")}
         containers = {node.name.partition(":")[2]: self._container(node) for node in self.facts.of_type(":Container")}
         gases = {node.name.partition(":")[2]: self._gas(node) for node in self.facts.of_type(":Gas")}
-        names, clashes = build_names(records, materials, containers, classes, gases, class_synonyms)
+        names, clashes = build_names(records, materials, containers, classes, gases, class_synonyms, self.written)
+        clashes += add_ions(names, self.species, self._ion_synonyms())
         for clash in clashes:
             self._report(self._node_of(clash.second), str(clash))
         return Index(
@@ -108,7 +115,7 @@ class _Compiler:
     def _node_of(self, target: str) -> Node | None:
         """``substance:acetone`` -> its node."""
         kind, _, key = target.partition(":")
-        prefix = {"substance": "sub", "material": "mat", "container": "con", "class": "cls", "gas": "sp"}[kind]
+        prefix = {"substance": "sub", "material": "mat", "container": "con", "class": "cls"}.get(kind, "sp")
         return self.facts.things.get(f"{prefix}:{key}")
 
     def _value(self, node: Node, key: str) -> Value | None:
@@ -159,6 +166,8 @@ class _Compiler:
                 label=node.text("skos:prefLabel"),
                 broader=tuple(ref.local for ref in node.refs("skos:broader")),
                 note=node.text("skos:scopeNote"),
+                smarts=node.texts(":smarts"),
+                not_smarts=node.texts(":notSmarts"),
             )
             synonyms[key] = node.texts("skos:altLabel")
         return classes, synonyms
@@ -177,7 +186,52 @@ class _Compiler:
             closed[key] = tuple(order)
         return closed
 
+    # --- structures
+
+    def _structures(self, substances: Mapping[str, Node], classes: Mapping[str, ChemicalClass]) -> None:
+        """The classes that the structures of substances add to the stated ones, and how RDKit writes them."""
+        for key, item in classes.items():
+            if item.not_smarts and not item.smarts:
+                self._report(self.facts.things.get(f"cls:{key}"), "has :notSmarts, but no :smarts to take them from")
+        drawn = {key: node for key, node in substances.items() if node.text(":smiles")}
+        if not drawn:
+            return
+        from carboy.knowledge.structures import faulty_patterns, read_structure
+
+        for key, item in classes.items():
+            for text in faulty_patterns(item):
+                self._report(self.facts.things.get(f"cls:{key}"), f"'{text}' is no SMARTS pattern")
+        patterns = self._patterns(classes)
+        for key, node in drawn.items():
+            try:
+                structure = read_structure(node.text(":smiles"))
+            except InputError as error:
+                self._report(node, f":smiles: {error.message}")
+                continue
+            self.written[key] = tuple(dict.fromkeys((structure.canonical, structure.flat)))
+            if patterns is not None:
+                found = patterns.nearest(patterns.classes_of(node.text(":smiles")))
+                above = {up for stated in self._classes_of(node) for up in patterns.ancestors(stated)}
+                self.derived[key] = tuple(one for one in found if one not in above)
+
+    @staticmethod
+    def _patterns(classes: Mapping[str, ChemicalClass]) -> ClassPatterns | None:
+        from carboy.knowledge.structures import ClassPatterns
+
+        try:
+            return ClassPatterns(classes)
+        except InputError:  # each faulty one is reported by itself
+            return None
+
     # --- species
+
+    def _ion_synonyms(self) -> dict[str, tuple[str, ...]]:
+        """Other names and ways of writing of species."""
+        return {
+            node.name.partition(":")[2]: node.texts("skos:altLabel")
+            for node in self.facts.of_type(":Component", ":Species")
+            if node.texts("skos:altLabel")
+        }
 
     def _declared_species(self) -> None:
         """Components, solids, gases; components first, because their names may be ligands in the tokens of others."""
@@ -269,7 +323,7 @@ class _Compiler:
                 charge=0,
                 phase=cast(Phase, node.text(":state") or "s"),
                 name=node.text("skos:prefLabel"),
-                classes=self._classes_of(node),
+                classes=(*self._classes_of(node), *self.derived.get(key, ())),
                 component=True,
                 report_key=key,
                 formation=self._value(node, ":formation"),
@@ -394,7 +448,8 @@ class _Compiler:
             synonyms=node.texts("skos:altLabel"),
             cas=node.texts(":cas"),
             smiles=node.text(":smiles"),
-            classes=self._classes_of(node),
+            classes=(*self._classes_of(node), *self.derived.get(key, ())),
+            derived=self.derived.get(key, ()),
             ghs=node.texts(":ghs"),
             yields=self._yields(node, key, atoms),
             density=self._value(node, ":density"),

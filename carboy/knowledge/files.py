@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Mapping
+from importlib.metadata import PackageNotFoundError, version
 from pathlib import Path
 
 import carboy
@@ -18,7 +19,7 @@ _PACKAGE = Path(__file__).resolve().parent.parent
 _COMPILING_CODE = (
     *(
         f"knowledge/{name}.py"
-        for name in ("cas", "compile", "equilibria", "folding", "loading", "naming", "vocabulary")
+        for name in ("cas", "compile", "equilibria", "folding", "loading", "naming", "structures", "vocabulary")
     ),
     "text/formulas.py",
     "model/knowledge.py",
@@ -40,11 +41,19 @@ def read_files(path: Path | None = None) -> dict[str, bytes]:
         raise KnowledgeError(f"a knowledge file cannot be read: {error.strerror}") from error
 
 
+def _rdkit_version() -> str:
+    """RDKit's release writes the canonical SMILES; asked of its metadata, so that it is not imported."""
+    try:
+        return version("rdkit")
+    except PackageNotFoundError:
+        return ""
+
+
 def digest(files: Mapping[str, bytes]) -> str:
-    """BLAKE2b of names and contents, of the carboy version and of the compiling code: equal only if the index would
-    be equal.
+    """BLAKE2b of names and contents, of the versions of carboy and RDKit and of the compiling code: equal only if the
+    index would be equal.
     """
-    state = hashlib.blake2b(carboy.__version__.encode(), digest_size=20)
+    state = hashlib.blake2b(f"{carboy.__version__} {_rdkit_version()}".encode(), digest_size=20)
     for name in _COMPILING_CODE:
         code = _PACKAGE / name
         if code.is_file():

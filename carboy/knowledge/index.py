@@ -39,10 +39,10 @@ def graph(path: Path | None = None) -> Graph:
     """The whole rdflib graph (facts and vocabulary), for queries and export. Raises KnowledgeProblems if a file is no
     Turtle.
     """
-    from rdflib import Graph  # noqa: PLC0415 - 0.15 s, not for a check that finds the cache
+    from rdflib import Graph
 
-    from carboy.knowledge.loading import parse_turtle  # noqa: PLC0415 - brings rdflib
-    from carboy.knowledge.vocabulary import NAMESPACES  # noqa: PLC0415
+    from carboy.knowledge.loading import parse_turtle
+    from carboy.knowledge.vocabulary import NAMESPACES
 
     graphs, problems = parse_turtle(read_files(path))
     if problems:
@@ -57,8 +57,8 @@ def graph(path: Path | None = None) -> Graph:
 
 
 def _compile(files: dict[str, bytes]) -> Index:
-    from carboy.knowledge.compile import compile_index  # noqa: PLC0415 - brings rdflib
-    from carboy.knowledge.loading import load_facts  # noqa: PLC0415
+    from carboy.knowledge.compile import compile_index
+    from carboy.knowledge.loading import load_facts
 
     facts, problems = load_facts(files)
     if facts is None:

@@ -212,7 +212,7 @@ class Names:
         """Up to ``n`` names of substances and materials that are spelled nearly like ``text``, nearest first; they
         may be none.
         """
-        from rapidfuzz import fuzz, process  # noqa: PLC0415 - only where a name was not found
+        from rapidfuzz import fuzz, process
 
         compact = plain_formula("".join(text.split()))
         same_letters = [

@@ -30,7 +30,7 @@ def composition_key(atoms: Atoms) -> str:
     return "" if "C" in atoms else "hill:" + hill_formula(atoms)
 
 
-def build_names(  # noqa: PLR0913, PLR0917 - one for each kind of thing
+def build_names(
     substances: Mapping[str, Substance],
     materials: Mapping[str, Material],
     containers: Mapping[str, Container],

@@ -41,7 +41,7 @@ def in_order(problems: Iterable[Problem]) -> list[Problem]:
     )
 
 
-class KnowledgeProblems(KnowledgeError):  # noqa: N818 - it carries several
+class KnowledgeProblems(KnowledgeError):
     """All errors that were found in kb/, in the order of files. ``problems`` has them one by one."""
 
     def __init__(self, problems: Iterable[Problem]) -> None:

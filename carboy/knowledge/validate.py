@@ -32,7 +32,7 @@ def check_shapes(graphs: Mapping[str, Graph]) -> list[Problem]:
     """What the SHACL shapes of shapes.ttl find in the union of all files; a folder without shapes.ttl has none."""
     if SHAPES not in graphs:
         return []
-    from pyshacl import validate  # noqa: PLC0415 - slow to import
+    from pyshacl import validate
 
     whole = Graph(bind_namespaces="none")
     homes: dict[object, str] = {}

@@ -35,12 +35,17 @@ class Source(Struct, frozen=True):
 
 
 class ChemicalClass(Struct, frozen=True):
-    """A SKOS concept; ``broader`` are the classes directly above."""
+    """A SKOS concept; ``broader`` are the classes directly above.
+
+    A structure belongs to it if it matches one of ``smarts`` and none of ``not_smarts``; a class without ``smarts`` is stated only.
+    """
 
     key: str  # kebab-case, singular: "metal-sulfide"
     label: str
     broader: tuple[str, ...] = ()
     note: str = ""
+    smarts: tuple[str, ...] = ()
+    not_smarts: tuple[str, ...] = ()
 
 
 class Species(Struct, frozen=True):
@@ -88,7 +93,8 @@ class Substance(Struct, frozen=True):
     synonyms: tuple[str, ...] = ()
     cas: tuple[str, ...] = ()
     smiles: str = ""
-    classes: tuple[str, ...] = ()
+    classes: tuple[str, ...] = ()  # stated ones, then those that its structure adds
+    derived: tuple[str, ...] = ()  # those of `classes` that nobody stated: by its structure
     ghs: tuple[str, ...] = ()
     yields: dict[str, float] = {}  # species per formula unit when it dissolves, H2O balanced in (may be negative)
     density: Value | None = None  # g/mL
