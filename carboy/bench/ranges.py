@@ -14,6 +14,7 @@ _MIDDLE = 4
 _GRID = {1: 9, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may lie between the ends
 _ALONE = (0, 2, 6, 8)  # with many ranges, where each is tried with the others nominal
 SAMPLED_CORNERS = 12
+WIDE = 4.0  # ends further apart than this have the points between them in equal ratios
 OPEN_END_FACTOR = 10.0  # "at least x" is followed up to ten times x
 
 
@@ -79,6 +80,15 @@ class Ranges:
 
 
 def _at(variable: tuple[float, float, float], share: float) -> float:
-    """A value along low, nominal, high: linear on both sides of the nominal value, which lies at half."""
+    """A value along low, nominal, high, of which the nominal one lies at half."""
     low, nominal, high = variable
-    return low + (nominal - low) * 2 * share if share <= 0.5 else nominal + (high - nominal) * (2 * share - 1)
+    return _between(low, nominal, 2 * share) if share <= 0.5 else _between(nominal, high, 2 * share - 1)
+
+
+def _between(first: float, last: float, share: float) -> float:
+    """A value between two: in equal steps, or in equal ratios where they lie far apart, so that no decade goes without a point."""
+    if share in (0.0, 1.0):
+        return last if share else first
+    if first > 0 and last > WIDE * first:
+        return float(first * (last / first) ** share)
+    return first + (last - first) * share

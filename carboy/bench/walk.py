@@ -11,7 +11,9 @@ import numpy as np
 from carboy.bench.follow import along, at_contact, stored
 from carboy.bench.make_up import Bench, MadeUp
 from carboy.bench.ranges import Ranges
+from carboy.bench.separation import separated
 from carboy.bench.trace import Course, StepTrace
+from carboy.bench.vessels import Pouring, VesselState
 from carboy.chemistry.mixture import (
     ATMOSPHERE_KPA,
     GAS_CONSTANT_KPA,
@@ -30,7 +32,6 @@ from carboy.model.plan import (
     Check,
     Cover,
     Filter,
-    Interval,
     Portion,
     Rinse,
     Step,
@@ -46,40 +47,7 @@ from carboy.reasoning.record import Record
 
 _HOUR = 3600.0
 _DAY = 24 * _HOUR
-_LIQUID_IN_CAKE = 2.0  # mL of liquid kept per g of moist solid by a drained filter cake; common practice
 _DEFAULT_ROOM = 2.0  # a vessel that is not described holds twice the final volume
-
-
-@dataclass
-class VesselState:
-    """A vessel on the bench."""
-
-    spec: VesselSpec
-    content: Mixture
-    capacity_L: Array
-    rating_kPa: Array | None
-    cover: str
-    air_mol: Array | None = None
-    pours: dict[str, frozenset[int]] = field(default_factory=dict)
-    earlier: dict[str, frozenset[str]] = field(default_factory=dict)
-    labels: list[str] = field(default_factory=list)
-    unknown: bool = False  # holds something that nobody could name, so that its pH is anybody's guess
-
-    @property
-    def filled(self) -> bool:
-        return bool(self.content.amounts)
-
-
-@dataclass(frozen=True)
-class Pouring:
-    """What is poured in one step: its content, the words of its label, how long it takes, and the portion where it comes off a label."""
-
-    action: str
-    content: Mixture
-    label: str
-    over: Interval | None
-    portion: Portion | None
-    made: MadeUp | None
 
 
 @dataclass
@@ -478,19 +446,17 @@ class Walker:
         walk.steps.append(self._trace(number, action, state, state.content, surroundings, walk, before=before))
 
     def _wait(self, number: int, step: Wait, walk: Walk) -> None:
-        state = self._vessel(step.vessel, walk)
         seconds = None if step.duration is None else step.duration.high
-        slowest = (
-            "minutes"
-            if step.kind == "stir" or seconds is None or seconds < 0.5 * _HOUR
-            else "hours"
-            if seconds < 0.5 * _DAY
-            else "days"
-        )
+        slowest = "days"
+        if step.kind == "stir" or seconds is None or seconds < 0.5 * _HOUR:
+            slowest = "minutes"
+        elif seconds < 0.5 * _DAY:
+            slowest = "hours"
         words = step.kind if seconds is None else f"{step.kind} {_time_words(seconds)}"
-        self._stand(
-            number, words, state, slowest, None if seconds is None else np.full(walk.ranges.lanes, seconds), walk
-        )
+        duration = None if seconds is None else np.full(walk.ranges.lanes, seconds)
+        filled = [state for state in walk.vessels.values() if state.filled]
+        for state in [self._vessel(step.vessel, walk)] if step.vessel or not filled else filled:
+            self._stand(number, words, state, slowest, duration, walk)
 
     def _cover(self, number: int, step: Cover, walk: Walk) -> None:
         state = self._vessel(step.vessel, walk)
@@ -536,43 +502,14 @@ class Walker:
         if not state.filled:
             raise InputError(f"step {number}: vessel '{step.vessel}' is empty")
         content = state.content
-        solid_amounts: dict[str, Array] = {}
-        grams = content.zeros()
-        for token, amount in content.solids.items():
-            grams = grams + amount * self.stock.molar_mass(token)
-            for component, count in self.stock.components_of(token).items():
-                solid_amounts[component] = solid_amounts.get(component, content.zeros()) + count * amount
-        for token, amount in content.aside.items():
-            if self.stock.species(token).phase == "s":
-                grams = grams + amount * self.stock.molar_mass(token)
-                solid_amounts[token] = amount
         passes = 0.0 if step.passes is None else step.passes.high
-        retained_mL = (_LIQUID_IN_CAKE if step.retained is None else step.retained) * grams
-        kept = np.clip(retained_mL / 1000 / np.maximum(content.volume_L, 1e-9), 0.0, 0.5)
-        liquid = {token: amount - solid_amounts.get(token, 0.0) for token, amount in content.amounts.items()}
-        liquid = {token: value if token == PROTON else np.maximum(value, 0.0) for token, value in liquid.items()}
-        stays = {token: value * (1 - kept) + passes * solid_amounts.get(token, 0.0) for token, value in liquid.items()}
-        cake = {token: value * kept + (1 - passes) * solid_amounts.get(token, 0.0) for token, value in liquid.items()}
+        clear, sludge = separated(content, retained_mL_per_g=step.retained, passes=passes)
         filtrate_name = step.filtrate or f"{state.spec.name} filtrate"
         cake_name = step.cake or f"{state.spec.name} cake"
         spec = walk.vessels.get(filtrate_name)
         jug = spec or self._new_vessel(VesselSpec(name=filtrate_name), walk, walk.ranges.lanes, state.capacity_L)
         holder = walk.vessels.get(cake_name) or self._new_vessel(
             VesselSpec(name=cake_name), walk, walk.ranges.lanes, state.capacity_L
-        )
-        clear = self._part(
-            content,
-            stays,
-            content.volume_L * (1 - kept),
-            np.maximum(content.mass_g - grams, 0.0) * (1 - kept),
-            1 - kept,
-        )
-        sludge = self._part(
-            content,
-            cake,
-            np.maximum(content.volume_L * kept, grams / 2000),
-            grams + np.maximum(content.mass_g - grams, 0.0) * kept,
-            kept,
         )
         state.content = empty(self.stock, content.lanes, float(content.temperature_C[0]))
         came_from, was_here = state.pours, dict(state.earlier)
@@ -595,17 +532,6 @@ class Walker:
                 walk,
                 sludge=holder.content,
             )
-        )
-
-    def _part(self, content: Mixture, amounts: dict[str, Array], volume: Array, mass: Array, share: Array) -> Mixture:
-        return Mixture(
-            self.stock,
-            amounts,
-            {name: value * share for name, value in content.labelled.items()},
-            volume,
-            mass,
-            content.temperature_C.copy(),
-            network_temperature_C=content.network_temperature_C,
         )
 
 

@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from carboy.cli.output import write
+from carboy.cli.output import first_reading, write
 
 HELP = """Ask the graph and the rules in the words of the rules. A word with ? is what you want to know.
 
@@ -35,7 +35,8 @@ def ask(
     from carboy.rulebook.book import load_rules
     from carboy.rulebook.query import Questions
 
-    questions = Questions(load_index(), load_rules())
+    with first_reading():
+        questions = Questions(load_index(), load_rules())
     variables, answers = questions.ask(pattern)
     if json:
         from msgspec.json import encode, format

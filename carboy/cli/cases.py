@@ -7,7 +7,7 @@ from typing import Annotated
 
 import typer
 
-from carboy.cli.output import Progress, Status, write
+from carboy.cli.output import Progress, Status, first_reading, write
 
 HELP = """Run the expect blocks of case files, one line a case. Without files: the cases that ship with carboy.
 
@@ -36,7 +36,8 @@ def cases(
     if not found:
         raise InputError("there is no case file here")
     style = style_for(plain=plain)
-    lab = laboratory()
+    with first_reading():
+        lab = laboratory()
     failed = unreadable = expectations = 0
     with Progress("case") as progress:
         for number, file in enumerate(found, start=1):

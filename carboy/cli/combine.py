@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from carboy.cli.output import status_of, write
+from carboy.cli.output import first_reading, status_of, write
 
 HELP = """May these bottles go together? They are poured one after the other, in the order given.
 
@@ -16,6 +16,7 @@ carboy combine "about 2 L of household bleach" "250 mL of 2 M NaOH"
 carboy combine "50 g of sodium bicarbonate" "1 L of 1 M HCl" --volume "2 L" --cover sealed
 carboy combine "1 L of (0.05 M mercury(II) nitrate + 0.5 M nitric acid)" "20 g of CAS 1313-82-2"
 carboy combine "1 L of unknown, pH 2" "1 L of 0.1 M KCN" --place hood --hood-flow "0.4 m3/s"
+carboy combine "1 L of 0.1 M sodium sulfide" "1 L of 0.5 M HCl" --why 1
 
 A portion is what stands on a label: amount, strength, name, formula, CAS number or SMILES.
 Ranges are followed to their ends: "10-50 g/L", "about 2 L", "up to 5 g", "trace of", "unknown"."""
@@ -42,10 +43,12 @@ def combine(
     json: Annotated[bool, typer.Option("--json", help="Print the report as one JSON object.")] = False,
     plain: Annotated[bool, typer.Option("--plain", help="ASCII without colour, for logs.")] = False,
     full: Annotated[bool, typer.Option("--full", help="Every derivation, note and citation.")] = False,
+    why: Annotated[
+        int | None, typer.Option(metavar="N", help="How the numbers of finding (N) were had; nothing else.")
+    ] = None,
 ) -> None:
+    from carboy.cli.printing import printed
     from carboy.errors import InputError
-    from carboy.reports.style import style_for
-    from carboy.reports.terminal import report_text
     from carboy.text.cases import setting_from_mapping, vessel_from_mapping
     from carboy.vetting import laboratory
 
@@ -59,12 +62,10 @@ def combine(
         "temperature": temperature,
     }
     setting = setting_from_mapping({key: value for key, value in surroundings.items() if value})
-    lab = laboratory()
+    with first_reading():
+        lab = laboratory()
     described = {"volume": volume, "material": material, "cover": cover}
     vessel = vessel_from_mapping("vessel", {key: value for key, value in described.items() if value}, lab.names)
     report = lab.combine(tuple(portions), setting, vessel)
-    if json:
-        write(report.model_dump_json(indent=2))
-    else:
-        write(report_text(report, style_for(plain=plain), lab.index.sources, full=full))
+    write(printed([report], lab, json=json, plain=plain, full=full, why=why))
     raise typer.Exit(status_of([report]))

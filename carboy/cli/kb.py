@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from carboy.cli.output import Progress, Status, write
+from carboy.cli.output import Progress, Status, Waiting, write
 
 if TYPE_CHECKING:
     from carboy.model.knowledge import Index
@@ -51,7 +51,8 @@ def check(
 
     if rules is not None and not rules.exists():
         raise InputError(f"there is no rule file or folder '{rules}'")
-    problems = check_knowledge(kb)
+    with Waiting("Loading the graph and running its shapes (some seconds)"):
+        problems = check_knowledge(kb)
     lines = [f"kb/{one}" for one in problems if one.severity == "error" or notes]
     errors = sum(one.severity == "error" for one in problems)
     for line in lines:
@@ -59,7 +60,8 @@ def check(
     if errors:
         write(f"kb: {_count(errors, 'error')}; the rules are not checked until it loads")
         raise typer.Exit(Status.OBJECTION)
-    index = load_index(kb)
+    with Waiting("Compiling the graph (some seconds)"):
+        index = load_index(kb)
     write(f"kb: {_content(index)}; sound")
     try:
         book = load_rules(rules)
@@ -80,7 +82,8 @@ def _check_rules(book: tuple[Rule, ...], index: Index, only: list[str], *, quick
     unknown = [one for one in only if one not in {rule.id for rule in book}]
     if unknown:
         raise InputError(f"there is no rule '{unknown[0]}'")
-    problems = lint_rules(book, index, names=index.names, parse_portion=lambda text: parse_portion(text, names))
+    with Waiting(f"Checking {len(book)} rules (some seconds)"):
+        problems = lint_rules(book, index, names=index.names, parse_portion=lambda text: parse_portion(text, names))
     for one in problems:
         write(f"rules/{one}" if one.severity == "error" else f"rules/{one} ({one.severity})")
     errors = sum(one.severity == "error" for one in problems)

@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from carboy.cli.output import write
+from carboy.cli.output import first_reading, write
 
 HELP = """What the graph knows of a substance, material, gas, species, class, container material or source.
 
@@ -34,7 +34,8 @@ def look(
     from carboy.knowledge.names import Names
 
     text = " ".join(" ".join(name).split())
-    index = load_index()
+    with first_reading():
+        index = load_index()
     names = Names(index)
     found = entries(text, index, names) if text else []
     if not found:

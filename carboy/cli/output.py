@@ -13,6 +13,9 @@ if TYPE_CHECKING:
     from carboy.model.report import Report, Verdict
 
 
+FIRST_READING = "Reading the knowledge graph for the first time (some seconds)"
+
+
 class Status(IntEnum):
     """Exit status of the contract."""
 
@@ -74,3 +77,33 @@ class Progress:
         if self._shown:
             sys.stderr.write("\r\033[K")
             sys.stderr.flush()
+
+
+class Waiting:
+    """A line on standard error while something takes some seconds that cannot be counted; nothing where that is no terminal."""
+
+    def __init__(self, words: str) -> None:
+        self._words = words if sys.stderr.isatty() else ""
+
+    def __enter__(self) -> Self:
+        if self._words:
+            sys.stderr.write(self._words)
+            sys.stderr.flush()
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        if self._words:
+            sys.stderr.write("\r\033[K")
+            sys.stderr.flush()
+
+
+def first_reading() -> Waiting:
+    """To be waited in while the knowledge is loaded: says so where the graph must be compiled first."""
+    words = ""
+    if sys.stderr.isatty():
+        from carboy.knowledge.index import is_compiled
+
+        words = "" if is_compiled() else FIRST_READING
+    return Waiting(words)

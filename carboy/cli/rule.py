@@ -6,7 +6,7 @@ from typing import Annotated
 
 import typer
 
-from carboy.cli.output import write
+from carboy.cli.output import first_reading, write
 
 HELP = """A rule in its own words: what it says, what prevents it, its conditions, equations, sources and examples.
 
@@ -33,11 +33,20 @@ def rule(
         write(list_text(list(rules.values()), style))
         return
     if identifier not in rules:
-        from rapidfuzz import process
+        from rapidfuzz import fuzz, process
 
-        near = process.extract(identifier, list(rules), limit=3, score_cutoff=60)
+        # by words in any order, so that a few words of an id find it, and a word that is in none finds nothing
+        near = process.extract(
+            identifier, list(rules), scorer=fuzz.token_set_ratio, processor=_words, limit=3, score_cutoff=75
+        )
         raise InputError(f"there is no rule '{identifier}'", suggestions=tuple(word for word, _, _ in near))
     from carboy.knowledge.index import load_index
     from carboy.reports.rules import rule_page
 
-    write(rule_page(rules[identifier], style, load_index().sources))
+    with first_reading():
+        sources = load_index().sources
+    write(rule_page(rules[identifier], style, sources))
+
+
+def _words(identifier: str) -> str:
+    return " ".join(identifier.casefold().replace("-", " ").split())

@@ -159,7 +159,8 @@ class Judge:
             return []
         lane = draft.lane
         if lane is None:
-            lane = worst_lane(draft.levels, draft.levels if draft.amount is None else draft.amount)
+            size = draft.levels.astype(float) if draft.amount is None else draft.amount
+            lane = worst_lane(draft.levels, size)
         return sights(draft.rules, draft.bound_by, course, draft.trace.surroundings, lane, self.stock)
 
     def plain_formula(self, token: str) -> str:

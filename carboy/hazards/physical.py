@@ -118,10 +118,12 @@ def _heat_measures(course: Course, lane: int, rise: float, top: float, scale: Sc
     ]
     row = lane // course.points
     heats, capacities = course.table(course.heat_kJ)[row], course.table(course.capacity_kJ_K)[row]
-    most = int(np.argmax(heats - ceiling * capacities))  # where along the addition most is beyond what the content may keep
-    surplus = float(heats[most] - ceiling * capacities[most])
+    beyond = heats - ceiling * capacities
+    most = int(np.argmax(beyond))
+    surplus = float(beyond[most])
     if surplus > 0:
         power = scale["bath-cooling"]
+        slowest = int(np.argmax(beyond / course.fractions))  # where the heat runs furthest ahead of an even bath
         measures += [
             Measure(
                 quantity=f"to be carried off so that it stays within {ceiling:g} K",
@@ -136,12 +138,18 @@ def _heat_measures(course: Course, lane: int, rise: float, top: float, scale: Sc
                 ],
             ),
             Measure(
-                quantity=f"shortest time of addition, evenly, in a bath that takes away {power:g} W",
-                value=surplus / (power / 1000) / 60,
+                quantity=f"shortest time of addition in a bath that takes away {power:g} W",
+                value=float(beyond[slowest] / course.fractions[slowest]) / (power / 1000) / 60,
                 unit="min",
-                basis=f"what is beyond {ceiling:g} K goes into the bath; half the bath's power, twice the time",
-                equation="time = surplus / power",
-                inputs=[plain("surplus", surplus, "kJ"), plain("power", power, "W", "bath-cooling of the assessment")],
+                basis=f"even addition; what is beyond {ceiling:g} K goes into the bath; half the power, twice the time",
+                equation="time = (Q - C x allowed rise) / (fraction added x power), where it is most",
+                inputs=[
+                    plain("Q", float(heats[slowest]), "kJ"),
+                    plain("C", float(capacities[slowest]), "kJ/K", capacity_basis),
+                    plain("allowed rise", ceiling, "K"),
+                    plain("fraction added", float(course.fractions[slowest]), "1"),
+                    plain("power", power, "W", "bath-cooling of the assessment"),
+                ],
             ),
         ]
     if top > BOILING_WATER:
@@ -202,7 +210,7 @@ def foam_drafts(trace: StepTrace, stock: ChemicalStock, scale: Scale) -> list[Dr
     equation, left, right = formation_equation(stock, stock.dissolved_form.get(token, token))
     measures = [
         Measure(
-            quantity=f"gas{spread}",
+            quantity=f"gas in bubbles{spread}",
             value=float(litres.flat[lane]),
             unit="L",
             basis="bubbles of an open vessel at 1 atm, 25 degC",

@@ -1,8 +1,9 @@
 """The table of names of the index, built when it is compiled.
 
 Keys: a folded name of a substance or material as it is; others with a mark in front: ``formula:`` (as written, plain),
-``lower:`` (the same in lower case), ``hill:`` (by atoms), ``cas:``, ``smiles:``, ``container:``, ``class:``, ``gas:``
-(folded names). A name that fits two things is a fault; a formula or SMILES that fits two (isomers, mixtures) is left
+``lower:`` (the same in lower case), ``hill:`` (by atoms), ``cas:``, ``smiles:`` (as written, as RDKit writes it, and that without
+stereochemistry), ``container:``, ``class:``, ``gas:`` (folded names), ``ion:`` (folded name of an ion, without the word),
+``spelling:`` (another way to write the formula of an ion, without its charge). A name that fits two things is a fault; a formula or SMILES that fits two (isomers, mixtures) is left
 out, so that it is asked back.
 """
 
@@ -11,8 +12,8 @@ from __future__ import annotations
 from collections.abc import Iterable, Mapping
 
 from carboy.knowledge.folding import fold
-from carboy.model.knowledge import ChemicalClass, Container, Gas, Material, Substance
-from carboy.text.formulas import Atoms, hill_formula, is_formula, plain_formula
+from carboy.model.knowledge import ChemicalClass, Container, Gas, Material, Species, Substance
+from carboy.text.formulas import Atoms, hill_formula, is_formula, parse_formula, plain_formula, split_token
 
 
 class NameClashError(Exception):
@@ -37,8 +38,9 @@ def build_names(
     classes: Mapping[str, ChemicalClass],
     gases: Mapping[str, Gas],
     class_synonyms: Mapping[str, Iterable[str]],
+    structures: Mapping[str, Iterable[str]],
 ) -> tuple[dict[str, str], list[NameClashError]]:
-    """All names -> what they mean, and the clashes."""
+    """All names -> what they mean, and the clashes. ``structures``: substance id -> its SMILES as RDKit writes them."""
     table = _Table()
     for item in substances.values():
         target = f"substance:{item.id}"
@@ -61,14 +63,43 @@ def build_names(
     for gas in gases.values():
         if gas.name:
             table.add(f"gas:{fold(gas.name)}", f"gas:{gas.species}", gas.name)
-    _add_formulas(table, substances)
+    _add_formulas(table, substances, structures)
     for kind, ids in (("substance", substances), ("material", materials)):
         for identifier in ids:
             table.names.setdefault(fold(identifier), f"{kind}:{identifier}")
     return table.names, table.clashes
 
 
-def _add_formulas(table: _Table, substances: Mapping[str, Substance]) -> None:
+def add_ions(
+    names: dict[str, str], species: Mapping[str, Species], synonyms: Mapping[str, Iterable[str]]
+) -> list[NameClashError]:
+    """Add names and spellings of the dissolved ions to the table ``names``; the clashes.
+
+    A name is the preferred one up to a comma and without the word ion. Among the ``synonyms`` (token -> other names) one
+    that ends in the charge (``CH3COO-``) is a spelling of the formula.
+    """
+    table = _Table(names)
+    for token, item in species.items():
+        if item.phase != "aq" or not item.charge:
+            continue
+        target = f"species:{token}"
+        preferred = item.name.partition(",")[0].removesuffix(" ion").strip()
+        if preferred:
+            table.add(f"ion:{fold(preferred)}", target, item.name)
+        for other in synonyms.get(token, ()):
+            formula, charge = split_token(other)
+            if charge and " " not in other and is_formula(formula):
+                if charge != item.charge or parse_formula(formula).atoms != item.atoms:
+                    table.clashes.append(NameClashError(other, "another composition:", target))
+                table.add(f"spelling:{plain_formula(formula)}", target, other)
+            else:
+                table.add(f"ion:{fold(other)}", target, other)
+    return table.clashes
+
+
+def _add_formulas(
+    table: _Table, substances: Mapping[str, Substance], structures: Mapping[str, Iterable[str]]
+) -> None:
     """Formulas of substances that no name has taken; of several with one formula the plain one (zinc, not zinc
     powder) or none.
     """
@@ -76,8 +107,8 @@ def _add_formulas(table: _Table, substances: Mapping[str, Substance]) -> None:
     for item in substances.values():
         formula = plain_formula(item.formula)
         by_key.setdefault(f"formula:{formula}", []).append(item.id)
-        if item.smiles:
-            by_key.setdefault(f"smiles:{item.smiles}", []).append(item.id)
+        for smiles in dict.fromkeys([item.smiles, *structures.get(item.id, ())] if item.smiles else ()):
+            by_key.setdefault(f"smiles:{smiles}", []).append(item.id)
         key = composition_key(item.atoms)
         if key:
             by_key.setdefault(key, []).append(item.id)
@@ -95,8 +126,8 @@ def _add_formulas(table: _Table, substances: Mapping[str, Substance]) -> None:
 
 
 class _Table:
-    def __init__(self) -> None:
-        self.names: dict[str, str] = {}
+    def __init__(self, names: dict[str, str] | None = None) -> None:
+        self.names: dict[str, str] = {} if names is None else names
         self.clashes: list[NameClashError] = []
 
     def add(self, key: str, target: str, name: str) -> None:

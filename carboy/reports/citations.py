@@ -7,8 +7,6 @@ from collections.abc import Iterable, Iterator, Mapping
 from carboy.model.knowledge import Source
 from carboy.reports.style import Style, wrapped
 
-_SHORT = 96
-
 
 class Citations:
     """Numbers sources in the order in which they are first cited. ``sources`` has what their keys stand for."""
@@ -31,12 +29,13 @@ class Citations:
         margin = len(str(len(self._order))) + 4
         for key, number in self._order.items():
             source = self._sources.get(key)
-            text = key if source is None else (source.citation if full else short(source.citation))
-            yield from wrapped(text, style.width, f"[{number}]".rjust(margin) + " ")
+            lead = f"[{number}]".rjust(margin) + " "
+            text = key if source is None else source.citation
+            yield from wrapped(text if full else short(text, style.width - len(lead)), style.width, lead)
 
 
-def short(citation: str) -> str:
-    """The citation cut at a word after about a line."""
-    if len(citation) <= _SHORT:
+def short(citation: str, most: int) -> str:
+    """The citation cut at a word, so that it takes at most so many columns (an ellipsis is three of them in ASCII)."""
+    if len(citation) <= most:
         return citation
-    return citation[:_SHORT].rsplit(" ", 1)[0].rstrip(" ,;:.") + " …"
+    return citation[: most - len(" ...")].rsplit(" ", 1)[0].rstrip(" ,;:.") + " …"

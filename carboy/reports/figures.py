@@ -1,4 +1,4 @@
-"""Numbers as people read them: three figures, ranges, thin groups of thousands, units with proper signs."""
+"""Numbers as people read them: three figures, ranges, thin groups of thousands, units of a handy size with proper signs."""
 
 from __future__ import annotations
 
@@ -7,11 +7,21 @@ from collections.abc import Sequence
 
 _UNITS = {"m3": "m³", "degC": "°C", "m3/s": "m³/s", "dm3": "dm³", "1": ""}
 _SUPERSCRIPT = str.maketrans("0123456789-+", "⁰¹²³⁴⁵⁶⁷⁸⁹⁻⁺")
+# unit -> (from which size on, divided by, shown as), the largest first; below the last the figure stays as it is
+_SIZES: dict[str, tuple[tuple[float, float, str], ...]] = {
+    "mol": ((0.1, 1.0, "mol"), (1e-4, 1e-3, "mmol"), (1e-8, 1e-6, "µmol")),
+    "L": ((1000.0, 1000.0, "m3"), (0.1, 1.0, "L"), (1e-4, 1e-3, "mL")),
+    "m3": ((0.1, 1.0, "m3"), (1e-4, 1e-3, "L")),
+    "kg": ((1.0, 1.0, "kg"), (1e-4, 1e-3, "g")),
+    "g": ((1000.0, 1000.0, "kg"), (0.1, 1.0, "g"), (1e-4, 1e-3, "mg")),
+    "min": ((2880.0, 1440.0, "d"), (120.0, 60.0, "h"), (1.0, 1.0, "min"), (1 / 60, 1 / 60, "s")),
+    "ppm": ((10_000.0, 10_000.0, "vol %"), (0.0, 1.0, "ppm")),
+}
 _NO_BREAK = "\u00a0"
 
 
 def number(value: float, digits: int = 3) -> str:
-    """``value`` to ``digits`` significant figures: ``0.0765``, ``12.3``, ``1 004``, ``2.5×10⁻⁸``."""
+    """``value`` to ``digits`` significant figures: ``0.0765``, ``12.3``, ``1000``, ``2.5×10⁻⁸``."""
     if not math.isfinite(value):
         return "unknown" if math.isnan(value) else ("no limit" if value > 0 else "below any figure")
     if value == 0:
@@ -26,7 +36,7 @@ def number(value: float, digits: int = 3) -> str:
     text = f"{value:.{places}f}"
     if "." in text:
         text = text.rstrip("0").rstrip(".")
-    elif size >= 10 ** (digits + 1):
+    elif size >= 10**digits:
         text = str(round(value, digits - 1 - math.floor(math.log10(size))) // 1).split(".", maxsplit=1)[0]
     whole, dot, rest = text.partition(".")
     sign, whole = ("−", whole[1:]) if whole.startswith("-") else ("", whole)
@@ -56,6 +66,21 @@ def quantity(value: float | Sequence[float] | None, unit: str, digits: int = 3) 
         return shown
     figures = span(value, digits) if isinstance(value, Sequence) else number(value, digits)
     return f"{figures}{_NO_BREAK}{shown}".rstrip(_NO_BREAK) if shown else figures
+
+
+def handy(value: float | Sequence[float] | None, unit: str, digits: int = 3) -> str:
+    """As :func:`quantity`, in the unit in which it reads best: ``3.6 g`` for 0.0036 kg, ``97 vol %`` for 970 000 ppm, ``1.4 d`` for 2016 min.
+
+    A range is told in the unit of its larger end.
+    """
+    if value is None:
+        return quantity(value, unit, digits)
+    ends = list(value) if isinstance(value, Sequence) else [value]
+    largest = max(map(abs, ends))
+    for least, divisor, shown in _SIZES.get(unit, ()):
+        if largest >= least:
+            return quantity([one / divisor for one in ends], shown, digits)
+    return quantity(ends, unit, digits)
 
 
 def runs(numbers: Sequence[int]) -> str:

@@ -5,36 +5,44 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 
 from carboy.model.report import Finding, Pair, Report, StepReport
-from carboy.reports.figures import quantity, runs, span
+from carboy.reports.figures import handy, runs, span
 from carboy.reports.sentences import numbered
 from carboy.reports.style import Style, wrapped
 from carboy.reports.table import table
 
 _LEAST_SHOWN = 1e-12  # mol
+_LEAST_GAS = 1e-6  # mol: less is no news in a table
 _LEAST_PRESSURE = 0.05  # kPa
-_LABEL, _VALUE = 27, 20  # columns for the name and the figure of a measure
+_LABEL, _VALUE = 30, 20  # columns for the name and the figure of a measure where what it rests on stands beside it
 
 
-def measure_lines(report: Report, style: Style) -> Iterator[str]:
-    """The numbers of the findings above a note, with what they rest on."""
+def measure_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
+    """The numbers of the findings above a note, each once for one substance; with ``full`` what they rest on too."""
     entries = [(number, finding) for number, finding in numbered(report) if finding.measures or finding.amount_mol]
     if not entries:
         return
     yield ""
     yield style.strong("Numbers")
     rows: list[list[str]] = []
+    shown: set[tuple[str, ...]] = set()
     for number, finding in entries:
         own = [_formed(finding, style)] if finding.amount_mol is not None and finding.species else []
         for measure in finding.measures:
             value = list(measure.value) if isinstance(measure.value, Sequence) else measure.value
-            own.append([measure.quantity, quantity(value, measure.unit), style.words(measure.basis)])
-        rows += [[f"({number})" if place == 0 else "", *row] for place, row in enumerate(own)]
-    yield from table(rows, style.width, indent=2, limits={1: _LABEL, 2: _VALUE})
+            own.append([style.words(measure.quantity), handy(value, measure.unit), style.words(measure.basis)])
+        if not full:
+            own = [row[:2] for row in own]
+        fresh = [row for row in own if (finding.order, *finding.species, *row) not in shown]
+        shown.update((finding.order, *finding.species, *row) for row in own)
+        rows += [[f"({number})" if place == 0 else "", *row] for place, row in enumerate(fresh)]
+    yield from table(rows, style.width, indent=2, limits={1: _LABEL, 2: _VALUE} if full else {1: style.width // 2 + 8})
+    if not full and entries:
+        yield from wrapped("--why 1 tells how the numbers of (1) were had, and so on.", style.width, "  ")
 
 
 def _formed(finding: Finding, style: Style) -> list[str]:
     assert finding.amount_mol is not None
-    return [f"{style.formula(finding.species[0])} formed", quantity(list(finding.amount_mol), "mol"), ""]
+    return [f"{style.formula(finding.species[0])} formed", handy(list(finding.amount_mol), "mol"), ""]
 
 
 def step_lines(report: Report, style: Style) -> Iterator[str]:
@@ -105,7 +113,8 @@ def _content(step: StepReport, style: Style) -> list[str]:
     split = {key.partition("(")[0] for key in step.dissolved_mol if "(" in key}
     dissolved = {key: pair for key, pair in step.dissolved_mol.items() if key not in split}
     for name, amounts in (("dissolved", dissolved), ("solid", step.solids_mol), ("gas", step.gas_mol)):
-        shown = [f"{_key(key, style)}\u00a0{span(pair)}" for key, pair in amounts.items() if pair[1] > _LEAST_SHOWN]
+        least = _LEAST_GAS if name == "gas" else _LEAST_SHOWN
+        shown = [f"{_key(key, style)}\u00a0{span(pair)}" for key, pair in amounts.items() if pair[1] > least]
         if shown:
             parts.append(f"{name}, mol: {'; '.join(shown)}")
     return parts

@@ -9,7 +9,7 @@ from carboy.model.report import Finding, GoalReport, Report
 from carboy.reports.citations import Citations
 from carboy.reports.figures import quantity, runs
 from carboy.reports.style import Style, wrapped
-from carboy.reports.words import KINDS, OTHER_ORDER, VERDICTS, by_signal, moment_words, of_other_order
+from carboy.reports.words import EITHER_ORDER, KINDS, OTHER_ORDER, VERDICTS, by_signal, moment_words, of_other_order
 
 _MARGIN = 9  # columns of "WARNING  "
 _MOST_NOTES = 6
@@ -26,12 +26,20 @@ def verdict_lines(report: Report, style: Style) -> Iterator[str]:
     yield from lines[1:]
     if report.title:
         yield from wrapped(report.title, style.width)
+    if all_alike(report):
+        yield from wrapped("This holds whichever is poured into which.", style.width)
     if report.unrecognised:
         yield ""
         yield style.strong("Not recognised")
         for item in report.unrecognised:
             yield from wrapped(item, style.width, "  - ")
         yield from wrapped("What it does is not judged; the rest is, as if it were not there.", style.width, "  ")
+
+
+def all_alike(report: Report) -> bool:
+    """Whether two bottles do the same whichever is poured into the other."""
+    orders = [finding.order for _, finding in numbered(report)]
+    return len(orders) > 1 and set(orders) == {EITHER_ORDER}
 
 
 def numbered(report: Report) -> list[tuple[int, Finding]]:
@@ -45,12 +53,13 @@ def finding_lines(report: Report, style: Style, citations: Citations, *, full: b
     """Dangers, warnings and notes in sentences, then what the other order of pouring would bring."""
     actions = {step.step: step.action for step in report.steps} if len(report.steps) > _FEW_STEPS else {}
     entries = numbered(report)
+    alike = all_alike(report)
     told: dict[str, int] = {}
     for number, finding in entries:
         if finding.order != OTHER_ORDER:
             yield ""
-            yield from _told(number, finding, actions, style, citations, told)
-    notes = by_signal(report, "note")
+            yield from _told(number, finding, actions, style, citations, told, alike=alike)
+    notes = [one for one in by_signal(report, "note") if full or not _told_above(one, entries)]
     if notes:
         yield ""
     shown = notes if full else notes[:_MOST_NOTES]
@@ -68,13 +77,29 @@ def finding_lines(report: Report, style: Style, citations: Citations, *, full: b
             yield from _told(number, finding, actions, style, citations, told)
 
 
+def _told_above(note: Finding, entries: Sequence[tuple[int, Finding]]) -> bool:
+    """Whether what stays dissolved of a metal is the subject of a warning or danger already."""
+    return note.kind == "incomplete" and any(
+        finding.kind == "remobilised"
+        and (finding.step, finding.vessel, finding.species) == (note.step, note.vessel, note.species)
+        for _, finding in entries
+    )
+
+
 def _head(word: str, style: Style) -> str:
     shown = style.alarm(word) if word == "DANGER" else style.strong(word)
     return shown + " " * (_MARGIN - len(word))
 
 
 def _told(
-    number: int, finding: Finding, actions: dict[int, str], style: Style, citations: Citations, told: dict[str, int]
+    number: int,
+    finding: Finding,
+    actions: dict[int, str],
+    style: Style,
+    citations: Citations,
+    told: dict[str, int],
+    *,
+    alike: bool = False,
 ) -> Iterator[str]:
     """One finding. ``told`` has what was said of others before, so that nothing is said twice."""
     margin = " " * _MARGIN
@@ -93,14 +118,10 @@ def _told(
         yield from wrapped(style.words(control), style.width, f"{margin}- ")
     before = {said} | {told[control] for control in finding.controls}
     before.discard(number)
+    about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions, alike=alike)}."
     if before:
         numbers = " and ".join(f"({one})" for one in sorted(before))
-        yield from wrapped(
-            f"{'See' if controls else 'Why, and what prevents it: see'} {numbers}{' too' if controls else ''}.",
-            style.width,
-            margin,
-        )
-    about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions)}."
+        about += f" See {numbers} too." if controls else f" Why, and what prevents it: see {numbers}."
     yield from (style.faint(line) for line in wrapped(about, style.width, margin))
 
 

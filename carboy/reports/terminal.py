@@ -29,11 +29,11 @@ def _lines(report: Report, style: Style, citations: Citations, *, full: bool) ->
     yield from finding_lines(report, style, citations, full=full)
     yield from goal_lines(report.goals, style)
     yield from listed("To settle it", report.questions, style)
-    yield from measure_lines(report, style)
+    yield from measure_lines(report, style, full=full)
     yield from step_lines(report, style)
     yield from path_lines(report, style, full=full)
     yield from listed("Taken as given", gathered(report.assumptions), style, faint=True)
     yield from citations.lines(style, full=full)
-    yield ""
-    for caution in report.cautions:
-        yield from wrapped(caution, style.width)
+    if report.cautions:
+        yield ""
+        yield from wrapped(" ".join(report.cautions), style.width)

@@ -33,18 +33,24 @@ KINDS: dict[Kind, str] = {
 _GRAVITY = {kind: place for place, kind in enumerate(KINDS)}
 SIGNALS: tuple[Signal, ...] = ("danger", "warning", "note")
 OTHER_ORDER = "other order"
+EITHER_ORDER = "either order"
+LAST_OF_TWO = 2  # where one thing is poured into another, the step that needs no number
 _WHOLE = 0.995
 _START = 0.005
 
 
-def moment_words(finding: Finding, actions: dict[int, str]) -> str:
-    """When it stands: the step, and the part of the addition. ``actions`` has what was done in which step."""
-    step = f"step {finding.step}"
-    if finding.order != OTHER_ORDER and finding.step in actions:
-        step += f" ({actions[finding.step]})"
-    words = f"{step}, {_when(finding)}"
-    if finding.order == "either order":
-        words += "; in either order of pouring"
+def moment_words(finding: Finding, actions: dict[int, str], *, alike: bool = False) -> str:
+    """When it stands: the step, and the part of the addition.
+
+    ``actions`` has what was done in which step; empty where the title says it. ``alike``: that all stand in either order has been said.
+    """
+    words = _when(finding)
+    if finding.step in actions and finding.order != OTHER_ORDER:
+        words = f"step {finding.step} ({actions[finding.step]}), {words}"
+    elif finding.step != LAST_OF_TWO:
+        words = f"step {finding.step}, {words}"
+    if finding.order == EITHER_ORDER:
+        words += "" if alike else "; in either order of pouring"
     elif finding.order == "as written":
         words += "; in this order of pouring"
     if finding.holds == "in part":
@@ -56,7 +62,7 @@ def _when(finding: Finding) -> str:
     if finding.moment == "contact":
         return "where the stream falls in"
     if finding.moment == "storage":
-        return "while it stands"
+        return f"while it stands, over {finding.speed}" if finding.speed else "while it stands"
     if finding.moment == "after":
         return "once all is in"
     low, high = finding.fractions
@@ -87,5 +93,17 @@ def of_other_order(report: Report) -> list[Finding]:
 
 
 def in_order(findings: Iterable[Finding]) -> list[Finding]:
-    """By step, then by signal, then by the gravity of the kind."""
-    return sorted(findings, key=lambda one: (one.step, SIGNALS.index(one.signal), _GRAVITY[one.kind]))
+    """By step, then by signal, then by the gravity of the kind; what else one species brings stands next to the gravest of it."""
+    listed = list(findings)
+
+    def key(finding: Finding) -> tuple[int, int, int, str, int]:
+        signal = SIGNALS.index(finding.signal)
+        akin = [
+            one
+            for one in listed
+            if (one.step, one.signal, one.species) == (finding.step, finding.signal, finding.species)
+        ]
+        first = min(_GRAVITY[one.kind] for one in akin)
+        return finding.step, signal, first, " ".join(finding.species), _GRAVITY[finding.kind]
+
+    return sorted(listed, key=key)

@@ -1,0 +1,41 @@
+"""Vessels on the bench, and what is poured into them."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+
+from carboy.bench.make_up import MadeUp
+from carboy.chemistry.mixture import Array, Mixture
+from carboy.model.plan import Interval, Portion, VesselSpec
+
+
+@dataclass
+class VesselState:
+    """A vessel on the bench."""
+
+    spec: VesselSpec
+    content: Mixture
+    capacity_L: Array
+    rating_kPa: Array | None
+    cover: str
+    air_mol: Array | None = None
+    pours: dict[str, frozenset[int]] = field(default_factory=dict)
+    earlier: dict[str, frozenset[str]] = field(default_factory=dict)
+    labels: list[str] = field(default_factory=list)
+    unknown: bool = False  # holds something that nobody could name, so that its pH is anybody's guess
+
+    @property
+    def filled(self) -> bool:
+        return bool(self.content.amounts)
+
+
+@dataclass(frozen=True)
+class Pouring:
+    """What is poured in one step: its content, the words of its label, how long it takes, and the portion where it comes off a label."""
+
+    action: str
+    content: Mixture
+    label: str
+    over: Interval | None
+    portion: Portion | None
+    made: MadeUp | None
