@@ -13,26 +13,48 @@ __version__ = "0.1.0"
 if TYPE_CHECKING:
     from carboy.errors import CarboyError as CarboyError
     from carboy.errors import InputError as InputError
+    from carboy.model.dosing import DoseReport as DoseReport
     from carboy.model.plan import Case as Case
     from carboy.model.plan import Setting as Setting
     from carboy.model.plan import VesselSpec as VesselSpec
     from carboy.model.report import Report as Report
+    from carboy.planning.repair import Mending as Mending
     from carboy.vetting import combine as combine
+    from carboy.vetting import dose as dose
+    from carboy.vetting import mend as mend
     from carboy.vetting import vet as vet
 
 # public name -> the module that holds it
 _HOMES = {
     "Case": "carboy.model.plan",
     "CarboyError": "carboy.errors",
+    "DoseReport": "carboy.model.dosing",
     "InputError": "carboy.errors",
+    "Mending": "carboy.planning.repair",
     "Report": "carboy.model.report",
     "Setting": "carboy.model.plan",
     "VesselSpec": "carboy.model.plan",
     "combine": "carboy.vetting",
+    "dose": "carboy.vetting",
+    "mend": "carboy.vetting",
     "vet": "carboy.vetting",
 }
 
-__all__ = ["CarboyError", "Case", "InputError", "Report", "Setting", "VesselSpec", "__version__", "combine", "vet"]
+__all__ = [
+    "CarboyError",
+    "Case",
+    "DoseReport",
+    "InputError",
+    "Mending",
+    "Report",
+    "Setting",
+    "VesselSpec",
+    "__version__",
+    "combine",
+    "dose",
+    "mend",
+    "vet",
+]
 
 
 def __getattr__(name: str) -> Any:

@@ -20,10 +20,14 @@ from carboy.hazards.numbers import figures
 from carboy.hazards.steps import step_report
 from carboy.knowledge.index import load_index
 from carboy.knowledge.names import Names
+from carboy.knowledge.unlisted import admit
+from carboy.model.dosing import DoseReport
 from carboy.model.knowledge import Index
-from carboy.model.plan import Case, Setting, VesselSpec
+from carboy.model.plan import Case, Interval, Setting, VesselSpec
 from carboy.model.report import Finding, GoalReport, Report, StepReport, Verdict
 from carboy.model.rule import Rule
+from carboy.planning.dosing import dose_report
+from carboy.planning.repair import Mender, Mending
 from carboy.reasoning.firing import Reactor
 from carboy.rulebook.book import load_rules
 from carboy.text.cases import combine_case, read_case
@@ -90,20 +94,57 @@ class Laboratory:
             walker.leave(walk)
         return walk
 
+    def prepared(self, case: Case) -> tuple[Laboratory, Case, tuple[str, ...]]:
+        """A case whose structures and unlisted salts are substances, the laboratory that has them, and what is to be said of them.
+
+        Both are the same as before where everything is listed. Raises InputError for a structure that is none.
+        """
+        admitted = admit(case, self.index)
+        lab = self if admitted.index is self.index else Laboratory(admitted.index, self.rules)
+        return lab, admitted.case, admitted.notes
+
     def vet(self, case: Case, progress: Progress | None = None) -> Report:
         """The report on a case."""
-        return self._report(self._outcome(case, progress))
+        lab, ready, notes = self.prepared(case)
+        return lab._report(lab._outcome(ready, progress), notes)
 
     def combine(
         self, portions: tuple[str, ...], setting: Setting | None = None, vessel: VesselSpec | None = None
     ) -> Report:
         """The report on portions poured together one after the other, and on the other order where there are two."""
-        outcome = self._outcome(combine_case(portions, self.names, setting, vessel), left_standing=True)
+        lab, case, notes = self.prepared(combine_case(portions, self.names, setting, vessel))
+        outcome = lab._outcome(case, left_standing=True)
         if len(portions) == 2:
-            swapped = combine_case(portions[::-1], self.names, setting, vessel)
-            turned = self._outcome(swapped, left_standing=True)
+            _, swapped, _ = self.prepared(combine_case(portions[::-1], self.names, setting, vessel))
+            turned = lab._outcome(swapped, left_standing=True)
             outcome.findings = compare_orders(outcome.findings, turned.findings)
-        return self._report(outcome)
+        return lab._report(outcome, notes)
+
+    def mend(self, case: Case, progress: Progress | None = None) -> list[Mending]:
+        """Changed procedures that clear what is found on a case, each vetted, the one that changes least first."""
+        lab, _, _ = self.prepared(case)
+        return Mender(lab, self.vet, self._walk_prepared, progress).mend(case)
+
+    def mend_together(
+        self,
+        portions: tuple[str, ...],
+        setting: Setting | None = None,
+        vessel: VesselSpec | None = None,
+        progress: Progress | None = None,
+    ) -> list[Mending]:
+        """As :meth:`mend`, for portions poured together in this order and left standing for days."""
+        case = combine_case(portions, self.names, setting, vessel)
+        lab, _, _ = self.prepared(case)
+        return Mender(lab, self.vet_left_standing, self._walk_prepared, progress, ends_with_pour=True).mend(case)
+
+    def _walk_prepared(self, case: Case) -> Walk:
+        lab, ready, _ = self.prepared(case)
+        return lab.walk(ready)
+
+    def vet_left_standing(self, case: Case) -> Report:
+        """The report on a case that ends with a pour, after which all is left for days; it aims at nothing."""
+        lab, ready, notes = self.prepared(case)
+        return lab._report(lab._outcome(ready, left_standing=True), notes)
 
     def _outcome(self, case: Case, progress: Progress | None = None, *, left_standing: bool = False) -> Outcome:
         """A case walked and judged: with the most conversion, and with the least too where a rule leaves the share open."""
@@ -128,10 +169,11 @@ class Laboratory:
         outcome.leverage = {key: max(value, other.leverage[key]) for key, value in outcome.leverage.items()}
         return outcome
 
-    def _report(self, outcome: Outcome) -> Report:
+    def _report(self, outcome: Outcome, notes: tuple[str, ...] = ()) -> Report:
         walk, findings = outcome.walk, outcome.findings
         unsettled = [note for trace in walk.steps for note in trace.notes if "converge" in note]
         assumptions = [
+            *notes,
             *walk.assumptions,
             *self._range_words(walk),
             *(note for trace in walk.steps for note in trace.notes),
@@ -247,3 +289,30 @@ def vet(case: str | Path | Case, *, progress: Progress | None = None) -> Report:
     lab = laboratory()
     plan = case if isinstance(case, Case) else read_case(case, lab.names)
     return lab.vet(plan, progress)
+
+
+def dose(
+    waste: str,
+    reagent: str,
+    aim: str,
+    *,
+    setting: Setting | None = None,
+    vessel: VesselSpec | None = None,
+    over: Interval | None = None,
+) -> DoseReport:
+    """How much of ``reagent`` (as on its label, without an amount) does ``waste`` need for ``aim``, and how much is too much?
+    ``over``: s that the addition takes.
+
+    Raises InputError where one of them cannot be read.
+    """
+    return dose_report(laboratory(), waste, reagent, aim, setting, vessel, over)
+
+
+def mend(case: str | Path | Case, *, progress: Progress | None = None) -> list[Mending]:
+    """The nearest changes that clear what is found on a procedure, each vetted, the one that changes least first.
+
+    Raises InputError where the file cannot be read.
+    """
+    lab = laboratory()
+    plan = case if isinstance(case, Case) else read_case(case, lab.names)
+    return lab.mend(plan, progress)

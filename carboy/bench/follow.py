@@ -40,14 +40,17 @@ def along(
     *,
     capacity_L: Array | None,
     air_mol: Array | None,
+    fractions: Array | None = None,
 ) -> Course:
     """The vessel along the dosing path. Every point is the vessel with that fraction of the addition in it, reacted.
+    ``fractions`` are those to look at, rising; otherwise :func:`path_fractions`.
 
     Of a dry salt only what the water at hand can dissolve takes part; the rest lies there and is in the vessel afterwards.
 
     ``capacity_L`` given: sealed, with ``air_mol`` of air shut in.
     """
-    fractions = path_fractions(vessel.lanes)
+    if fractions is None:
+        fractions = path_fractions(vessel.lanes)
     points = len(fractions)
     start = vessel.repeated(points)
     dose = added.repeated(points).scaled(np.tile(fractions, vessel.lanes))

@@ -9,12 +9,13 @@ import numpy as np
 from carboy.chemistry.mixture import Array
 
 MOST_FULL = 4  # with up to four ranges every corner is a lane, and points between the ends as well
-_STEPS = 8  # a range runs from 0 to 8, the nominal value lies at 4
-_MIDDLE = 4
-_GRID = {1: 9, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may lie between the ends
-_ALONE = (0, 2, 6, 8)  # with many ranges, where each is tried with the others nominal
+_STEPS = 40  # a range runs from 0 to 40, the nominal value lies at 20
+_MIDDLE = 20
+_GRID = {1: 11, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may lie between the ends
+_ALONE = (0, 10, 30, 40)  # with many ranges, where each is tried with the others nominal
 SAMPLED_CORNERS = 12
 WIDE = 4.0  # ends further apart than this have the points between them in equal ratios
+DECADES = 1000.0  # and these reach down to so small a part of the upper end; below it only the lower end itself is looked at
 OPEN_END_FACTOR = 10.0  # "at least x" is followed up to ten times x
 
 
@@ -90,5 +91,6 @@ def _between(first: float, last: float, share: float) -> float:
     if share in (0.0, 1.0):
         return last if share else first
     if first > 0 and last > WIDE * first:
-        return float(first * (last / first) ** share)
+        near = max(first, last / DECADES)
+        return float(near * (last / near) ** share)
     return first + (last - first) * share

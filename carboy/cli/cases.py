@@ -7,7 +7,7 @@ from typing import Annotated
 
 import typer
 
-from carboy.cli.output import Progress, Status, first_reading, write
+from carboy.cli.output import Progress, Status, counted_words, first_reading, write
 
 HELP = """Run the expect blocks of case files, one line a case. Without files: the cases that ship with carboy.
 
@@ -50,7 +50,7 @@ def cases(
                 write(style.finished(f"{style.alarm('WRONG')}  {file.name}\n        {error.render()}"))
                 continue
             expectations += len(case.expect)
-            count = f"{len(case.expect)} expectations" if len(case.expect) != 1 else "1 expectation"
+            count = counted_words(len(case.expect), "expectation")
             known = sum(1 for one in case.expect if one.known_failure)
             count += f", {known} of them a known failure" if known else ""
             failed += bool(failures)
@@ -58,7 +58,8 @@ def cases(
             write(style.finished(f"{word}  {file.stem}: {count}"))
             for failure in failures:
                 write(style.finished(f"       {failure.text}: {failure.reason}"))
-    write(f"{len(found)} cases, {expectations} expectations, {failed} failed, {unreadable} could not be read")
+    counted = f"{counted_words(len(found), 'case')}, {counted_words(expectations, 'expectation')}"
+    write(f"{counted}, {failed} failed, {unreadable} could not be read")
     raise typer.Exit(Status.WRONG_INPUT if unreadable else Status.OBJECTION if failed else Status.NO_OBJECTION)
 
 

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
+from contextlib import contextmanager
 from typing import Annotated
 
 import typer
@@ -61,11 +63,28 @@ def combine(
         "air_changes": air_changes,
         "temperature": temperature,
     }
-    setting = setting_from_mapping({key: value for key, value in surroundings.items() if value})
+    with of_options():
+        setting = setting_from_mapping({key: value for key, value in surroundings.items() if value})
     with first_reading():
         lab = laboratory()
     described = {"volume": volume, "material": material, "cover": cover}
-    vessel = vessel_from_mapping("vessel", {key: value for key, value in described.items() if value}, lab.names)
+    with of_options():
+        vessel = vessel_from_mapping("vessel", {key: value for key, value in described.items() if value}, lab.names)
     report = lab.combine(tuple(portions), setting, vessel)
     write(printed([report], lab, json=json, plain=plain, full=full, why=why))
     raise typer.Exit(status_of([report]))
+
+
+@contextmanager
+def of_options() -> Iterator[None]:
+    """What is wrong with a setting or vessel is told by the option that gave it."""
+    from carboy.errors import InputError
+
+    try:
+        yield
+    except InputError as error:
+        if error.span is None or "." not in error.span.file:
+            raise
+        option = "--" + error.span.file.rpartition(".")[2].replace("_", "-")
+        words = f"{option}: {error.message}\n{error.span.excerpt()}"
+        raise InputError(words, suggestions=error.suggestions) from None

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from carboy.cli.output import Progress, Status, Waiting, write
+from carboy.cli.output import Progress, Status, Waiting, counted_words, write
 
 if TYPE_CHECKING:
     from carboy.model.knowledge import Index
@@ -58,7 +58,7 @@ def check(
     for line in lines:
         write(line)
     if errors:
-        write(f"kb: {_count(errors, 'error')}; the rules are not checked until it loads")
+        write(f"kb: {counted_words(errors, 'error')}; the rules are not checked until it loads")
         raise typer.Exit(Status.OBJECTION)
     with Waiting("Compiling the graph (some seconds)"):
         index = load_index(kb)
@@ -88,7 +88,9 @@ def _check_rules(book: tuple[Rule, ...], index: Index, only: list[str], *, quick
         write(f"rules/{one}" if one.severity == "error" else f"rules/{one} ({one.severity})")
     errors = sum(one.severity == "error" for one in problems)
     examples = sum(len(rule.fires) + len(rule.silent) for rule in book)
-    write(f"rules: {len(book)} rules, {examples} examples; {_count(errors, 'error')}, {len(problems) - errors} remarks")
+    write(
+        f"rules: {len(book)} rules, {examples} examples; {counted_words(errors, 'error')}, {len(problems) - errors} remarks"
+    )
     if quick:
         return Status.OBJECTION if errors else Status.NO_OBJECTION
     from carboy.rulebook.running import check_examples
@@ -103,10 +105,6 @@ def _check_rules(book: tuple[Rule, ...], index: Index, only: list[str], *, quick
     misses = sum(bool(example.known_miss) for rule in wanted for example in (*rule.fires, *rule.silent))
     write(f"examples: {run} run, {len(failed)} failed" + (f", {misses} known misses" if misses else ""))
     return Status.OBJECTION if errors or failed else Status.NO_OBJECTION
-
-
-def _count(number: int, word: str) -> str:
-    return f"1 {word}" if number == 1 else f"{number} {word}s"
 
 
 def _content(index: Index) -> str:

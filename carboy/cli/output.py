@@ -48,6 +48,11 @@ def write(text: str) -> None:
     sys.stdout.flush()
 
 
+def counted_words(number: int, word: str) -> str:
+    """``1 case``, ``2 cases``."""
+    return f"{number} {word}" if number == 1 else f"{number} {word}s"
+
+
 class Progress:
     """A line on standard error that says how far a long task is; nothing where that is no terminal, or within a second."""
 

@@ -10,6 +10,10 @@ from carboy.reports.terminal import report_text
 from carboy.reports.why import explained, why_text
 from carboy.vetting import Laboratory
 
+_MOST_NEAR = 2
+_NEAR = 80  # per cent of letters alike: a slip of the pen, not another substance of the same sort
+UNKNOWN = "unknown"  # what a label may honestly say
+
 
 def printed(
     reports: Sequence[Report],
@@ -31,7 +35,21 @@ def printed(
     style = style_for(plain=plain)
     if why is not None:
         return why_text(reports[0], why, style, lab.rules, lab.index.thresholds, lab.index.sources)
-    texts = [report_text(report, style, lab.index.sources, full=full) for report in reports]
+    texts = [
+        report_text(report, style, lab.index.sources, near=_near(report.unrecognised, lab), full=full)
+        for report in reports
+    ]
     if len(texts) > 1:
         texts = [f"{name}\n\n{text}" for name, text in zip(names, texts, strict=True)]
     return "\n\n".join(texts)
+
+
+def _near(words: Sequence[str], lab: Laboratory) -> dict[str, tuple[str, ...]]:
+    """For each name that was not recognised those that are spelled nearly like it."""
+    from rapidfuzz import fuzz
+
+    named = {word: lab.names.suggest(word) for word in words if word != UNKNOWN}
+    return {
+        word: tuple(name for name in found if fuzz.ratio(word.casefold(), name.casefold()) >= _NEAR)[:_MOST_NEAR]
+        for word, found in named.items()
+    }

@@ -153,8 +153,12 @@ def class_drafts(
 ) -> list[Draft]:
     """Drafts for flags without a computed magnitude; flags with one lend their words to the drafts in ``computed``."""
     drafts: dict[tuple[str, ...], Draft] = {}
+    stood: dict[bool, dict[Mark, float]] = {}
     for where, course in courses(trace):
-        standing = _standing(trace, rules, stock, where) if trace.added is not None else {}
+        stored = where == "storage"
+        if stored not in stood:
+            stood[stored] = _standing(trace, rules, stock, stored) if trace.added is not None else {}
+        standing = stood[stored]
         for raised in raised_flags(course, trace, where, rules, stock):
             flag = raised.flag
             if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
@@ -199,14 +203,14 @@ def _mark(rule: Rule, flag: Flag, bound: dict[str, str]) -> Mark:
     return rule.id, rule.flags.index(flag), tuple(sorted(bound.items()))
 
 
-def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, where: Where) -> dict[Mark, float]:
+def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, stored: bool) -> dict[Mark, float]:
     """Flags that stood already in the vessel or in the bottle, with the grams that weighed them; what each would do if left by itself
     stands whatever its weight."""
     stood: dict[Mark, float] = {
         _mark(firing.rule, flag, firing.bound): np.inf for firing in trace.left_firings for flag in firing.rule.flags
     }
     own = replace(trace.surroundings, container="", container_words=frozenset())  # its own bottle, which it stood
-    for mixture in trace.left_alone if where == "storage" else (trace.before, trace.added):
+    for mixture in trace.left_alone if stored else (trace.before, trace.added):
         if mixture is None or not mixture.amounts:
             continue
         view = View(mixture, own)

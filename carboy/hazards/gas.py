@@ -129,7 +129,7 @@ def yardsticks(gas: Gas, classes: frozenset[str], scale: Scale) -> list[Yardstic
                 "asphyxiant-gas",
                 share * 1e6,
                 f"{100 * share:g} % by volume",
-                f"{100 * share:g} % of the air ({room:g} m3 is a small room)",
+                f"{100 * share:g} % by volume (a small room holds {room:g} m3)",
                 True,
                 np.inf,
                 source,
@@ -336,7 +336,8 @@ def _summary(
     record: Gas, stick: Yardstick, formed: float, leaving: float, air_L: float, where: str, stood: bool
 ) -> str:
     name = record.name[:1].upper() + record.name[1:]
-    reach = f", enough to bring {litres_words(air_L)} of air to its {stick.basis}" if not np.isnan(air_L) else ""
+    its = "" if stick.basis[:1].isdigit() else "its "
+    reach = f", enough to bring {litres_words(air_L)} of air to {its}{stick.basis}" if not np.isnan(air_L) else ""
     if stood:
         return f"{name} stands over the liquid as it did before ({amount_words(leaving)} can leave{reach})."
     place = {

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 
 from carboy.bench.walk import Walk
 from carboy.chemistry.mixture import Array, Mixture
@@ -22,16 +23,23 @@ def _judged(goal: Goal, walk: Walk, stock: ChemicalStock) -> GoalReport:
     state = walk.vessels.get(goal.vessel) if goal.vessel else next(iter(walk.vessels.values()))
     if state is None or not state.filled or not np.all(state.content.converged):
         return GoalReport(goal=goal.text, met=None, value=None, unit=goal.unit)
-    values, unit = _value(goal, state.content, stock)
-    met = np.ones(len(values), dtype=bool)
+    values, unit = goal_value(goal, state.content, stock)
+    met = within(goal, values)
+    return GoalReport(goal=goal.text, met=bool(met.all()), value=pair(values), unit=unit)
+
+
+def within(goal: Goal, values: Array) -> NDArray[np.bool_]:
+    """Whether each value lies in the goal's window."""
+    met = np.ones(np.shape(values), dtype=bool)
     if goal.low is not None:
         met &= values >= goal.low
     if goal.high is not None:
         met &= values <= goal.high
-    return GoalReport(goal=goal.text, met=bool(met.all()), value=pair(values), unit=unit)
+    return met
 
 
-def _value(goal: Goal, content: Mixture, stock: ChemicalStock) -> tuple[Array, str]:
+def goal_value(goal: Goal, content: Mixture, stock: ChemicalStock) -> tuple[Array, str]:
+    """What a goal speaks of, ``[lanes]``, and its unit: pH, mg/L, or mol/L where the goal says so."""
     if goal.quantity == "pH":
         return content.pH, "pH"
     element = goal.subject.split("(")[0]

@@ -75,6 +75,10 @@ class Judge:
         """The findings alone."""
         return self.judge(walk).findings
 
+    def drafts(self, trace: StepTrace) -> list[Draft]:
+        """Every hazard of one step with its severity in every lane, before it is put into words."""
+        return self._merged(self._drafts(trace))
+
     def _drafts(self, trace: StepTrace) -> list[Draft]:
         if trace.path is None and trace.contact is None and trace.storage is None:
             return []
@@ -117,11 +121,14 @@ class Judge:
         rule_ids = [rule.id for rule in draft.rules]
         controls = list(
             dict.fromkeys(
-                [*draft.controls, *(_filled(guard, draft.names) for rule in draft.rules for guard in rule.guard)]
+                [
+                    *draft.controls,
+                    *(_sentence(_filled(guard, draft.names)) for rule in draft.rules for guard in rule.guard),
+                ]
             )
         )
         sources = list(dict.fromkeys([*draft.sources, *(key for rule in draft.rules for key in rule.cites)]))
-        says = " ".join(dict.fromkeys(_filled(rule.says, draft.names) for rule in draft.rules))
+        says = " ".join(dict.fromkeys(_sentence(_filled(rule.says, draft.names)) for rule in draft.rules))
         return Finding(
             rule=rule_ids[0] if rule_ids else f"{draft.kind}-by-amount",
             kind=draft.kind,
@@ -225,6 +232,12 @@ class Judge:
         return [
             token for token in draft.bound.values() if token in self.index.species or token in self.index.substances
         ]
+
+
+def _sentence(text: str) -> str:
+    """With a capital, where a word begins it: what a variable stands for may be a name, but also a formula or ``pH``."""
+    first = text.split(" ", 1)[0]
+    return text[:1].upper() + text[1:] if first.islower() or "(" in first else text
 
 
 def _filled(text: str, names: dict[str, str]) -> str:

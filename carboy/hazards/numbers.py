@@ -16,7 +16,7 @@ def figures(value: float, digits: int = 2) -> str:
 def amount_words(mol: float) -> str:
     """mol, mmol or µmol."""
     for size, unit in ((1.0, "mol"), (1e-3, "mmol"), (1e-6, "µmol")):
-        if mol >= 0.1 * size or unit == "µmol":
+        if mol >= 0.0995 * size or unit == "µmol":
             return f"{figures(mol / size)} {unit}"
     return f"{mol:.2g} mol"
 

@@ -23,7 +23,11 @@ from carboy.model.report import Measure
 
 _HOUR = 3600.0
 _ROOMS = ("room", "bench", "store")
-_NO_SUCH_AIR = ("outdoors", "glovebox", "cabinet")  # neither a hood nor a room: without a stated flow there is no telling
+_NO_SUCH_AIR = (
+    "outdoors",
+    "glovebox",
+    "cabinet",
+)  # neither a hood nor a room: without a stated flow there is no telling
 _PRECISION = 1e-4  # of a time of addition
 _AT_ONCE = 1e-9  # s
 
@@ -103,17 +107,19 @@ def pace_measures(
     limit_words: str,
     scale: Scale,
     *,
+    also: tuple[tuple[float, str], ...] = (),
     stood: Array | None = None,
 ) -> list[Measure]:
     """What the pace of the addition does to the air: ppm at the stated pace, the shortest time of addition that keeps to the limit, and the
-    room if all came out at once. ``leaving`` is mol ``[lanes]``; ``stood`` what could leave before anything was poured, which is no doing
-    of the addition."""
+    room if all came out at once. ``leaving`` is mol ``[lanes]``; ``also`` further limits in ppm with their words; ``stood`` mol ``[lanes]``
+    that could leave before anything was poured, which is no doing of the addition."""
     air = air_of(trace.setting, scale)
     release = course.table(leaving if stood is None else np.maximum(leaving - stood, 0.0))
     total = float(release.max())
     if air is None:
         return []
     basis = f"well-mixed air of {air.words}{', taken since none is stated' if air.assumed else ''}"
+    place = "the hood" if air.gathers is None else "the room"
     swept = [plain("flow", air.flow, "m3/s")]
     equation = "ppm = 1e6 x (mol set free per second) x 24.465 L/mol / (1000 x flow)"
     if air.gathers is not None:
@@ -124,7 +130,7 @@ def pace_measures(
         seconds = float(trace.duration_s[0])
         measures.append(
             Measure(
-                quantity="in that air at this pace",
+                quantity=f"at this pace, in the air of {place}",
                 value=1e6 * peak_fraction(release, course.fractions, seconds, air),
                 unit="ppm",
                 basis=basis,
@@ -132,17 +138,18 @@ def pace_measures(
                 inputs=[plain("gas that can leave", total, "mol"), plain("time of addition", seconds, "s"), *swept],
             )
         )
-    if np.isfinite(limit_ppm) and limit_ppm > 0:
-        measures.append(
-            Measure(
-                quantity=f"shortest time of addition that keeps that air below its {limit_words}",
-                value=shortest_time(release, course.fractions, limit_ppm * 1e-6, air) / 60,
-                unit="min",
-                basis=basis,
-                equation=f"the time at which, where the gas comes fastest, {equation} is the limit",
-                inputs=[plain("gas that can leave", total, "mol"), *swept, plain(limit_words, limit_ppm, "ppm")],
+    for ppm, words in ((limit_ppm, limit_words), *also):
+        if np.isfinite(ppm) and ppm > 0:
+            measures.append(
+                Measure(
+                    quantity=f"shortest time of addition that keeps that air below its {words}",
+                    value=shortest_time(release, course.fractions, ppm * 1e-6, air) / 60,
+                    unit="min",
+                    basis=basis,
+                    equation=f"the time at which, where the gas comes fastest, {equation} is the limit",
+                    inputs=[plain("gas that can leave", total, "mol"), *swept, plain(words, ppm, "ppm")],
+                )
             )
-        )
     measures.append(
         Measure(
             quantity="in the room if all of it came out at once",

@@ -16,6 +16,9 @@ from carboy.knowledge.equilibria import PrintedEquilibrium, reduce_to_components
 from carboy.knowledge.loading import Facts, Node
 from carboy.knowledge.naming import add_ions, build_names
 from carboy.knowledge.problems import Problem
+from carboy.knowledge.repair_reagents import repair_reagents
+from carboy.knowledge.spot_tests import spot_tests
+from carboy.knowledge.treatments import liquid_hazards, treatments, untreatable
 from carboy.model.knowledge import (
     Attack,
     ChemicalClass,
@@ -105,6 +108,11 @@ class _Compiler:
             limits=self._limits(),
             names=names,
             ancestors=self._ancestors(classes),
+            hazards=liquid_hazards(self.facts, self._value),
+            treatments=treatments(self.facts),
+            untreatable=untreatable(self.facts),
+            repair_reagents=repair_reagents(self.facts),
+            spot_tests=spot_tests(self.facts, self.species, self._report),
         )
 
     # --- small helpers

@@ -118,6 +118,7 @@ def _substance(item: Substance, index: Index) -> Entry:
     facts += [Fact("SMILES", item.smiles)] if item.smiles else []
     facts.append(Fact("as bought", _STATES[item.state]))
     facts += _listed("classes", _all_classes(item.classes, index))
+    facts += _listed("of these by its structure", item.derived)
     facts += _listed("GHS statements", item.ghs)
     if item.yields and set(item.yields) != {item.id}:  # what stays what it is has nothing to tell
         facts.append(Fact("dissolves into", _sum(item.yields), form="equation"))
@@ -219,6 +220,8 @@ def _gas(item: Gas, index: Index) -> Entry:
 
 def _class(item: ChemicalClass, index: Index) -> Entry:
     facts = [Fact("scope", item.note)] if item.note else []
+    facts += _listed("structures that match", item.smarts)
+    facts += _listed("but not", item.not_smarts)
     facts += _listed("is a kind of", item.broader)
     facts += _listed("kinds of it", sorted(key for key, one in index.classes.items() if item.key in one.broader))
     members = sorted(

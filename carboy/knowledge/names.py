@@ -2,8 +2,8 @@
 the rest.
 
 Nothing is guessed: a text is taken for a thing only if its folded name, its formula or its number is in the index, or
-a rule of this module brings it there (water of crystallisation, "solution", the form of a solid). Near spellings are
-suggestions only.
+a rule of this module brings it there (water of crystallisation, "solution", the form of a solid), or it is a salt of
+ions that the index knows. Near spellings are suggestions only.
 """
 
 from __future__ import annotations
@@ -11,17 +11,19 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator
 from dataclasses import dataclass, replace
+from functools import cached_property
 from typing import Literal
 
 from carboy.errors import InputError
 from carboy.knowledge.cas import check_digit_fits, has_cas_form
 from carboy.knowledge.folding import fold
 from carboy.knowledge.naming import composition_key
+from carboy.knowledge.salts import SaltReader
 from carboy.model.knowledge import Index
 from carboy.span import Span
 from carboy.text.formulas import as_token, elements, hill_formula, is_formula, parse_formula, plain_formula
 
-Kind = Literal["substance", "material", "species", "unrecognised"]
+Kind = Literal["substance", "material", "species", "salt", "unrecognised"]
 
 _WATER = {
     "hemi": 0.5,
@@ -66,7 +68,8 @@ _FORM_WORDS = (
 class Match:
     """What a text means.
 
-    ``id`` is a substance id, material id or species token by ``kind`` ("" if unrecognised). ``extra_water``: mol
+    ``id`` is a substance id, material id, species token, or for a salt that is not listed the sum of its ions
+    (``Co+2 + 2 ClO3-``), by ``kind`` ("" if unrecognised). ``extra_water``: mol
     water of crystallisation per formula unit beyond what the substance of the index has; it adds to molar mass and
     yields. ``dropped`` are words that were passed over ("solution", "powder"), ``notes`` sentences for the
     assumptions of a report.
@@ -100,13 +103,13 @@ class Names:
 
     def resolve(self, text: str) -> Match:
         """What ``text`` means, in this order: CAS number, formula with its case, name, species token, formula without
-        case, name with the words of form taken off, hydrate of a known substance.
+        case, name with the words of form taken off, hydrate of a known substance, salt of known ions.
 
         An unknown name or number gives a Match of kind "unrecognised". Raises InputError for a CAS number whose check
         digit is wrong.
         """
         cleaned = " ".join(text.split())
-        found = self._by_number(cleaned) or self._plain(cleaned) or self._by_parts(cleaned)
+        found = self._by_number(cleaned) or self._plain(cleaned) or self._by_parts(cleaned) or self._salt(cleaned)
         return replace(found, text=text) if found else Match("unrecognised", "", text)
 
     def _by_number(self, text: str) -> Match | None:
@@ -198,6 +201,27 @@ class Names:
             return replace(anhydrous, text=text, extra_water=count) if anhydrous else None
         return replace(found, text=text, extra_water=count - water)
 
+    @cached_property
+    def salts(self) -> SaltReader:
+        """Reads salts that are not listed."""
+        return SaltReader(self.index)
+
+    def _salt(self, text: str) -> Match | None:
+        """A salt of known ions, as a formula or a systematic name, with or without water of crystallisation."""
+        for name, dropped in _variants(text):
+            water, base = 0.0, name
+            by_word = _HYDRATE_WORD.search(name)
+            if by_word:
+                if not by_word["count"]:
+                    continue
+                water = _WATER[by_word["count"].lower()]
+                base = (name[: by_word.start()] + name[by_word.end() :]).strip(" ,-")
+            salt = self.salts.read(base)
+            if salt is not None:
+                taken_off = tuple(word for word in dropped if word)
+                return Match("salt", salt.sum, text, extra_water=salt.water + water, dropped=taken_off)
+        return None
+
     def _own_water(self, match: Match) -> float:
         return parse_formula(self.index.substances[match.id].formula).water if match.kind == "substance" else 0.0
 
@@ -233,7 +257,8 @@ class Names:
                 f"substance:{key}" for key, item in self.index.substances.items() if hill_formula(item.atoms) == wanted
             ]
         targets = dict.fromkeys([*same_letters, *isomers, *(self._names[key] for key, _, _ in near)])
-        return tuple(dict.fromkeys(self.display(target) for target in targets))[:n]
+        salts = [self.salts.name(salt) for salt in self.salts.readings(text)]
+        return tuple(dict.fromkeys([*salts, *(self.display(target) for target in targets)]))[:n]
 
     def display(self, target: str) -> str:
         """``substance:zinc`` -> its preferred name."""

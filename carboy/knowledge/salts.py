@@ -23,6 +23,7 @@ from carboy.text.formulas import elements, is_formula, plain_formula
 
 MOST_GROUPS = 8  # ions of different kinds or places in one formula
 _MOST_READINGS = 500
+_LONGEST = 80  # characters; longer texts are no salt of a few ions
 _WATER, _PROTON = "H2O", "H+"
 _OPEN = {"(": ")", "[": "]", "{": "}"}
 _COUNT = re.compile(r"\d+")
@@ -90,6 +91,8 @@ class SaltReader:
     def readings(self, text: str) -> tuple[Salt, ...]:
         """Every salt that ``text`` may be (several if it is ambiguous), the likeliest kind of reading only."""
         written = plain_formula(text)
+        if len(text) > _LONGEST:
+            return ()
         if " " not in text.strip() and written[:1] in {*_OPEN, *_CAPITALS} and is_formula(written):
             return self._by_formula(written)
         named = self._by_name(text)

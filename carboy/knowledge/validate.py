@@ -1,4 +1,4 @@
-"""The full check of a knowledge folder: strict loading, compilation, SHACL shapes, sources that nothing uses."""
+"""The full check of a knowledge folder: strict loading, compilation, SHACL shapes, structures, sources that nothing uses."""
 
 from __future__ import annotations
 
@@ -12,6 +12,7 @@ from carboy.knowledge.files import SCHEMA, SHAPES, read_files
 from carboy.knowledge.loading import Facts, check_graphs, parse_turtle
 from carboy.knowledge.problems import Problem, in_order
 from carboy.knowledge.vocabulary import SOURCE, expand, shorten
+from carboy.model.knowledge import Index
 
 
 def check_knowledge(path: Path | None = None) -> list[Problem]:
@@ -24,8 +25,33 @@ def check_knowledge(path: Path | None = None) -> list[Problem]:
     facts, more = check_graphs(graphs, files)
     problems += more
     if facts is not None:
-        problems += [*compile_index(facts)[1], *check_shapes(graphs), *_unused_sources(facts)]
+        index, faults = compile_index(facts)
+        problems += [*faults, *check_shapes(graphs), *_unused_sources(facts)]
+        if not faults:
+            problems += _check_structures(facts, index)
     return in_order(problems)
+
+
+def _check_structures(facts: Facts, index: Index) -> list[Problem]:
+    """Structures against what is stated beside them: the formula, and the classes that a structure must show."""
+    drawn = [item for item in index.substances.values() if item.smiles]
+    if not drawn:
+        return []
+    from carboy.knowledge.structures import ClassPatterns, read_structure
+
+    patterns = ClassPatterns(index.classes)
+    problems = []
+    for item in drawn:
+        node = facts.things[f"sub:{item.id}"]
+        structure = read_structure(item.smiles)
+        if structure.charge:
+            problems.append(node.problem(f":smiles {item.smiles} has a charge of {structure.charge:+d}"))
+        if structure.atoms != item.atoms:
+            problems.append(node.problem(f":smiles {item.smiles} is {structure.formula}, but :formula is {item.formula}"))
+        stated = tuple(key for key in item.classes if key not in item.derived)
+        for key in patterns.unfounded(stated, patterns.classes_of(item.smiles)):
+            problems.append(node.problem(f"is stated to be {key}, which its structure {item.smiles} does not show"))
+    return problems
 
 
 def check_shapes(graphs: Mapping[str, Graph]) -> list[Problem]:

@@ -18,7 +18,12 @@ NAMESPACES: dict[str, str] = {
     "con": "urn:carboy:container:",
     "limit": "urn:carboy:limit:",
     "threshold": "urn:carboy:threshold:",
+    "spot": "urn:carboy:spot-test:",
     "el": "urn:carboy:element:",
+    "hazard": "urn:carboy:hazard:",
+    "treat": "urn:carboy:treatment:",
+    "contractor": "urn:carboy:contractor:",
+    "reagent": "urn:carboy:reagent:",
     "skos": "http://www.w3.org/2004/02/skos/core#",
     "dct": "http://purl.org/dc/terms/",
     "unit": "http://qudt.org/vocab/unit/",
@@ -42,7 +47,7 @@ CONCEPT = "skos:Concept"
 SOURCE = "dct:BibliographicResource"
 UNIT = "qudt:Unit"
 #: Records written in square brackets without a type; the property they stand after tells which.
-PART_TYPES = (VALUE, ":Part", ":Companion", ":Attack", ":Point")
+PART_TYPES = (VALUE, ":Part", ":Companion", ":Attack", ":Point", ":Stage", ":Demand", ":DilutionFirst", ":Quench")
 
 
 def shorten(iri: str) -> str:

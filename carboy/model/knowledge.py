@@ -201,6 +201,115 @@ class Limit(Struct, frozen=True):
     ]
 
 
+class LiquidHazard(Struct, frozen=True):
+    """What makes a liquid waste that must be treated: too much of some species in the liquid, or a pH outside a window.
+
+    ``species`` are tokens of components whose dissolved amount counts; ``classes`` those of labelled substances and of components. ``above``
+    is in mg/L of the element that the report key names, or of the whole species.
+    """
+
+    id: str
+    name: str
+    species: tuple[str, ...] = ()
+    classes: tuple[str, ...] = ()
+    except_classes: tuple[str, ...] = ()
+    above: Value | None = None
+    pH_low: Value | None = None
+    pH_high: Value | None = None
+
+
+class Demand(Struct, frozen=True):
+    """mol of agent that one mol of a species uses up."""
+
+    species: str
+    mol_per_mol: float
+
+
+class Stage(Struct, frozen=True):
+    """One act of a treatment. ``reagent`` is read like a label without its amount; ``agent`` is the species that is counted in it.
+    ``raise`` and ``lower`` bring the pH into the window and are left out where it is there, or beyond it."""
+
+    order: int
+    action: Literal["raise", "lower", "dose", "stir", "stand", "filter"]
+    reagent: str = ""
+    agent: str = ""
+    demands: tuple[Demand, ...] = ()
+    excess: float = 1.0
+    pH_low: float | None = None
+    pH_high: float | None = None
+    minutes: float = 0.0
+    test: str = ""
+
+
+class Treatment(Struct, frozen=True):
+    """A way to take hazards out of a liquid on the bench. Hazards are named by their ids."""
+
+    id: str
+    name: str
+    takes: tuple[str, ...]
+    stages: tuple[Stage, ...]
+    leaves: tuple[str, ...] = ()
+    forbidden_by: tuple[str, ...] = ()
+    dilute_below: dict[str, float] = {}  # species ("H+" for the proton excess either way) -> mol/L
+    harshness: float = 0.0  # 0 a mild reagent to 3 one that needs the greatest care
+    products: str = ""
+    goes_to: str = ""
+    dangers: tuple[str, ...] = ()
+    sources: tuple[str, ...] = ()
+    note: str = ""
+
+
+class Untreatable(Struct, frozen=True):
+    """What no treatment on the bench is sound for, and why."""
+
+    id: str
+    name: str
+    hazards: tuple[str, ...]
+    reason: str
+    sources: tuple[str, ...] = ()
+
+
+class SpotTest(Struct, frozen=True):
+    """A quick test at the bench. ``detects``: report keys, or the words pH, temperature, gas; ``beside_reagent``: report keys of which the
+    reagent must bring one for the test to apply, () for any reagent."""
+
+    key: str
+    name: str
+    shows: str
+    procedure: str
+    reading: str
+    detects: tuple[str, ...]
+    beside_reagent: tuple[str, ...] = ()
+    above_pH: float | None = None  # below it the test itself is dangerous
+    caution: str = ""
+    basis: str = ""
+    sources: tuple[str, ...] = ()
+
+
+class Quench(Struct, frozen=True):
+    """What a reagent takes away: the class, and how many mol of the reagent one mol needs."""
+
+    against: str
+    mol_per_mol: float
+    source: str
+
+
+class RepairReagent(Struct, frozen=True):
+    """What a repair may put into a vessel before a step. ``portion_words`` follow the amount on a label ("2 M sodium hydroxide");
+    ``brings_pH`` is how far an acid or base is dosed."""
+
+    id: str
+    name: str
+    portion_words: str
+    substance: str
+    measured_in: Literal["L", "g"]
+    serves: Literal["base", "acid", "quench", "diluent"]
+    brings_pH: float | None = None
+    quenches: tuple[Quench, ...] = ()
+    reason: str = ""
+    sources: tuple[str, ...] = ()
+
+
 class Index(Struct, frozen=True):
     """Everything that a run needs from kb/, compiled."""
 
@@ -219,3 +328,8 @@ class Index(Struct, frozen=True):
         str, str
     ]  # folded name -> "substance:<id>", "material:<id>", "container:<id>", "class:<key>", "gas:<token>"
     ancestors: dict[str, tuple[str, ...]]  # class -> itself and all above
+    hazards: dict[str, LiquidHazard] = {}  # of liquids, by id
+    treatments: dict[str, Treatment] = {}
+    untreatable: dict[str, Untreatable] = {}
+    spot_tests: tuple[SpotTest, ...] = ()
+    repair_reagents: tuple[RepairReagent, ...] = ()

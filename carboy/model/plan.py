@@ -62,8 +62,8 @@ class Strength(Frozen):
 
 
 class Ingredient(Frozen):
-    """One named thing of a portion. ``reference`` is ``substance:<id>``, ``material:<id>``, ``smiles:<SMILES>``, ``unknown`` for the word
-    unknown, or ``unrecognised`` when it can be read but is not known."""
+    """One named thing of a portion. ``reference`` is ``substance:<id>``, ``material:<id>``, ``smiles:<SMILES>``, ``salt:<sum of ions>``
+    for a salt that is not listed, ``unknown`` for the word unknown, or ``unrecognised`` when it can be read but is not known."""
 
     words: str
     reference: str

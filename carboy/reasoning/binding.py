@@ -53,6 +53,7 @@ class View:
         self.stock: ChemicalStock = mixture.stock
         self.carriers = tuple(self._carriers())
         self._by_class: dict[str, list[Carrier]] = {}
+        self._bindings: dict[str, list[Binding]] = {}  # by rule id
         for carrier in self.carriers:
             for key in (carrier.token, *carrier.classes):
                 self._by_class.setdefault(key, []).append(carrier)
@@ -94,10 +95,14 @@ class View:
                 found[carrier.token, carrier.where] = carrier
         return list(found.values())
 
-    def bindings(self, rule: Rule) -> Iterator[Binding]:
+    def bindings(self, rule: Rule) -> list[Binding]:
         """Every way to bind the variables of the ``needs`` of a rule, one thing never under two names."""
-        if not self._possible(rule):
-            return
+        known = self._bindings.get(rule.id)
+        if known is None:
+            known = self._bindings[rule.id] = list(self._bound(rule)) if self._possible(rule) else []
+        return known
+
+    def _bound(self, rule: Rule) -> Iterator[Binding]:
         asked = [condition for condition in rule.needs if isinstance(condition, Bound)]
         choices = [self.having(one.classes, one.but_not, one.where) for one in asked]
         if not all(choices):

@@ -133,7 +133,7 @@ class Reactor:
 
     def _try(self, rule: Rule, view: View, record: list[Firing]) -> View:
         """One rule in one vessel; the view after it."""
-        for binding in list(view.bindings(rule)):
+        for binding in view.bindings(rule):
             names = {variable: carrier.token for variable, carrier in binding.items()}
             for number, reaction in enumerate(rule.does):
                 now = self._rebound(view, rule, names)

@@ -14,7 +14,7 @@ _SIZES: dict[str, tuple[tuple[float, float, str], ...]] = {
     "m3": ((0.1, 1.0, "m3"), (1e-4, 1e-3, "L")),
     "kg": ((1.0, 1.0, "kg"), (1e-4, 1e-3, "g")),
     "g": ((1000.0, 1000.0, "kg"), (0.1, 1.0, "g"), (1e-4, 1e-3, "mg")),
-    "min": ((2880.0, 1440.0, "d"), (120.0, 60.0, "h"), (1.0, 1.0, "min"), (1 / 60, 1 / 60, "s")),
+    "min": ((2880.0, 1440.0, "d"), (120.0, 60.0, "h"), (1.0, 1.0, "min"), (1e-5, 1 / 60, "s")),
     "ppm": ((10_000.0, 10_000.0, "vol %"), (0.0, 1.0, "ppm")),
 }
 _NO_BREAK = "\u00a0"
@@ -78,7 +78,7 @@ def handy(value: float | Sequence[float] | None, unit: str, digits: int = 3) -> 
     ends = list(value) if isinstance(value, Sequence) else [value]
     largest = max(map(abs, ends))
     for least, divisor, shown in _SIZES.get(unit, ()):
-        if largest >= least:
+        if largest >= 0.9995 * least:  # what is rounded to it counts
             return quantity([one / divisor for one in ends], shown, digits)
     return quantity(ends, unit, digits)
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Mapping, Sequence
 
 from carboy.knowledge.entries import Entry, Fact, bounds
@@ -11,6 +12,7 @@ from carboy.reports.figures import quantity
 from carboy.reports.style import Style
 from carboy.reports.table import table
 
+_MINUS = re.compile(r"(?<![\w)])-(?=\d)")  # before a figure, not within a word or a span
 _LABEL = 24  # columns
 _EXACT = 6  # significant figures: a value is shown as the graph has it
 
@@ -46,6 +48,8 @@ def _row(fact: Fact, style: Style, citations: Citations) -> list[str]:
         text = _sum_text(fact.text, style) if _is_sum(fact.text) else style.equation(fact.text)
     marks = citations.marks([fact.source]) if fact.source else ""
     behind = "; ".join(notes)
+    if not style.plain:
+        behind = _MINUS.sub("−", behind)
     tail = f" ({behind})" if behind else ""
     return [fact.label, f"{text}{tail}" + (f" {marks}" if marks else "")]
 

@@ -26,7 +26,8 @@ def measure_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
     rows: list[list[str]] = []
     shown: set[tuple[str, ...]] = set()
     for number, finding in entries:
-        own = [_formed(finding, style)] if finding.amount_mol is not None and finding.species else []
+        formed = finding.amount_mol is not None and finding.species and finding.kind != "remobilised"
+        own = [_formed(finding, style)] if formed else []
         for measure in finding.measures:
             value = list(measure.value) if isinstance(measure.value, Sequence) else measure.value
             own.append([style.words(measure.quantity), handy(value, measure.unit), style.words(measure.basis)])
@@ -35,7 +36,7 @@ def measure_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
         fresh = [row for row in own if (finding.order, *finding.species, *row) not in shown]
         shown.update((finding.order, *finding.species, *row) for row in own)
         rows += [[f"({number})" if place == 0 else "", *row] for place, row in enumerate(fresh)]
-    yield from table(rows, style.width, indent=2, limits={1: _LABEL, 2: _VALUE} if full else {1: style.width // 2 + 8})
+    yield from table(rows, style.width, indent=2, limits={1: _LABEL, 2: _VALUE} if full else {1: style.width // 2 + 2})
     if not full and entries:
         yield from wrapped("--why 1 tells how the numbers of (1) were had, and so on.", style.width, "  ")
 

@@ -8,16 +8,22 @@ from carboy.model.knowledge import Source
 from carboy.model.rule import Example, Rule
 from carboy.reports.citations import Citations
 from carboy.reports.style import Style, wrapped
-from carboy.reports.table import table
 from carboy.text.rule_printer import condition_text, flag_text, reaction_text
 
 _MARGIN = "  "
+_ID = 40  # columns for the id of a rule in the list; a longer one has its title below
 
 
 def list_text(rules: Sequence[Rule], style: Style) -> str:
     """All rules, one a line: id and title."""
-    rows = [[rule.id, rule.title + (f" (off: {rule.off})" if rule.off else "")] for rule in rules]
-    return style.finished("\n".join([*table(rows, style.width), "", f"{len(rules)} rules"]) + "\n")
+    lines: list[str] = []
+    for rule in rules:
+        lead = rule.id.ljust(_ID) + "  "
+        if len(rule.id) > _ID:
+            lines.append(rule.id)
+            lead = " " * len(lead[: _ID + 2])
+        lines += wrapped(rule.title + (f" (off: {rule.off})" if rule.off else ""), style.width, lead, " " * (_ID + 2))
+    return style.finished("\n".join([*lines, "", f"{len(rules)} rules"]) + "\n")
 
 
 def rule_page(rule: Rule, style: Style, sources: Mapping[str, Source]) -> str:

@@ -3,21 +3,30 @@
 from __future__ import annotations
 
 import re
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 
 from carboy.model.report import Finding, GoalReport, Report
 from carboy.reports.citations import Citations
 from carboy.reports.figures import quantity, runs
 from carboy.reports.style import Style, wrapped
-from carboy.reports.words import EITHER_ORDER, KINDS, OTHER_ORDER, VERDICTS, by_signal, moment_words, of_other_order
+from carboy.reports.words import (
+    EITHER_ORDER,
+    GASES,
+    KINDS,
+    OTHER_ORDER,
+    VERDICTS,
+    by_signal,
+    moment_words,
+    of_other_order,
+)
 
 _MARGIN = 9  # columns of "WARNING  "
 _MOST_NOTES = 6
 _FEW_STEPS = 2  # where the title says already what is poured into what
 
 
-def verdict_lines(report: Report, style: Style) -> Iterator[str]:
-    """The verdict and what it means, the title below."""
+def verdict_lines(report: Report, style: Style, near: Mapping[str, Sequence[str]]) -> Iterator[str]:
+    """The verdict and what it means, the title below; what was not recognised, with names ``near`` it."""
     word = report.verdict.upper()
     grave = report.verdict in ("refuse", "cannot say")
     shown = style.alarm(word) if grave else style.strong(word)
@@ -32,7 +41,8 @@ def verdict_lines(report: Report, style: Style) -> Iterator[str]:
         yield ""
         yield style.strong("Not recognised")
         for item in report.unrecognised:
-            yield from wrapped(item, style.width, "  - ")
+            meant = " or ".join(f"'{word}'" for word in near.get(item, ()))
+            yield from wrapped(f"{item}{f'; did you mean {meant}?' if meant else ''}", style.width, "  - ")
         yield from wrapped("What it does is not judged; the rest is, as if it were not there.", style.width, "  ")
 
 
@@ -59,15 +69,17 @@ def finding_lines(report: Report, style: Style, citations: Citations, *, full: b
         if finding.order != OTHER_ORDER:
             yield ""
             yield from _told(number, finding, actions, style, citations, told, alike=alike)
-    notes = [one for one in by_signal(report, "note") if full or not _told_above(one, entries)]
+    notes = by_signal(report, "note")
+    shown = notes if full else _news(notes, [one for _, one in entries])[:_MOST_NOTES]
     if notes:
         yield ""
-    shown = notes if full else notes[:_MOST_NOTES]
     for finding in shown:
         where = f" (step {finding.step})" if actions else ""
         yield from wrapped(style.words(f"{finding.summary}{where}"), style.width, _head("NOTE", style), " " * _MARGIN)
     if len(notes) > len(shown):
-        yield from wrapped(f"{len(notes) - len(shown)} more notes; --full shows them.", style.width, " " * _MARGIN)
+        more = len(notes) - len(shown)
+        words = "1 more note; --full shows it." if more == 1 else f"{more} more notes; --full shows them."
+        yield from wrapped(words, style.width, _head("NOTE", style) if not shown else " " * _MARGIN, " " * _MARGIN)
     turned = [(number, finding) for number, finding in entries if finding.order == OTHER_ORDER]
     if turned:
         yield ""
@@ -77,13 +89,21 @@ def finding_lines(report: Report, style: Style, citations: Citations, *, full: b
             yield from _told(number, finding, actions, style, citations, told)
 
 
-def _told_above(note: Finding, entries: Sequence[tuple[int, Finding]]) -> bool:
-    """Whether what stays dissolved of a metal is the subject of a warning or danger already."""
-    return note.kind == "incomplete" and any(
-        finding.kind == "remobilised"
-        and (finding.step, finding.vessel, finding.species) == (note.step, note.vessel, note.species)
-        for _, finding in entries
-    )
+def _news(notes: Sequence[Finding], told: Sequence[Finding]) -> list[Finding]:
+    """The notes that say something new: not the same of a later step, not another measure of a gas that was told of in the same step, nor
+    what stays dissolved of a metal whose going back was told."""
+    fresh: list[Finding] = []
+    for note in notes:
+        before = [one for one in (*told, *fresh) if (one.step, one.vessel) == (note.step, note.vessel)]
+        same_gas = note.kind in GASES and any(one.kind in GASES and one.species == note.species for one in before)
+        first = {one.quantity for one in note.measures[:1]}
+        same_metal = note.kind == "incomplete" and any(
+            one.kind == "remobilised" and first <= {measure.quantity for measure in one.measures} for one in before
+        )
+        again = any((one.kind, one.summary) == (note.kind, note.summary) for one in (*told, *fresh))
+        if not again and not same_gas and not same_metal:
+            fresh.append(note)
+    return fresh
 
 
 def _head(word: str, style: Style) -> str:
@@ -103,6 +123,11 @@ def _told(
 ) -> Iterator[str]:
     """One finding. ``told`` has what was said of others before, so that nothing is said twice."""
     margin = " " * _MARGIN
+    same = told.setdefault(f"{finding.kind} {finding.summary}", number)
+    if same != number:
+        yield f"{_head(finding.signal.upper(), style)}{style.strong(f'As ({same}), once more.')}"
+        yield from _about(number, finding, actions, style, alike=alike)
+        return
     marks = citations.marks(finding.sources)
     summary = finding.summary if finding.says else f"{finding.summary} {marks}"
     lines = list(wrapped(style.words(summary), style.width, margin))
@@ -118,11 +143,16 @@ def _told(
         yield from wrapped(style.words(control), style.width, f"{margin}- ")
     before = {said} | {told[control] for control in finding.controls}
     before.discard(number)
-    about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions, alike=alike)}."
-    if before:
-        numbers = " and ".join(f"({one})" for one in sorted(before))
-        about += f" See {numbers} too." if controls else f" Why, and what prevents it: see {numbers}."
-    yield from (style.faint(line) for line in wrapped(about, style.width, margin))
+    numbers = " and ".join(f"({one})" for one in sorted(before))
+    more = f" See {numbers} too." if controls else f" Why, and what prevents it: see {numbers}."
+    yield from _about(number, finding, actions, style, more if before else "", alike=alike)
+
+
+def _about(
+    number: int, finding: Finding, actions: dict[int, str], style: Style, more: str = "", *, alike: bool = False
+) -> Iterator[str]:
+    about = f"({number}) {KINDS[finding.kind].capitalize()}, {moment_words(finding, actions, alike=alike)}.{more}"
+    yield from (style.faint(line) for line in wrapped(about, style.width, " " * _MARGIN))
 
 
 def goal_lines(goals: Sequence[GoalReport], style: Style) -> Iterator[str]:

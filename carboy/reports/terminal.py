@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 
 from carboy.model.knowledge import Source
 from carboy.model.report import Report
@@ -14,18 +14,26 @@ from carboy.reports.style import Style, wrapped
 
 
 def report_text(
-    report: Report, style: Style, sources: Mapping[str, Source] | None = None, *, full: bool = False
+    report: Report,
+    style: Style,
+    sources: Mapping[str, Source] | None = None,
+    *,
+    near: Mapping[str, Sequence[str]] | None = None,
+    full: bool = False,
 ) -> str:
     """The whole report as text that ends in a newline.
 
-    ``sources`` gives the citations for the keys in the report; ``full`` shows every derivation, note and citation.
+    ``sources`` gives the citations for the keys in the report; ``near`` names that may have been meant by what was not recognised; ``full``
+    shows every derivation, note and citation.
     """
     citations = Citations(sources or {})
-    return style.finished("\n".join(_lines(report, style, citations, full=full)) + "\n")
+    return style.finished("\n".join(_lines(report, style, citations, near or {}, full=full)) + "\n")
 
 
-def _lines(report: Report, style: Style, citations: Citations, *, full: bool) -> Iterator[str]:
-    yield from verdict_lines(report, style)
+def _lines(
+    report: Report, style: Style, citations: Citations, near: Mapping[str, Sequence[str]], *, full: bool
+) -> Iterator[str]:
+    yield from verdict_lines(report, style, near)
     yield from finding_lines(report, style, citations, full=full)
     yield from goal_lines(report.goals, style)
     yield from listed("To settle it", report.questions, style)

@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, field
+from itertools import count, product
+from string import ascii_lowercase
 
 from carboy.model.report import PathStep
 from carboy.reports.style import Style, columns_of, wrapped
@@ -17,7 +19,7 @@ class Link:
     """One event of a path with the events that supplied it. ``brings`` is what it hands on."""
 
     event: PathStep
-    number: int  # of the equation, 0 for a label
+    mark: str  # of the equation, empty for a label
     brings: list[str] = field(default_factory=list)
     suppliers: list[Link] = field(default_factory=list)
 
@@ -34,13 +36,19 @@ class Block:
         return max(map(columns_of, self.lines))
 
 
+def _marks() -> Iterator[str]:
+    """``a``, ``b`` ... ``z``, ``aa`` ...: letters, since numbers stand for findings."""
+    for size in count(1):
+        yield from map("".join, product(ascii_lowercase, repeat=size))
+
+
 def linked(path: Sequence[PathStep], goal: Sequence[str] = ()) -> Link:
     """The events of a path as a tree whose root is the last event.
 
     An event belongs to the first later one that uses something of what it made; to the last if there is none.
     """
-    numbers = iter(range(1, len(path) + 1))
-    links = [Link(event, 0 if event.rule == "label" else next(numbers)) for event in path]
+    marks = _marks()
+    links = [Link(event, "" if event.rule == "label" else next(marks)) for event in path]
     root = links[-1]
     wanted = [token for token in root.event.to if token in goal or token.removesuffix("(g)") in goal]
     root.brings = wanted or root.event.to[:_MOST_NAMED]
@@ -57,7 +65,7 @@ def linked(path: Sequence[PathStep], goal: Sequence[str] = ()) -> Link:
 
 
 def drawn(path: Sequence[PathStep], goal: Sequence[str], style: Style, indent: int = 0) -> list[str]:
-    """The tree, and below it the equations by number. Falls back to a list where the width does not do."""
+    """The tree, and below it the equations by letter. Falls back to a list where the width does not do."""
     root = linked(path, goal)
     room = style.width - indent
     lines: list[str] | None = None
@@ -76,12 +84,12 @@ def _draw(link: Link, style: Style, label_width: int) -> Block:
         words = _label_lines(link, label_width)
         return _extended(Block(words, len(words) - 1), made, " ── ")
     joined = _joined([_draw(supplier, style, label_width) for supplier in link.suppliers])
-    step = f"({link.number})─" if link.number else ""
+    step = f"({link.mark})─" if link.mark else ""
     return _extended(joined, made, f"─{step} ")
 
 
 def _label_lines(link: Link, width: int) -> list[str]:
-    text = " + ".join(link.event.from_) if link.event.rule == "label" else f"({link.number})"
+    text = " + ".join(link.event.from_) if link.event.rule == "label" else f"({link.mark})"
     return list(wrapped(text, width)) or [""]
 
 
@@ -131,8 +139,8 @@ def _equations(path: Sequence[PathStep], style: Style, room: int) -> list[str]:
     lines: list[str] = []
     several = len({event.step for event in path}) > 1
     events = [event for event in path if event.rule != "label"]
-    for number, event in enumerate(events, start=1):
-        lead = f"({number}) "
+    for mark, event in zip(_marks(), events, strict=False):
+        lead = f"({mark}) "
         lines += wrapped(style.equation(event.equation), room, lead)
         by = "" if event.rule == "equilibrium" else f"by {event.rule}"
         notes = [by] if by else []

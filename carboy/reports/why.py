@@ -114,7 +114,7 @@ def _numbers(finding: Finding, style: Style, citations: Citations) -> Iterator[s
         return
     yield ""
     yield style.strong("How each number was had")
-    if finding.amount_mol is not None and finding.species:
+    if finding.amount_mol is not None and finding.species and finding.kind != "remobilised":
         name = style.formula(finding.species[0])
         counted = "(molecules, dissolved or not, less those that were there before; over the stated ranges)"
         text = f"{name} formed = {_shown(finding.amount_mol, 'mol')} {counted}"
@@ -192,7 +192,8 @@ def _thresholds(
     if not known:
         return
     yield ""
-    yield style.strong("What it was held against (kb/assessment*.ttl; a site may set its own)")
+    yield style.strong("What it was held against")
+    yield from wrapped("Thresholds of kb/assessment*.ttl; a site may set its own.", style.width, "  ")
     for one in known:
         figure = handy(one.value.magnitude, one.value.unit)
         yield from wrapped(f"{one.key} = {figure} {citations.marks([one.value.source])}", style.width, "  ")

@@ -30,6 +30,7 @@ KINDS: dict[Kind, str] = {
     "remobilised": "metal back in solution",
     "incomplete": "aim missed",
 }
+GASES: tuple[Kind, ...] = ("toxic-gas", "flammable-gas", "asphyxiant-gas", "oxygen")
 _GRAVITY = {kind: place for place, kind in enumerate(KINDS)}
 SIGNALS: tuple[Signal, ...] = ("danger", "warning", "note")
 OTHER_ORDER = "other order"

@@ -44,10 +44,10 @@ class ExampleRunner:
         self._count += 1
         if self._progress is not None:
             self._progress(self._count, self._total)
-        case = self.case(example)
+        laboratory, case, _ = self._laboratory.prepared(self.case(example))
         try:
-            walk = self._laboratory.walk(case)
-            findings = self._laboratory.judge.findings(walk)
+            walk = laboratory.walk(case)
+            findings = laboratory.judge.findings(walk)
         except (
             ArithmeticError,
             LookupError,

@@ -42,7 +42,7 @@ from carboy.text.units import read_strength_unit, read_unit, refuse_unit, unit_w
 class NameMatch(Protocol):
     """What a name was found to mean.
 
-    ``kind`` is "substance", "material" or another; ``extra_water`` the water of crystallisation beyond that of the
+    ``kind`` is "substance", "material", "salt" (of known ions; ``id`` is their sum) or another; ``extra_water`` the water of crystallisation beyond that of the
     thing (mol per mol); ``dropped`` the words that were passed over to find it ("powder", "solution").
     """
 
@@ -63,7 +63,7 @@ class NameLookup(Protocol):
     """The names that the graph knows."""
 
     def resolve(self, text: str) -> NameMatch:
-        """The thing of this name, formula or CAS number; of another kind than substance and material if there is
+        """The thing of this name, formula or CAS number; of another kind than substance, material and salt if there is
         none.
         """
 
@@ -241,7 +241,7 @@ class _Reader:
             except InputError:  # a number or formula that is wrong is no known name
                 self.found[words] = None
             else:
-                self.found[words] = match if match.kind in ("substance", "material") else None
+                self.found[words] = match if match.kind in ("substance", "material", "salt") else None
         found = self.found[words]
         return found if found is not None and (loosely or not found.dropped) else None
 
@@ -523,7 +523,7 @@ class _Reader:
             form = form or next((_FORM_OF[word] for word in match.dropped if word in _FORM_OF), "")
         item = self.named(*words, match)
         if strength is None:
-            dissolved = form == "solution" and item.reference.startswith(("substance:", "smiles:"))
+            dissolved = form == "solution" and item.reference.startswith(("substance:", "smiles:", "salt:"))
             vague = listed and item.reference != _WATER
             hidden = item.reference in ("unknown", "unrecognised") and (listed or form == "solution")
             strength = Strength(unit="unknown" if dissolved or vague or hidden or solvent else "neat")

@@ -98,3 +98,14 @@ def test_cases_of_a_folder_and_a_file_that_cannot_be_read(carboy, files, tmp_pat
     assert "WRONG  wrong.yaml" in ran.out
     assert "Did you mean 'add'?" in ran.out
     assert ran.out.splitlines()[-1] == "4 cases, 10 expectations, 1 failed, 1 could not be read"
+
+
+def test_vet_why(carboy, files):
+    ran = carboy("vet", str(files["unsafe"]), "--why", "1")
+    assert ran.status == 1
+    assert ran.out.startswith("(1) DANGER  Hydrogen sulfide")
+    assert "step 1: 1 L of 0.1 M sodium sulfide" in ran.out
+    assert carboy("vet", str(files["safe"]), "--why", "1").status == 2
+    several = carboy("vet", str(files["safe"]), str(files["unsafe"]), "--why", "1")
+    assert several.status == 2
+    assert "several files" in several.err

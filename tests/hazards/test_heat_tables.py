@@ -156,7 +156,9 @@ def test_time_of_addition_counts_where_the_heat_comes_first() -> None:
 
 
 def test_no_surplus_no_bath() -> None:
-    heat = only(combined("500 mL of 2 M sodium hydroxide", "500 mL of 2 M hydrochloric acid"), "heat", order="either order")
+    heat = only(
+        combined("500 mL of 2 M sodium hydroxide", "500 mL of 2 M hydrochloric acid"), "heat", order="either order"
+    )
     names = [one.quantity for one in heat.measures]
     assert not [name for name in names if name.startswith(("to be carried", "shortest time"))]
 
@@ -211,3 +213,12 @@ def test_what_has_reacted_away_is_still_what_was_put_in() -> None:
     heat = only(report, "heat", step=3)
     assert "azide" not in heat.summary
     assert heat.signal == "danger"  # but it boils
+
+
+@pytest.mark.xfail(strict=True, reason="rules that ask for a temperature see the one before the heat (bench/follow.py)")
+def test_strong_peroxide_made_boiling_hot_gives_its_oxygen_at_once() -> None:
+    # 60 g of caustic, 1.5 mol at some 40 kJ, in 100 mL: to boiling; beyond 60 degC peroxide falls apart in minutes
+    report = combined("100 mL of 30 % hydrogen peroxide", "60 g of sodium hydroxide")
+    assert only(report, "heat", step=2, order="either order").signal == "danger"
+    oxygen = [one for one in select(report, "oxygen", "O2") if one.order != "other order"]
+    assert [one.moment for one in oxygen] == ["during"], outline(report)

@@ -15,7 +15,7 @@ from carboy import cache as cache_module
 from carboy.errors import CarboyError, KnowledgeError
 from carboy.knowledge import index as index_module
 from carboy.knowledge.files import digest, read_files
-from carboy.knowledge.index import graph, load_index
+from carboy.knowledge.index import graph, is_compiled, load_index
 from carboy.knowledge.problems import KnowledgeProblems
 
 
@@ -148,3 +148,11 @@ def test_graph_answers_queries(small_kb: Path) -> None:
         )
     )
     assert [row[0] for row in rows] == [URIRef("urn:carboy:substance:sodium-sulfide-nonahydrate")]
+
+
+def test_it_can_be_asked_whether_the_index_is_compiled(small_kb: Path, cache: Path) -> None:
+    assert not is_compiled(small_kb)
+    load_index(small_kb)
+    assert is_compiled(small_kb)
+    (small_kb / "note.ttl").write_text("# changed\n", encoding="utf-8")
+    assert not is_compiled(small_kb)

@@ -9,7 +9,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from carboy.reports.figures import number, quantity, span
+from carboy.reports.figures import handy, number, quantity, span
 from carboy.reports.style import Style, ascii_text, columns_of, style_for, wrapped
 from carboy.reports.table import table
 
@@ -21,7 +21,7 @@ from carboy.reports.table import table
         (0.07648, "0.0765"),
         (12.34, "12.3"),
         (100.0, "100"),
-        (1004.2, "1004"),
+        (1004.2, "1000"),
         (968_727.6, "969\u00a0000"),
         (-2.5, "−2.5"),
         (-12_345.0, "−12\u00a0300"),
@@ -45,6 +45,33 @@ def test_number_is_within_half_of_the_third_figure(value):
 def test_span_is_one_figure_where_both_print_alike():
     assert span([0.1, 0.10001]) == "0.1"
     assert span([0.0107, 0.0988]) == "0.0107 to 0.0988"
+
+
+@pytest.mark.parametrize(
+    ("value", "unit", "text"),
+    [
+        (0.43, "mol", "0.43 mol"),
+        (0.0123, "mol", "12.3 mmol"),
+        (7.53e-5, "mol", "75.3 µmol"),
+        (2e-12, "mol", "2×10⁻¹² mol"),
+        (0.0, "mol", "0 mol"),
+        (0.00357, "kg", "3.57 g"),
+        (1400.0, "L", "1.4 m³"),
+        (0.0785, "m3", "78.5 L"),
+        (0.0126, "min", "0.756 s"),
+        (51.0, "min", "51 min"),
+        (2003.0, "min", "33.4 h"),
+        (34_700.0, "min", "24.1 d"),
+        (968_727.0, "ppm", "96.9 vol %"),
+        (3830.0, "ppm", "3830 ppm"),
+        (61.3, "K", "61.3 K"),
+        ([0.011, 0.0988], "mol", "11 to 98.8 mmol"),
+        ([0.01, 0.5], "mol", "0.01 to 0.5 mol"),
+        (None, "adequate", "adequate"),
+    ],
+)
+def test_handy_units(value, unit, text):
+    assert handy(value, unit).replace("\u00a0", " ") == text
 
 
 def test_quantity():

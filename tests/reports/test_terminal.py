@@ -4,11 +4,12 @@ from __future__ import annotations
 
 import pytest
 
-from carboy.model.report import Report
+from carboy.model.report import Measure, Report
 from carboy.reports.style import Style, columns_of
 from carboy.reports.terminal import report_text
 from tests.reports.made_report import MEETING, SOURCES, finding, goal, report
 
+LIMIT = Measure(quantity="limit", value=4.0, unit="%", basis="looked up")
 WHOLE = """\
 REFUSE  Do not do this as written.
 20 g of sodium sulfide + 1 L of 0.5 M HCl
@@ -17,12 +18,13 @@ DANGER   Hydrogen sulfide is set free: 0.1 mol.
          Acid turns HS⁻ into a gas that dulls the sense of smell. [1]
          What prevents it:
          - Keep the sulfide above pH 10.
-         (1) Toxic gas, step 2, from 25\u00a0% of the addition on; in either
-         order of pouring.
+         (1) Toxic gas, from 25\u00a0% of the addition on; in either order of
+         pouring.
 
 Numbers
   (1)  H₂S formed               0.1\u00a0mol
-       air brought to the IDLH  24.5\u00a0m³  IDLH 100 ppm
+       air brought to the IDLH  24.5\u00a0m³
+  --why 1 tells how the numbers of (1) were had, and so on.
 
 After each step
   step  pH    °C    L     what was done
@@ -32,9 +34,9 @@ After each step
           gas, mol: H₂S\u00a00.05 to 0.06
 
 How it comes about
-  (1) 20 g of sodium sulfide ── HS⁻ ─┬─(1)─ H₂S
+  (1) 20 g of sodium sulfide ── HS⁻ ─┬─(a)─ H₂S
       1 L of 0.5 M HCl ── H⁺ ────────┘
-      (1) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2
+      (a) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2
 
 Taken as given
   - The chemistry is that of 25 °C.
@@ -57,7 +59,7 @@ def test_the_whole_report():
 def test_plain_is_the_same_in_ascii():
     plain = text(report(), plain=True)
     assert plain.isascii()
-    assert "20 g of sodium sulfide -- HS- -+-(1)- H2S" in plain
+    assert "20 g of sodium sulfide -- HS- -+-(a)- H2S" in plain
     assert "Acid turns HS- into a gas" in plain
     assert plain.count("\n") == WHOLE.count("\n")
 
@@ -116,13 +118,55 @@ def test_nothing_is_said_twice():
     shown = text(report(findings=[finding(), finding(kind="flammable-gas", signal="warning", summary="It burns.")]))
     assert shown.count("dulls the sense of smell") == 1
     assert shown.count("Keep the sulfide above pH 10.") == 1
-    assert "Why, and what prevents it: see (1)." in shown
+    assert "Why, and what prevents it: see (1)." in " ".join(shown.split())
     assert shown.count("20 g of sodium sulfide ──") == 1
+
+
+def test_numbers_of_one_substance_stand_once_and_full_tells_what_they_rest_on():
+    other = finding(kind="flammable-gas", signal="warning", measures=[*finding().measures, LIMIT])
+    made = report(findings=[finding(), other])
+    numbers = text(made).split("Numbers")[1].split("After each step")[0]
+    assert numbers.count("24.5") == 1
+    assert "IDLH 100 ppm" not in numbers
+    assert "(2)  limit" in numbers
+    assert "IDLH 100 ppm" in text(made, full=True)
+
+
+def test_either_order_is_said_once_where_it_holds_for_all():
+    both = text(report(findings=[finding(), finding(kind="foam", summary="It foams.")]))
+    assert both.splitlines()[2] == "This holds whichever is poured into which."
+    assert "either order" not in both
+    mixed = text(report(findings=[finding(), finding(kind="foam", summary="It foams.", order="as written")]))
+    assert "whichever" not in mixed
+    assert "in either order" in mixed
+
+
+def test_what_one_gas_does_stands_together():
+    foam = finding(kind="foam", summary="It foams.")
+    fire = finding(kind="fire", summary="It burns.", species=["C3H6O"])
+    shown = text(report(findings=[foam, fire, finding()]))
+    order = [shown.index(words) for words in ("Hydrogen sulfide is set free", "It foams.", "It burns.")]
+    assert order == sorted(order)
+
+
+def test_storage_tells_how_fast():
+    slow = finding(moment="storage", speed="days", kind="explosive")
+    assert "while it stands, over days" in text(report(findings=[slow]))
+
+
+def test_a_note_on_what_stays_dissolved_is_no_news_beside_the_metal_gone_back():
+    measures = [Measure(quantity="dissolved Hg", value=14.0, unit="mg/L", basis="equilibrium")]
+    back = finding(kind="remobilised", summary="Hg goes back.", species=["HgS2"], measures=measures)
+    note = finding(kind="incomplete", signal="note", summary="Hg stays.", species=["Hg"], measures=measures)
+    made = report(findings=[back, note])
+    assert "Hg stays." not in text(made)
+    assert "Hg stays." in text(made, full=True)
+    assert "Hg stays." in text(report(findings=[note]))
 
 
 def test_full_shows_every_derivation_note_and_citation():
     other = [MEETING.model_copy(update={"equation": "S-2 + 2 H+ -> H2S"})]
-    notes = [finding(signal="note", summary=f"Note {n}.") for n in range(9)]
+    notes = [finding(signal="note", kind="heat", summary=f"Note {n}.") for n in range(9)]
     made = report(findings=[finding(other_paths=[other], sources=["long-one"]), *notes])
     short, full = text(made), text(made, full=True)
     assert "1 other way leads there as well; --full draws them." in short

@@ -9,18 +9,18 @@ from tests.reports.made_report import ACID, MEETING, SULFIDE, step
 
 def test_two_labels_meet():
     assert drawn([SULFIDE, ACID, MEETING], ["H2S"], Style(80)) == [
-        "20 g of sodium sulfide ── HS⁻ ─┬─(1)─ H₂S",
+        "20 g of sodium sulfide ── HS⁻ ─┬─(a)─ H₂S",
         "1 L of 0.5 M HCl ── H⁺ ────────┘",
-        "(1) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2",
+        "(a) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2",
     ]
 
 
 def test_plain_has_tokens_and_no_boxes():
     lines = drawn([SULFIDE, ACID, MEETING], ["H2S"], Style(80, plain=True))
     assert Style(plain=True).finished("\n".join(lines)).splitlines() == [
-        "20 g of sodium sulfide -- HS- -+-(1)- H2S",
+        "20 g of sodium sulfide -- HS- -+-(a)- H2S",
         "1 L of 0.5 M HCl -- H+ --------+",
-        "(1) HS- + H+ -> H2S   by acid-frees-sulfide, step 2",
+        "(a) HS- + H+ -> H2S   by acid-frees-sulfide, step 2",
     ]
 
 
@@ -28,19 +28,19 @@ def test_three_labels_and_a_chain():
     water = step("label", "", ["1 L of chlorine water"], ["Cl2"], 3)
     oxidised = step("equilibrium", "H2S + Cl2 -> sulfur + 2 H+ + 2 Cl-", ["H2S", "Cl2"], ["sulfur", "H+", "Cl-"], 3)
     assert drawn([SULFIDE, ACID, MEETING, water, oxidised], ["sulfur"], Style(80)) == [
-        "20 g of sodium sulfide ── HS⁻ ─┬─(1)─ H₂S ─┐",
-        "1 L of 0.5 M HCl ── H⁺ ────────┘           ├─(2)─ sulfur",
+        "20 g of sodium sulfide ── HS⁻ ─┬─(a)─ H₂S ─┐",
+        "1 L of 0.5 M HCl ── H⁺ ────────┘           ├─(b)─ sulfur",
         "1 L of chlorine water ── Cl₂ ──────────────┘",
-        "(1) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2",
-        "(2) H₂S + Cl₂ → sulfur + 2 H⁺ + 2 Cl⁻   step 3",
+        "(a) HS⁻ + H⁺ → H₂S   by acid-frees-sulfide, step 2",
+        "(b) H₂S + Cl₂ → sulfur + 2 H⁺ + 2 Cl⁻   step 3",
     ]
 
 
 def test_one_label_alone():
     burst = step("stands-badly", "Cyanide in closed bottles", ["HS-"], ["H2S"], 2)
     assert drawn([SULFIDE, burst], ["H2S"], Style(80)) == [
-        "20 g of sodium sulfide ── HS⁻ ───(1)─ H₂S",
-        "(1) Cyanide in closed bottles   by stands-badly, step 2",
+        "20 g of sodium sulfide ── HS⁻ ───(a)─ H₂S",
+        "(a) Cyanide in closed bottles   by stands-badly, step 2",
     ]
 
 
@@ -54,6 +54,6 @@ def test_long_labels_are_wrapped_within_the_width_and_dropped_where_nothing_help
     assert drawn(path, ["H2S"], Style(80))[:4] == [
         "sodium sulfide nonahydrate in 4 L of",
         "(0.1 M sodium sulfide nonahydrate + 2",
-        "M sodium hydroxide)                   ── HS⁻ ─┬─(1)─ H₂S",
+        "M sodium hydroxide)                   ── HS⁻ ─┬─(a)─ H₂S",
         "1 L of 0.5 M HCl ── H⁺ ───────────────────────┘",
     ]

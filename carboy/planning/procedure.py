@@ -1,0 +1,264 @@
+"""From a sequence of treatments to a procedure with amounts: stoichiometry from the waste's own content, pH by the engine."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from math import ceil, floor, log10
+from typing import Any, Protocol
+
+import numpy as np
+
+from carboy.bench.make_up import Bench
+from carboy.bench.ranges import Ranges
+from carboy.bench.walk import Walk
+from carboy.chemistry.mixture import Mixture, poured_together
+from carboy.chemistry.stock import PROTON, ChemicalStock
+from carboy.model.knowledge import Index, Stage, Treatment
+from carboy.model.plan import Case
+from carboy.model.report import Report
+from carboy.reasoning.binding import Surroundings
+from carboy.reasoning.firing import Reactor
+from carboy.text.cases import case_from_mapping
+from carboy.text.portions import NameLookup, parse_portion
+
+WASTE, TANK = "waste", "tank"
+_SIZES = (0.1, 0.25, 0.5, 1, 2, 3, 5, 10, 15, 20, 30, 50, 75, 100, 150, 200, 300)  # L
+_GRID = 48  # amounts tried at once when a pH is sought
+_WITHIN = 0.2  # how far into a window of pH one goes
+_ORDINALS = ("", "second ", "third ", "fourth ", "fifth ", "sixth ", "seventh ")
+
+
+class Vetter(Protocol):
+    """What is needed of the laboratory: it is above this layer."""
+
+    index: Index
+
+    @property
+    def stock(self) -> ChemicalStock: ...
+    @property
+    def reactor(self) -> Reactor: ...
+    @property
+    def names(self) -> NameLookup: ...
+    def walk(self, case: Case) -> Walk: ...
+    def vet(self, case: Case) -> Report: ...
+
+
+class CannotDo(Exception):
+    """A treatment that cannot be carried out on this waste; the text says why."""
+
+
+@dataclass
+class Procedure:
+    """A procedure in the making, as the mapping of a case file; ``origin`` has the treatment and the test of each step."""
+
+    waste: str
+    setting: Mapping[str, Any]
+    material: str = "HDPE"
+    slower: float = 1.0
+    roomier: float = 1.0
+    steps: list[dict[str, str]] = field(default_factory=list)
+    origin: list[tuple[str, str]] = field(default_factory=list)
+    vessels: list[str] = field(default_factory=lambda: [TANK])
+    cakes: list[tuple[str, str]] = field(default_factory=list)  # vessel, treatment that filled it
+    size_L: float = 1000.0
+
+    @property
+    def vessel(self) -> str:
+        """Where the liquid is now."""
+        return self.vessels[-1]
+
+    def mapping(self, goals: list[str]) -> dict[str, Any]:
+        """As a case file has it."""
+        described = {"volume": f"{self.size_L:g} L", "material": self.material, "cover": "open"}
+        return {
+            "title": f"Treatment of {self.waste}",
+            "setting": dict(self.setting),
+            "bottles": {WASTE: self.waste},
+            "vessels": {name: dict(described) for name in self.vessels},
+            "steps": [dict(step) for step in self.steps],
+            "goals": list(goals),
+        }
+
+    def add(self, step: dict[str, str], treatment: str = "", test: str = "") -> None:
+        """One more step."""
+        self.steps.append(step)
+        self.origin.append((treatment, test))
+
+
+class Builder:
+    """Builds procedures for one waste."""
+
+    def __init__(self, lab: Vetter, waste: str, setting: Mapping[str, Any]) -> None:
+        self.lab = lab
+        self.waste = waste
+        self.setting = setting
+        self._contents: dict[str, Mixture] = {}
+        self._reagents: dict[str, tuple[Mixture, str]] = {}
+
+    def build(self, sequence: tuple[str, ...], *, slower: float = 1.0, roomier: float = 1.0) -> Procedure:
+        """The procedure of a sequence of treatments. Raises CannotDo."""
+        made = Procedure(self.waste, self.setting, slower=slower, roomier=roomier)
+        treatments = [self.lab.index.treatments[key] for key in sequence]
+        self._begin(made, treatments)
+        for treatment in treatments:
+            for stage in treatment.stages:
+                self._stage(made, treatment, stage)
+        final = self.content(made)
+        largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
+        if float(final.volume_L[0]) > largest:
+            raise CannotDo(f"it takes {float(final.volume_L[0]):.3g} L of liquid, more than the {largest:g} L of a bench treatment")
+        room = self.lab.index.thresholds["treatment-free-space"].value.magnitude * roomier
+        made.size_L = next((size for size in _SIZES if size >= room * self._fullest(made)), _SIZES[-1])
+        return made
+
+    def content(self, made: Procedure) -> Mixture:
+        """What is in the vessel where the liquid is, after the steps so far."""
+        key = repr(made.steps)
+        known = self._contents.get(key)
+        if known is None:
+            walk = self.lab.walk(case_from_mapping(made.mapping([]), self.lab.names))
+            known = self._contents[key] = walk.vessels[made.vessel].content
+        return known
+
+    def _fullest(self, made: Procedure) -> float:
+        walk = self.lab.walk(case_from_mapping(made.mapping([]), self.lab.names))
+        return max(float(trace.after.volume_L.max()) for trace in walk.steps)
+
+    # --- the beginning: the waste, into water where it must be diluted
+
+    def _begin(self, made: Procedure, treatments: list[Treatment]) -> None:
+        made.add({"add": WASTE, "to": TANK})
+        content = self.content(made)
+        volume = float(content.volume_L[0])
+        factor = 1.0
+        for treatment in treatments:
+            for token, most in treatment.dilute_below.items():
+                factor = max(factor, self._strength(content, token) / most)
+        if factor > 1.02:
+            largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
+            if volume * factor > largest:
+                raise CannotDo(f"it asks for dilution to {volume * factor:.3g} L, more than the {largest:g} L of a bench treatment")
+            water = _round_up(volume * (factor - 1.0))
+            made.steps.clear()
+            made.origin.clear()
+            made.add({"add": f"{_amount(water)} of water", "to": TANK})
+            made.add({"add": WASTE, "to": TANK, "over": f"{_minutes(20 * made.slower)} min"}, "", "The liquid stays cool to the hand of the vessel's wall.")
+
+    def _strength(self, content: Mixture, token: str) -> float:
+        """mol/L; of the proton: free acid or free base, whichever there is."""
+        volume = max(float(content.volume_L[0]), 1e-9)
+        if token == PROTON:
+            pH = float(content.pH[0])
+            free = 10.0**-pH + 10.0 ** (pH - 14.0)
+            return min(free, abs(float(content.total(PROTON)[0])) / volume)
+        return float(content.total(token)[0]) / volume
+
+    # --- the stages of a treatment
+
+    def _stage(self, made: Procedure, treatment: Treatment, stage: Stage) -> None:
+        match stage.action:
+            case "raise" | "lower":
+                self._to_pH(made, treatment, stage)
+            case "dose":
+                self._dose(made, treatment, stage)
+            case "stir" | "stand":
+                made.add({stage.action: _time(stage.minutes), "in": made.vessel}, treatment.id, stage.test)
+            case "filter":
+                place = _ORDINALS[min(len(made.cakes), len(_ORDINALS) - 1)]
+                cake, jug = f"{place}sludge", f"{place}jug"
+                made.add({"filter": made.vessel, "cake": cake, "filtrate": jug}, treatment.id, stage.test)
+                made.cakes.append((cake, treatment.id))
+                made.vessels.append(jug)
+
+    def _dose(self, made: Procedure, treatment: Treatment, stage: Stage) -> None:
+        content = self.content(made)
+        needed = stage.excess * sum(float(content.total(demand.species)[0]) * demand.mol_per_mol for demand in stage.demands)
+        if needed <= 1e-9:
+            return
+        unit, words = self._reagent(stage.reagent)
+        per_unit = float(unit.total(stage.agent)[0])
+        if per_unit <= 0:
+            raise CannotDo(f"{stage.reagent} holds none of what is to be dosed")
+        self._pour(made, treatment, stage, needed / per_unit, words)
+
+    def _to_pH(self, made: Procedure, treatment: Treatment, stage: Stage) -> None:
+        """The least amount that brings the pH well into the window: a grid of amounts, each solved for its equilibrium, closed in on twice."""
+        assert stage.pH_low is not None and stage.pH_high is not None
+        content = self.content(made)
+        content = content.take(np.array([0]))
+        up = stage.action == "raise"
+        inside = content.pH[0] >= stage.pH_low if up else content.pH[0] <= stage.pH_high
+        if inside:
+            return
+        margin = _WITHIN * (stage.pH_high - stage.pH_low)
+        aim = stage.pH_low + margin if up else stage.pH_high - margin
+        unit, words = self._reagent(stage.reagent)
+        litres = float(content.volume_L[0])
+        low, high = 1e-6 * litres, (2000.0 if words == "g" else 5.0) * litres
+        amounts = np.geomspace(low, high, _GRID)
+        reached = np.nan
+        for _ in range(4):
+            pH = self._pH_after(content, unit, amounts)
+            there = pH >= aim if up else pH <= aim
+            if not there.any():
+                raise CannotDo(f"{stage.reagent} does not bring the pH to {aim:.1f}")
+            place = int(np.argmax(there))
+            low, high, reached = (amounts[place - 1] if place else 0.0), float(amounts[place]), float(pH[place])
+            amounts = np.linspace(low, high, _GRID)
+        if reached > stage.pH_high + 0.3 if up else reached < stage.pH_low - 0.3:
+            raise CannotDo(f"{stage.reagent} overshoots the window of pH {stage.pH_low:g} to {stage.pH_high:g}")
+        self._pour(made, treatment, stage, high, words)
+
+    def _pH_after(self, content: Mixture, unit: Mixture, amounts: np.ndarray) -> np.ndarray:
+        together = poured_together(content.repeated(len(amounts)), unit.repeated(len(amounts)).scaled(amounts))
+        together.neat = {}
+        after, _ = self.lab.reactor.run(together, Surroundings(), slowest="minutes")
+        return np.nan_to_num(after.pH, nan=7.0)
+
+    def _pour(self, made: Procedure, treatment: Treatment, stage: Stage, amount: float, words: str) -> None:
+        text = f"{_amount(amount) if words == 'L' else _grams(amount)} of {stage.reagent}"
+        step = {"add": text, "to": made.vessel}
+        if stage.minutes:
+            step["over"] = f"{_minutes(stage.minutes * made.slower)} min"
+        made.add(step, treatment.id, stage.test)
+
+    def _reagent(self, label: str) -> tuple[Mixture, str]:
+        """The content of one gram or one litre of a reagent, and the unit."""
+        known = self._reagents.get(label)
+        if known is None:
+            solution = label[0].isdigit()
+            portion = parse_portion(f"1 {'L' if solution else 'g'} of {label}", self.lab.names)
+            if portion.unrecognised:
+                raise CannotDo(f"the reagent '{label}' is not known")
+            ranges = Ranges()
+            Bench(self.lab.stock, ranges).make_up(portion, "reagent", 25.0)
+            mixture = Bench(self.lab.stock, ranges).make_up(portion, "reagent", 25.0).mixture
+            known = self._reagents[label] = (mixture.take(np.array([0])), "L" if solution else "g")
+        return known
+
+
+def _figures(value: float, digits: int = 4) -> str:
+    rounded = round(value, digits - 1 - floor(log10(abs(value)))) if value > 0 else 0.0
+    return f"{rounded:.10f}".rstrip("0").rstrip(".")
+
+
+def _amount(litres: float) -> str:
+    return f"{_figures(litres)} L" if litres >= 1 else f"{_figures(1000 * litres)} mL"
+
+
+def _grams(grams: float) -> str:
+    return f"{_figures(grams)} g"
+
+
+def _minutes(value: float) -> str:
+    return f"{ceil(value):d}"
+
+
+def _time(minutes: float) -> str:
+    return f"{minutes / 60:g} h" if minutes >= 120 else f"{minutes:g} min"
+
+
+def _round_up(litres: float) -> float:
+    step = 10.0 ** (floor(log10(litres)) - 1)
+    return ceil(litres / step - 1e-9) * step

@@ -1,0 +1,296 @@
+"""Routes for a waste: sequences from the graph of states, made into procedures, vetted, and ranked."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from io import StringIO
+from typing import Any
+
+import numpy as np
+from ruamel.yaml import YAML
+
+from carboy.bench.walk import Walk
+from carboy.chemistry.mixture import TRACE, Mixture
+from carboy.errors import InputError
+from carboy.hazards.steps import pair
+from carboy.model.knowledge import Index
+from carboy.model.plan import Goal
+from carboy.model.report import Report
+from carboy.model.treatment import Rejected, Route, RouteStep, Stream, TreatReport
+from carboy.planning.liquid import counted_mass, hazards_of, said, unknown_metals
+from carboy.planning.procedure import TANK, WASTE, Builder, CannotDo, Procedure, Vetter
+from carboy.planning.search import State, must_go, reachable, sequences
+from carboy.text.cases import case_from_mapping
+from carboy.text.goals import parse_goal
+from carboy.text.portions import parse_portion
+
+CAUTIONS = (
+    "This is a screening aid, not a permit: a qualified person reads every step before the first drop.",
+    "Treating hazardous waste needs a permit (40 CFR 264, 265 and 270) unless an exclusion holds: treatment in the accumulation container "
+    "(40 CFR 262), elementary neutralisation of what is a waste for its pH alone (40 CFR 264.1(g)(6), 270.1(c)(2)(v)). The state may be stricter.",
+    "What goes to the sewer needs the consent of its authority (40 CFR 403.5); a limit met here is not that consent.",
+    "Sludge, filters, gloves and rinses from it leave by a licensed contractor, with the waste they come from on the label (40 CFR 262, 268).",
+    "Try it on a hundredth of the waste first, and measure what the label does not say.",
+)
+NEUTRALISATION = "Only the pH makes this a waste: the elementary neutralisation exclusion may hold (40 CFR 264.1(g)(6)); ask the site."
+DEFAULT_SETTING = {"place": "hood", "hood_flow": "0.4 m3/s", "temperature": "22 degC"}
+_TRIED = 12  # sequences made into procedures
+_OFFERED = 4
+_PATIENCE = ((1.0, 1.0), (4.0, 2.5))  # how much slower and roomier each try is
+_CURED_BY_PATIENCE = frozenset({"foam", "heat", "asphyxiant-gas", "pressure", "oxygen", "toxic-gas"})
+_SHOWN = 1e-3  # mg/L
+
+Progress = Callable[[int, int], None]
+
+
+def find_routes(
+    lab: Vetter,
+    waste: str,
+    aim: str | None = None,
+    setting: Mapping[str, Any] | None = None,
+    progress: Progress | None = None,
+) -> TreatReport:
+    """Routes for the waste that ``waste`` describes like a label. ``aim``: a further goal, ``dissolved mercury below 0.2 mg/L``.
+
+    Raises InputError where the waste or the aim cannot be read.
+    """
+    portion = parse_portion(waste, lab.names)
+    goal = _aim(aim, lab) if aim else None
+    places = dict(DEFAULT_SETTING if setting is None else setting)
+    blank = TreatReport(waste=waste, outcome="cannot say", hazards=[], cautions=list(CAUTIONS))
+    if portion.unrecognised:
+        blank.unrecognised = [item.words for item in portion.unrecognised]
+        blank.reasons = [
+            "What is not known cannot be treated: every reagent may be the wrong one. Have it analysed, or leave it closed to a contractor."
+        ]
+        return blank
+    builder = Builder(lab, waste, places)
+    start = Procedure(waste, places)
+    start.add({"add": WASTE, "to": TANK})
+    content = builder.content(start)
+    if content.solved is None and not content.aside:
+        raise InputError(f"'{waste}' is not a liquid in water; dissolve or name its solution first")
+    state = hazards_of(content, lab.stock)
+    report = blank.model_copy(update={"hazards": said(state, lab.index.hazards)})
+    report.remains = said(state - must_go(lab.index), lab.index.hazards)
+    return _searched(report, state, content, builder, lab, goal, progress)
+
+
+def _searched(
+    report: TreatReport,
+    state: State,
+    content: Mixture,
+    builder: Builder,
+    lab: Vetter,
+    goal: Goal | None,
+    progress: Progress | None,
+) -> TreatReport:
+    metals = unknown_metals(content, lab.stock)
+    if metals:
+        report.reasons.append(f"No treatment is recorded for {', '.join(metals)}: this leaves untreated by a contractor.")
+        return report
+    refused = [item for item in lab.index.untreatable.values() if set(item.hazards) & state]
+    if refused:
+        report.outcome = "no sound treatment"
+        report.reasons += [f"{item.name[0].upper()}{item.name[1:]}: {item.reason}" for item in refused]
+        return report
+    if not state & must_go(lab.index):
+        report.outcome = "nothing to treat"
+        return report
+    report.outcome = "no sound treatment"
+    found: list[Route] = []
+    tried = list(sequences(state, lab.index, _TRIED))
+    for number, sequence in enumerate(tried, start=1):
+        if progress is not None:
+            progress(number, len(tried))
+        route = _tried(sequence, state, builder, lab, goal)
+        if isinstance(route, Rejected):
+            report.rejected.append(route)
+        else:
+            found.append(route)
+            if len(found) == _OFFERED:
+                break
+    if found:
+        report.outcome = "routes found"
+        report.routes = sorted(found, key=lambda route: route.cost)
+        if state <= {"acid", "base"}:
+            report.cautions.insert(1, NEUTRALISATION)
+    elif tried:
+        report.reasons.append(
+            "None of the treatments of the graph reaches a safe end by way of steps that vet clean; what stood in the way is told for each."
+        )
+    else:
+        stuck = said(reachable(state, lab.index), lab.index.hazards)
+        report.reasons.append(
+            "No sequence of the recorded treatments fits: "
+            + (f"{', '.join(stuck)} would stay." if stuck else "each is forbidden by something else in the liquid.")
+        )
+    return report
+
+
+def _aim(text: str, lab: Vetter) -> Goal:
+    goal = parse_goal(text, lab.names)  # type: ignore[arg-type]  # names look up subjects too
+    if goal.vessel:
+        raise InputError("the aim names no vessel here; it is the last liquid that is meant")
+    return goal
+
+
+def _tried(sequence: tuple[str, ...], state: State, builder: Builder, lab: Vetter, goal: Goal | None) -> Route | Rejected:
+    names = [lab.index.treatments[key].name for key in sequence]
+    reasons: list[str] = []
+    for slower, roomier in _PATIENCE:
+        try:
+            made = builder.build(sequence, slower=slower, roomier=roomier)
+        except CannotDo as problem:
+            return Rejected(names=names, reasons=[f"{problem}."])
+        mapping = made.mapping(_goals(sequence, state, made, lab.index, goal))
+        case = case_from_mapping(mapping, lab.names)
+        report = lab.vet(case)
+        walk = lab.walk(case)
+        reasons = _objections(report, walk, made, lab)
+        if not reasons:
+            return _route(sequence, made, mapping, report, walk, lab)
+        if not any(finding.signal == "danger" and finding.kind in _CURED_BY_PATIENCE for finding in report.findings):
+            break
+    return Rejected(names=names, reasons=reasons)
+
+
+def _goals(sequence: tuple[str, ...], state: State, made: Procedure, index: Index, aim: Goal | None) -> list[str]:
+    """What must hold of the last liquid: the level of every hazard that was there or came on the way."""
+    wanted = set(state)
+    for key in sequence:
+        wanted |= set(index.treatments[key].leaves)
+    texts = []
+    aimed = (aim.subject, aim.subject.split("(")[0]) if aim is not None else ()
+    for key in sorted(wanted & must_go(index)):
+        hazard = index.hazards[key]
+        for token in hazard.species:
+            subject = index.species[token].report_key
+            if hazard.above is None or subject == token or subject.split("(")[0] in aimed:
+                continue  # what the goals have no name for is judged on the last liquid itself
+            texts.append(f"dissolved {subject} in {made.vessel} below {hazard.above.magnitude:g} mg/L")
+    low, high = index.hazards.get("acid"), index.hazards.get("base")
+    if low is not None and low.pH_low is not None and high is not None and high.pH_high is not None:
+        texts.append(f"pH in {made.vessel} between {low.pH_low.magnitude:g} and {high.pH_high.magnitude:g}")
+    if aim is not None:
+        texts.append(_with_vessel(aim, made.vessel))
+    return texts
+
+
+def _with_vessel(aim: Goal, vessel: str) -> str:
+    """The aim as a goal of the case: the words before the window, the vessel, the window."""
+    words = aim.text
+    for start in (" below ", " above ", " between ", " at most ", " at least ", " under ", " over "):
+        place = words.lower().find(start)
+        if place > 0:
+            return f"{words[:place]} in {vessel}{words[place:]}"
+    return words
+
+
+def _objections(report: Report, walk: Walk, made: Procedure, lab: Vetter) -> list[str]:
+    """Why a procedure is not offered; empty where nothing stands against it."""
+    words = [
+        f"Step {finding.step}: {finding.summary}" for finding in report.findings if finding.signal == "danger"
+    ]
+    words += [f"Not reached: {goal.goal}{_had(goal.value, goal.unit)}." for goal in report.goals if goal.met is not True]
+    if report.verdict == "cannot say":
+        words.append("The calculation does not settle.")
+    left = hazards_of(walk.vessels[made.vessel].content, lab.stock) & must_go(lab.index)
+    told = " ".join(words)
+    words += [f"Still in the liquid: {name}." for name in said(left, lab.index.hazards) if name not in told and not words]
+    if report.verdict == "refuse" and not words:
+        words.append("The procedure is refused.")
+    return list(dict.fromkeys(words))
+
+
+def _had(value: tuple[float, float] | None, unit: str) -> str:
+    if value is None:
+        return ""
+    low, high = value
+    figures = f"{low:.3g}" if low == high or f"{low:.3g}" == f"{high:.3g}" else f"{low:.3g} to {high:.3g}"
+    return f", it is {figures}" + ("" if unit == "pH" else f" {unit}")
+
+
+def _route(
+    sequence: tuple[str, ...], made: Procedure, mapping: dict[str, Any], report: Report, walk: Walk, lab: Vetter
+) -> Route:
+    treatments = [lab.index.treatments[key] for key in sequence]
+    streams = _streams(made, walk, lab)
+    sludge = sum(high for stream in streams for _, high in stream.solids_g.values())
+    return Route(
+        treatments=list(sequence),
+        names=[item.name for item in treatments],
+        vessel_L=made.size_L,
+        steps=[
+            RouteStep(step=place.step, action=_said_step(step), treatment=treatment, pH=place.pH, test=test)
+            for step, place, (treatment, test) in zip(made.steps, report.steps, made.origin, strict=True)
+        ],
+        streams=streams,
+        sludge_g=sludge,
+        dangers=list(dict.fromkeys(danger for item in treatments for danger in item.dangers)),
+        notes=[item.note for item in treatments if item.note],
+        sources=sorted({source for item in treatments for source in item.sources}),
+        # fewest steps, then least sludge (a step for each 20 g), then the mildest reagents
+        cost=len(made.steps) + sludge / 20.0 + 1.5 * sum(item.harshness for item in treatments),
+        case_file=_yaml(mapping),
+        report=report,
+    )
+
+
+def _said_step(step: Mapping[str, str]) -> str:
+    if "add" in step:
+        over = f" over {step['over']}" if "over" in step else ""
+        return f"add {'the ' if step['add'] == WASTE else ''}{step['add']} to the {step['to']}{over}"
+    if "filter" in step:
+        return f"filter the {step['filter']}: {step['cake']} on the filter, clear liquid to the {step['filtrate']}"
+    action = next(iter(step))
+    return f"{action} {step[action]}" + (f" in the {step['in']}" if "in" in step else "")
+
+
+def _streams(made: Procedure, walk: Walk, lab: Vetter) -> list[Stream]:
+    streams = []
+    last = lab.index.treatments[made.origin[-1][0]]
+    for vessel, kind, goes in (
+        *((name, "sludge", lab.index.treatments[key].goes_to) for name, key in made.cakes),
+        (made.vessel, "liquid", last.goes_to if not made.cakes else "the sewer, where its authority allows, or a contractor"),
+    ):
+        content = walk.vessels[vessel].content
+        solids = {lab.stock.label(token): amount * lab.stock.molar_mass(token) for token, amount in content.solids.items()}
+        for token, amount in content.aside.items():
+            if lab.stock.species(token).phase == "s":
+                solids[lab.stock.label(token)] = amount * lab.stock.molar_mass(token)
+        dissolved = {}
+        if kind == "liquid":
+            for token in content.dissolvable:
+                record = lab.stock.species(token)
+                if not record.report_key or not _worth_telling(token, lab):
+                    continue
+                strength = 1000 * content.dissolved(token) * counted_mass(token, lab.stock) / np.maximum(content.volume_L, 1e-9)
+                if np.any(strength > _SHOWN):
+                    dissolved[record.report_key] = pair(strength)
+        streams.append(
+            Stream(
+                vessel=vessel,
+                kind=kind,  # type: ignore[arg-type]
+                volume_L=pair(content.volume_L),
+                pH=None if content.solved is None or kind == "sludge" else pair(content.pH),
+                mg_L=dissolved,
+                solids_g={key: pair(grams) for key, grams in sorted(solids.items()) if np.any(grams > TRACE)},
+                goes_to=goes,
+            )
+        )
+    return streams
+
+
+def _worth_telling(token: str, lab: Vetter) -> bool:
+    return any(token in hazard.species for hazard in lab.index.hazards.values())
+
+
+def _yaml(mapping: dict[str, Any]) -> str:
+    writer = YAML()
+    writer.width = 120
+    text = StringIO()
+    writer.dump(mapping, text)
+    return text.getvalue()
+
+
