@@ -18,10 +18,12 @@ if TYPE_CHECKING:
     from carboy.model.plan import Setting as Setting
     from carboy.model.plan import VesselSpec as VesselSpec
     from carboy.model.report import Report as Report
+    from carboy.model.treatment import TreatReport as TreatReport
     from carboy.planning.repair import Mending as Mending
     from carboy.vetting import combine as combine
     from carboy.vetting import dose as dose
     from carboy.vetting import mend as mend
+    from carboy.vetting import treat as treat
     from carboy.vetting import vet as vet
 
 # public name -> the module that holds it
@@ -33,10 +35,12 @@ _HOMES = {
     "Mending": "carboy.planning.repair",
     "Report": "carboy.model.report",
     "Setting": "carboy.model.plan",
+    "TreatReport": "carboy.model.treatment",
     "VesselSpec": "carboy.model.plan",
     "combine": "carboy.vetting",
     "dose": "carboy.vetting",
     "mend": "carboy.vetting",
+    "treat": "carboy.vetting",
     "vet": "carboy.vetting",
 }
 
@@ -48,11 +52,13 @@ __all__ = [
     "Mending",
     "Report",
     "Setting",
+    "TreatReport",
     "VesselSpec",
     "__version__",
     "combine",
     "dose",
     "mend",
+    "treat",
     "vet",
 ]
 

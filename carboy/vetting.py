@@ -6,6 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -26,11 +27,16 @@ from carboy.model.knowledge import Index
 from carboy.model.plan import Case, Interval, Setting, VesselSpec
 from carboy.model.report import Finding, GoalReport, Report, StepReport, Verdict
 from carboy.model.rule import Rule
+from carboy.model.treatment import TreatReport
 from carboy.planning.dosing import dose_report
-from carboy.planning.repair import Mender, Mending
+from carboy.planning.hold_points import HoldPoints
+from carboy.planning.routes import find_routes
 from carboy.reasoning.firing import Reactor
 from carboy.rulebook.book import load_rules
 from carboy.text.cases import combine_case, read_case
+
+if TYPE_CHECKING:
+    from carboy.planning.repair import Mending
 
 CAUTIONS = (
     "This is a screening aid, not a permit. Labels can be wrong, and what the tool does not find is not proof of safety.",
@@ -103,10 +109,14 @@ class Laboratory:
         lab = self if admitted.index is self.index else Laboratory(admitted.index, self.rules)
         return lab, admitted.case, admitted.notes
 
-    def vet(self, case: Case, progress: Progress | None = None) -> Report:
-        """The report on a case."""
+    def vet(self, case: Case, progress: Progress | None = None, *, hold_points: bool = False) -> Report:
+        """The report on a case; with ``hold_points``, which take as long again, what must be true before each step."""
         lab, ready, notes = self.prepared(case)
-        return lab._report(lab._outcome(ready, progress), notes)
+        outcome = lab._outcome(ready, progress)
+        report = lab._report(outcome, notes)
+        if hold_points:
+            report.hold_points = HoldPoints(lab.judge, lab.reactor, lab.stock).of(outcome.walk)
+        return report
 
     def combine(
         self, portions: tuple[str, ...], setting: Setting | None = None, vessel: VesselSpec | None = None
@@ -122,6 +132,8 @@ class Laboratory:
 
     def mend(self, case: Case, progress: Progress | None = None) -> list[Mending]:
         """Changed procedures that clear what is found on a case, each vetted, the one that changes least first."""
+        from carboy.planning.repair import Mender
+
         lab, _, _ = self.prepared(case)
         return Mender(lab, self.vet, self._walk_prepared, progress).mend(case)
 
@@ -133,6 +145,8 @@ class Laboratory:
         progress: Progress | None = None,
     ) -> list[Mending]:
         """As :meth:`mend`, for portions poured together in this order and left standing for days."""
+        from carboy.planning.repair import Mender
+
         case = combine_case(portions, self.names, setting, vessel)
         lab, _, _ = self.prepared(case)
         return Mender(lab, self.vet_left_standing, self._walk_prepared, progress, ends_with_pour=True).mend(case)
@@ -288,7 +302,7 @@ def vet(case: str | Path | Case, *, progress: Progress | None = None) -> Report:
     """
     lab = laboratory()
     plan = case if isinstance(case, Case) else read_case(case, lab.names)
-    return lab.vet(plan, progress)
+    return lab.vet(plan, progress, hold_points=True)
 
 
 def dose(
@@ -316,3 +330,12 @@ def mend(case: str | Path | Case, *, progress: Progress | None = None) -> list[M
     lab = laboratory()
     plan = case if isinstance(case, Case) else read_case(case, lab.names)
     return lab.mend(plan, progress)
+
+
+def treat(waste: str, aim: str | None = None) -> TreatReport:
+    """How does this waste become safe? Routes from the treatments of the graph, each vetted. ``aim``: a further goal for the last
+    liquid, ``dissolved mercury below 0.2 mg/L``.
+
+    Raises InputError where the waste or the aim cannot be read.
+    """
+    return find_routes(laboratory(), waste, aim)

@@ -20,6 +20,9 @@ _MANY = 12  # lanes of ranges above which the path is followed more coarsely
 _WATER_TO_DISSOLVE = (
     3.0  # mol of water that takes up one mol of salt or base with its heat; common practice, the order of a hydrate
 )
+BOILING = 100.0  # degC: water that boils grows no hotter
+_HEAT_ROUNDS = 3
+_WORTH_A_ROUND = 5.0  # K: less warming sets no rule going that was not
 _SOLUBLE = 10.0  # g/L: a less soluble salt is left to the equilibria
 _CONTACT_SHARES = np.array(
     [0.03, 0.1, 0.25, 0.5, 0.75, 0.9, 0.97]
@@ -111,22 +114,35 @@ def _reacted(
             unknown += missing
             if source.neat and not missing:
                 parts.append((f"dissolving {' and '.join(_names(source))}", float(held[end])))
-    steps, missing = _reaction_heat(book, firings)
-    after = book.of_speciation(mixture)
+    capacity = np.maximum(book.heat_capacity(together), 1e-6)
+    reached = together.temperature_C
+    for _ in range(_HEAT_ROUNDS):
+        steps, missing = _reaction_heat(book, firings)
+        after = book.of_speciation(mixture)
+        heat = sum((kJ for _, kJ in steps), before - after)
+        if together.neat:  # solids side by side: nothing dissolves
+            heat = together.zeros()
+        warmer = together.temperature_C + heat / capacity
+        if float(np.max(warmer - reached)) < _WORTH_A_ROUND:
+            reached = warmer
+            break
+        reached = warmer
+        hot = mixture.with_amounts(mixture.amounts)  # what the heat itself sets going
+        hot.temperature_C = np.minimum(reached, np.maximum(BOILING, together.temperature_C))
+        mixture, more = reactor.run(hot, surroundings, slowest="minutes", already=firings)
+        firings = [*firings, *more]
+        if not more:
+            break
     dissolving = sum(share for _, share in parts)
     parts.append(("dilution, acid and base, complexes, solids and gases", float(before[end] - after[end]) - dissolving))
     parts += [(title, float(kJ[end])) for title, kJ in steps if abs(kJ[end]) > 0]
-    heat = sum((kJ for _, kJ in steps), before - after)
-    if together.neat:  # solids side by side: nothing dissolves
-        heat = together.zeros()
-    capacity = np.maximum(book.heat_capacity(together), 1e-6)
     return Course(
         mixture,
         together,
         firings,
         fractions,
         heat,
-        reached_C=together.temperature_C + heat / capacity,
+        reached_C=reached,
         unknown_heat=tuple(dict.fromkeys([*unknown, *missing])),
         capacity_kJ_K=capacity,
         heat_parts=tuple(parts),

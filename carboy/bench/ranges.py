@@ -15,7 +15,9 @@ _GRID = {1: 11, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may l
 _ALONE = (0, 10, 30, 40)  # with many ranges, where each is tried with the others nominal
 SAMPLED_CORNERS = 12
 WIDE = 4.0  # ends further apart than this have the points between them in equal ratios
-DECADES = 1000.0  # and these reach down to so small a part of the upper end; below it only the lower end itself is looked at
+DECADES = (
+    1000.0  # and these reach down to so small a part of the upper end; below it only the lower end itself is looked at
+)
 OPEN_END_FACTOR = 10.0  # "at least x" is followed up to ten times x
 
 

@@ -22,6 +22,7 @@ class VesselState:
     pours: dict[str, frozenset[int]] = field(default_factory=dict)
     earlier: dict[str, frozenset[str]] = field(default_factory=dict)
     labels: list[str] = field(default_factory=list)
+    stood: str = "at once"  # the slowest speed whose reactions have had their time since the last pour
     unknown: bool = False  # holds something that nobody could name, so that its pH is anybody's guess
 
     @property

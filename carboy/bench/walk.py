@@ -42,7 +42,7 @@ from carboy.model.plan import (
 )
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.equation import HYDROXIDE, side_words
-from carboy.reasoning.firing import Firing, Reactor
+from carboy.reasoning.firing import SPEEDS, Firing, Reactor
 from carboy.reasoning.record import Record
 
 _HOUR = 3600.0
@@ -181,9 +181,12 @@ class Walker:
                 self._filter(number, step, walk)
             case Temper():
                 state = self._vessel(step.vessel, walk)
-                state.content = state.content.take(np.arange(state.content.lanes))
-                state.content.temperature_C = np.full(state.content.lanes, 0.5 * (step.to.low + step.to.high))
-                self._stand(number, f"{step.kind} to {step.to.high:g} degC", state, "minutes", None, walk)
+                before = state.content
+                state.content = before.take(np.arange(before.lanes))
+                state.content.temperature_C = np.full(before.lanes, 0.5 * (step.to.low + step.to.high))
+                self._stand(
+                    number, f"{step.kind} to {step.to.high:g} degC", state, "minutes", None, walk, earlier=before
+                )
             case Wait():
                 self._wait(number, step, walk)
             case Cover():
@@ -273,6 +276,7 @@ class Walker:
         added = pouring.content
         before = state.content if state.filled else None
         self._join(state, added, walk, number, pouring.portion, pouring.made)
+        state.stood = "at once"
         surroundings = self._surroundings(state, number)
         sealed = state.cover == "sealed"
         path: Course | None = None
@@ -300,7 +304,7 @@ class Walker:
             self._record(path.firings, state, number, walk)
         over_capacity = after.volume_L > state.capacity_L * (1 + 1e-6)
         over = pouring.over
-        duration = None if over is None else np.full(after.lanes, 0.5 * (over.low + over.high))
+        duration = None if over is None else np.full(after.lanes, over.low)  # the quickest that is allowed
         trace = self._trace(
             number,
             pouring.action,
@@ -418,10 +422,22 @@ class Walker:
         return (ATMOSPHERE_KPA - water_vapour_kPa(content.temperature_C)) * room / (GAS_CONSTANT_KPA * kelvin)
 
     def _stand(
-        self, number: int, action: str, state: VesselState, slowest: str, duration: Array | None, walk: Walk
+        self,
+        number: int,
+        action: str,
+        state: VesselState,
+        slowest: str,
+        duration: Array | None,
+        walk: Walk,
+        earlier: Mixture | None = None,
     ) -> None:
+        """Leave a vessel to itself; ``earlier``: what it is to be compared with, where it was heated or cooled first."""
         surroundings = self._surroundings(state, None)
         before = state.content
+        if SPEEDS.index(state.stood) >= SPEEDS.index(slowest):
+            slowest = "at once"  # what takes that long has run its course already
+        else:
+            state.stood = slowest
         course = stored(before, self.reactor, surroundings, slowest) if state.filled else None
         if course is not None:
             self._record(course.firings, state, number, walk)
@@ -433,7 +449,7 @@ class Walker:
             after,
             surroundings,
             walk,
-            before=before if state.filled else None,
+            before=(earlier or before) if state.filled else None,
             storage=course,
             duration_s=duration,
             left_alone=(before,) if state.filled else (),

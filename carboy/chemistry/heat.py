@@ -46,7 +46,8 @@ class HeatBook:
                     covered = sum((n for table, n in held if self._own_pair(token, table)), mixture.zeros())
                     total = total + enthalpy * np.maximum(amount - covered, 0.0)
         ions = sum((n for _, n in held), mixture.zeros())
-        water = mixture.total(WATER)
+        within = sum((n * self.stock.yield_of(table.electrolyte).get(WATER, 0.0) for table, n in held), mixture.zeros())
+        water = np.maximum(mixture.total(WATER) - within, 0.0)  # the water inside OH- does not dilute
         ratio = np.divide(water, ions, out=np.zeros_like(water), where=ions > 0)
         for table, n in held:
             if np.any(n > 0):

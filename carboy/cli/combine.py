@@ -4,11 +4,12 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 from contextlib import contextmanager
+from pathlib import Path
 from typing import Annotated
 
 import typer
 
-from carboy.cli.output import first_reading, status_of, write
+from carboy.cli.output import Progress, first_reading, status_of, write
 
 HELP = """May these bottles go together? They are poured one after the other, in the order given.
 
@@ -19,6 +20,7 @@ carboy combine "50 g of sodium bicarbonate" "1 L of 1 M HCl" --volume "2 L" --co
 carboy combine "1 L of (0.05 M mercury(II) nitrate + 0.5 M nitric acid)" "20 g of CAS 1313-82-2"
 carboy combine "1 L of unknown, pH 2" "1 L of 0.1 M KCN" --place hood --hood-flow "0.4 m3/s"
 carboy combine "1 L of 0.1 M sodium sulfide" "1 L of 0.5 M HCl" --why 1
+carboy combine "1 L of 0.1 M sodium sulfide" "1 L of 0.5 M HCl" --mend
 
 A portion is what stands on a label: amount, strength, name, formula, CAS number or SMILES.
 Ranges are followed to their ends: "10-50 g/L", "about 2 L", "up to 5 g", "trace of", "unknown"."""
@@ -48,6 +50,11 @@ def combine(
     why: Annotated[
         int | None, typer.Option(metavar="N", help="How the numbers of finding (N) were had; nothing else.")
     ] = None,
+    mend: Annotated[bool, typer.Option("--mend", help="Look for changes that clear it, each vetted.")] = False,
+    apply: Annotated[
+        int | None, typer.Option(metavar="N", help="Write the case file of change N; with --mend.")
+    ] = None,
+    output: Annotated[Path | None, typer.Option(metavar="FILE", help="The case file that --apply writes.")] = None,
 ) -> None:
     from carboy.cli.printing import printed
     from carboy.errors import InputError
@@ -56,6 +63,12 @@ def combine(
 
     if len(portions) < 2:
         raise InputError(f"combine needs two portions or more, and this is one: '{portions[0]}'")
+    if mend and why is not None:
+        raise InputError("--why shows one finding and nothing else; --mend goes without it")
+    if not mend and (apply is not None or output is not None):
+        raise InputError("--apply and --output belong to --mend")
+    if (apply is None) != (output is None):
+        raise InputError("--apply (which change) and --output (which file) belong together")
     surroundings = {
         "place": place,
         "hood_flow": hood_flow,
@@ -71,7 +84,19 @@ def combine(
     with of_options():
         vessel = vessel_from_mapping("vessel", {key: value for key, value in described.items() if value}, lab.names)
     report = lab.combine(tuple(portions), setting, vessel)
-    write(printed([report], lab, json=json, plain=plain, full=full, why=why))
+    text = printed([report], lab, json=json, plain=plain, full=full, why=why)
+    if mend:
+        from carboy.cli.mending import chosen, with_mendings, write_mended
+
+        with Progress("change") as progress:
+            mendings = lab.mend_together(tuple(portions), setting, vessel, progress)
+        text = with_mendings(text, report, mendings, json=json, plain=plain)
+        if apply is not None:
+            mended = chosen(mendings, apply)
+            write(text)
+            typer.echo(write_mended(mended, None, output), err=True)
+            raise typer.Exit(status_of([mended.report]))
+    write(text)
     raise typer.Exit(status_of([report]))
 
 

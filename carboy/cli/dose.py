@@ -26,7 +26,8 @@ def dose(
         str, typer.Option("--with", metavar="REAGENT", help="As on its label, without an amount.", show_default=False)
     ],
     aim: Annotated[
-        str, typer.Option(metavar="AIM", help='"dissolved lead below 0.69 mg/L", "pH between 7 and 9".', show_default=False)
+        str,
+        typer.Option(metavar="AIM", help='"dissolved lead below 0.69 mg/L", "pH between 7 and 9".', show_default=False),
     ],
     over: Annotated[str, typer.Option(metavar="TIME", help='Time that the addition takes, "20 min".')] = "",
     volume: Annotated[str, typer.Option(metavar="TEXT", help='Volume of the vessel, "10 L".')] = "",

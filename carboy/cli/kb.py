@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Annotated
 
 import typer
 
-from carboy.cli.output import Progress, Status, Waiting, counted_words, write
+from carboy.cli.output import Progress, Status, Waiting, counted_words, first_reading, write
 
 if TYPE_CHECKING:
     from carboy.model.knowledge import Index
@@ -25,6 +25,17 @@ carboy kb check --quick                                without running the examp
 carboy kb check --kb my/kb --rules my/rules
 
 Problems stand as file:line: what is wrong. Exit status: 0 sound, 1 errors."""
+
+
+COVERAGE_HELP = """What do the graph and the rules leave uncovered? Classes that no rule or container asks for, substances without a class,
+gases without a Henry constant, substances without a CAS number; with --run also the rules that no shipped case fires.
+
+\b
+carboy kb coverage
+carboy kb coverage --run            carries out the shipped cases (a minute or so)
+carboy kb coverage --run --examples and every fires line of the rules (minutes)
+
+A gap is not always a fault. Exit status: 0."""
 
 
 @app.callback()
@@ -70,6 +81,99 @@ def check(
         write("rules: they cannot be read")
         raise typer.Exit(Status.OBJECTION) from None
     raise typer.Exit(_check_rules(book, index, rule or [], quick=quick))
+
+
+@app.command("coverage", help=COVERAGE_HELP)
+def coverage_command(
+    run: Annotated[
+        bool, typer.Option("--run", help="Carry out the shipped cases and list rules that none fires.")
+    ] = False,
+    examples: Annotated[bool, typer.Option("--examples", help="With --run: the fires lines of the rules too.")] = False,
+    json: Annotated[bool, typer.Option("--json", help="Print one JSON object.")] = False,
+) -> None:
+    from dataclasses import asdict
+
+    from carboy.cli.cases import case_files
+    from carboy.datafiles import data_dir
+    from carboy.rulebook.coverage import coverage, rules_fired
+    from carboy.text.cases import read_case
+    from carboy.vetting import laboratory
+
+    lab = laboratory()
+    fired = None
+    if run:
+        plans = [read_case(file, lab.names) for file in case_files([data_dir("cases")])]
+        with Progress("case or example") as progress:
+            fired = rules_fired(lab, plans, examples=examples, progress=progress)
+    gaps = asdict(coverage(lab.index, lab.rules, fired))
+    if json:
+        from msgspec.json import encode, format
+
+        write(format(encode(gaps), indent=2).decode())
+        return
+    for key, found in gaps.items():
+        title = key.replace("_", " ").replace("cas", "CAS").replace("henry", "Henry")
+        if found is None:
+            write(f"{title}: not asked; --run carries out the cases")
+            continue
+        write(f"{title}: {len(found)}")
+        for one in found:
+            write(f"  {one}")
+
+
+COVERAGE_HELP = """What do the graph and the rules leave uncovered? Classes that no rule asks for, substances that no rule can bind,
+gases without a Henry constant, substances without a CAS number, rules that no shipped case fires.
+
+\b
+carboy kb coverage
+carboy kb coverage --examples      also runs the fires lines of the rules (minutes)
+carboy kb coverage --quick         runs nothing
+carboy kb coverage --json
+
+A gap is not always a fault. Exit status: 0; 2 if something cannot be read."""
+
+
+@app.command("coverage", help=COVERAGE_HELP)
+def coverage_(
+    quick: Annotated[bool, typer.Option("--quick", help="Run neither cases nor examples.")] = False,
+    examples: Annotated[bool, typer.Option("--examples", help="Run the fires lines of the rules too.")] = False,
+    json: Annotated[bool, typer.Option("--json", help="Print one object.")] = False,
+    plain: Annotated[bool, typer.Option("--plain", help="ASCII without colour, for logs.")] = False,
+) -> None:
+    from carboy.cli.cases import case_files
+    from carboy.datafiles import data_dir
+    from carboy.errors import InputError
+    from carboy.reports.style import style_for
+    from carboy.rulebook.coverage import coverage, rules_fired
+    from carboy.text.cases import read_case
+    from carboy.vetting import laboratory
+
+    if quick and examples:
+        raise InputError("--quick runs nothing and --examples runs them all; choose one")
+    with first_reading():
+        lab = laboratory()
+    fired = None
+    if not quick:
+        plans = [read_case(file, lab.names) for file in case_files([data_dir("cases")])]
+        with Progress("run") as progress:
+            fired = rules_fired(lab, plans, examples=examples, progress=progress)
+    found = coverage(lab.index, lab.rules, fired)
+    if json:
+        from msgspec.json import encode, format
+
+        write(format(encode(found), indent=2).decode())
+        return
+    from carboy.reports.gaps import Gap, gaps_text
+
+    gaps = [
+        Gap("Classes that no rule asks for", found.classes_without_rule),
+        Gap("Substances without a class", found.substances_without_class, "A salt acts through its ions."),
+        Gap("Gases without a Henry constant", found.gases_without_henry_constant, "A vapour need not dissolve."),
+        Gap("Substances without a CAS number", found.substances_without_cas),
+    ]
+    if found.rules_not_fired is not None:
+        gaps.append(Gap(f"Rules that no {'case or example' if examples else 'case'} fires", found.rules_not_fired))
+    write(gaps_text(gaps, style_for(plain=plain)))
 
 
 def _check_rules(book: tuple[Rule, ...], index: Index, only: list[str], *, quick: bool) -> Status:

@@ -9,7 +9,7 @@ from typing import Annotated
 import typer
 
 import carboy
-from carboy.cli import ask, cases, combine, dose, kb, look, rule, vet
+from carboy.cli import ask, cases, combine, dose, kb, look, rule, treat, vet
 from carboy.cli.output import Status
 from carboy.errors import CarboyError
 
@@ -53,6 +53,7 @@ def _common(
 app.command("combine", help=combine.HELP, short_help="May these bottles go together?")(combine.combine)
 app.command("vet", help=vet.HELP, short_help="Is this procedure safe, and does it reach its aim?")(vet.vet)
 app.command("dose", help=dose.HELP, short_help="How much reagent, and how much is too much?")(dose.dose)
+app.command("treat", help=treat.HELP, short_help="How does this waste become safe?")(treat.treat)
 app.command("look", help=look.HELP, short_help="What the graph knows of a thing.")(look.look)
 app.command("ask", help=ask.HELP, short_help="Ask the graph and the rules.")(ask.ask)
 app.command("rule", help=rule.HELP, short_help="A rule in its own words.")(rule.rule)

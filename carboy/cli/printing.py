@@ -11,7 +11,7 @@ from carboy.reports.why import explained, why_text
 from carboy.vetting import Laboratory
 
 _MOST_NEAR = 2
-_NEAR = 80  # per cent of letters alike: a slip of the pen, not another substance of the same sort
+_LETTERS_A_SLIP = 6  # one wrong letter in so many is a slip of the pen; more is another substance
 UNKNOWN = "unknown"  # what a label may honestly say
 
 
@@ -46,10 +46,10 @@ def printed(
 
 def _near(words: Sequence[str], lab: Laboratory) -> dict[str, tuple[str, ...]]:
     """For each name that was not recognised those that are spelled nearly like it."""
-    from rapidfuzz import fuzz
+    from rapidfuzz.distance import DamerauLevenshtein
+
+    def slips(word: str, name: str) -> bool:
+        return DamerauLevenshtein.distance(word.casefold(), name.casefold()) <= max(1, len(word) // _LETTERS_A_SLIP)
 
     named = {word: lab.names.suggest(word) for word in words if word != UNKNOWN}
-    return {
-        word: tuple(name for name in found if fuzz.ratio(word.casefold(), name.casefold()) >= _NEAR)[:_MOST_NEAR]
-        for word, found in named.items()
-    }
+    return {word: tuple(name for name in found if slips(word, name))[:_MOST_NEAR] for word, found in named.items()}

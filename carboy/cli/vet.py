@@ -16,9 +16,15 @@ carboy vet procedure.yaml
 carboy vet monday/*.yaml --plain > monday.log
 carboy vet procedure.yaml --json
 carboy vet procedure.yaml --why 2
+carboy vet procedure.yaml --mend
+carboy vet procedure.yaml --mend --apply 1 --output mended.yaml
 
 A case file has bottles, vessels, steps and goals; cases/ holds examples. Several files: the exit status is that of
-the gravest verdict, and --json prints a list of objects."""
+the gravest verdict, and --json prints a list of objects.
+
+--mend looks for the nearest changes that clear it (reorder, neutralise, dilute, cool, slow down, filter, vent, keep
+apart); each has been vetted before it is shown. --apply writes one; over the old file only with the old text kept
+beside it as FILE.bak."""
 
 
 def vet(
@@ -29,6 +35,14 @@ def vet(
     why: Annotated[
         int | None, typer.Option(metavar="N", help="How the numbers of finding (N) were had; nothing else.")
     ] = None,
+    mend: Annotated[bool, typer.Option("--mend", help="Look for changes that clear it, each vetted.")] = False,
+    apply: Annotated[
+        int | None, typer.Option(metavar="N", help="Write the case file of change N; with --mend.")
+    ] = None,
+    output: Annotated[
+        Path | None,
+        typer.Option(metavar="FILE", help="Where --apply writes; the old file, with a backup, if not given."),
+    ] = None,
 ) -> None:
     from carboy.cli.printing import printed
     from carboy.errors import InputError
@@ -37,13 +51,33 @@ def vet(
 
     if why is not None and len(files) > 1:
         raise InputError("--why speaks of one report, and these are several files")
+    if mend and len(files) > 1:
+        raise InputError("--mend works on one file at a time")
+    if mend and why is not None:
+        raise InputError("--why shows one finding and nothing else; --mend goes without it")
+    if not mend and (apply is not None or output is not None):
+        raise InputError("--apply and --output belong to --mend")
+    if output is not None and apply is None:
+        raise InputError("--output needs --apply, the number of the change to write")
     with first_reading():
         lab = laboratory()
     plans = [read_case(file, lab.names) for file in files]  # all are read before the first is judged
     reports = []
     for plan in plans:
         with Progress("step") as progress:
-            reports.append(lab.vet(plan, progress))
+            reports.append(lab.vet(plan, progress, hold_points=True))
     names = [str(file) for file in files]
-    write(printed(reports, lab, names, json=json, plain=plain, full=full, why=why))
+    text = printed(reports, lab, names, json=json, plain=plain, full=full, why=why)
+    if mend:
+        from carboy.cli.mending import chosen, with_mendings, write_mended
+
+        with Progress("change") as progress:
+            mendings = lab.mend(plans[0], progress)
+        text = with_mendings(text, reports[0], mendings, json=json, plain=plain)
+        if apply is not None:
+            mended = chosen(mendings, apply)
+            write(text)
+            typer.echo(write_mended(mended, files[0], output), err=True)
+            raise typer.Exit(status_of([mended.report]))
+    write(text)
     raise typer.Exit(status_of(reports))

@@ -136,13 +136,16 @@ def yardsticks(gas: Gas, classes: frozenset[str], scale: Scale) -> list[Yardstic
             )
         )
     if "oxidising-gas" in classes and "toxic-gas" not in classes:
-        ppm = (scale["oxygen-enriched-fraction"] - OXYGEN_IN_AIR) * 1e6
+        enriched = scale["oxygen-enriched-fraction"]
+        ppm = (
+            (enriched - OXYGEN_IN_AIR) / (1.0 - OXYGEN_IN_AIR) * 1e6
+        )  # pure oxygen let into air until it holds that much
         found.append(
             Yardstick(
                 "oxygen",
                 ppm,
                 "enriched air",
-                f"{100 * scale['oxygen-enriched-fraction']:g} vol % oxygen",
+                f"{100 * enriched:g} vol % oxygen",
                 True,
                 np.inf,
                 "",
@@ -229,6 +232,7 @@ class Judged:
     air_L: Array
     pressure: Array
     stood: bool
+    stood_mol: Array  # that could leave the vessel before anything was poured
 
 
 def _judge(
@@ -253,7 +257,12 @@ def _judge(
     if not table.any():
         return None
     stood = not bool((worse & (levels > 0)).any())
-    return Judged(table, np.maximum(now.molecules - before_molecules, 0.0), leaving, air, now.pressure, stood)
+    before = trace.before
+    own = np.zeros(course.mixture.lanes)
+    if before is not None and before.amounts and not before.neat:
+        own = np.repeat(load(before, token, now.swept_L).leaving(limit_atm), course.points)
+    formed = np.maximum(now.molecules - before_molecules, 0.0)
+    return Judged(table, formed, leaving, air, now.pressure, stood, own)
 
 
 def _levels(stick: Yardstick, now: Load, leaving: Array, scale: Scale, sealed: bool) -> tuple[Levels, Array]:
@@ -305,7 +314,12 @@ def _draft(
     if where == "path" and not judged.stood:
         short = stick.over_liquid if np.isfinite(stick.over_liquid) else stick.ppm
         words = "short-term limit" if np.isfinite(stick.over_liquid) else stick.words
-        measures += pace_measures(trace, course, judged.leaving, short, words, scale)
+        if stick.kind == "flammable-gas":
+            share = scale["closed-vessel-flammable-fraction"]
+            short, words = share * stick.ppm, f"{share:g} of the lower flammable limit"
+        also = ((stick.ppm, stick.words),) if np.isfinite(stick.over_liquid) and np.isfinite(stick.ppm) else ()
+        stood = judged.stood_mol if np.any(judged.stood_mol > 0) else None
+        measures += pace_measures(trace, course, judged.leaving, short, words, scale, also=also, stood=stood)
     if record.odour_warning:
         measures.append(
             Measure(

@@ -142,7 +142,7 @@ def pace_measures(
         if np.isfinite(ppm) and ppm > 0:
             measures.append(
                 Measure(
-                    quantity=f"shortest time of addition that keeps that air below its {words}",
+                    quantity=f"shortest time of addition that keeps the air of {place} below its {words}",
                     value=shortest_time(release, course.fractions, ppm * 1e-6, air) / 60,
                     unit="min",
                     basis=basis,

@@ -224,10 +224,11 @@ def _class(item: ChemicalClass, index: Index) -> Entry:
     facts += _listed("but not", item.not_smarts)
     facts += _listed("is a kind of", item.broader)
     facts += _listed("kinds of it", sorted(key for key, one in index.classes.items() if item.key in one.broader))
+    everything: list[Substance | Species] = [*index.substances.values(), *index.species.values()]
     members = sorted(
         {
             one.name or one.token if isinstance(one, Species) else one.name
-            for one in (*index.substances.values(), *index.species.values())
+            for one in everything
             if not (isinstance(one, Species) and one.token in index.substances)
             and any(item.key in index.ancestors.get(key, ()) for key in one.classes)
         }

@@ -1,10 +1,10 @@
 """The table of names of the index, built when it is compiled.
 
 Keys: a folded name of a substance or material as it is; others with a mark in front: ``formula:`` (as written, plain),
-``lower:`` (the same in lower case), ``hill:`` (by atoms), ``cas:``, ``smiles:`` (as written, as RDKit writes it, and that without
-stereochemistry), ``container:``, ``class:``, ``gas:`` (folded names), ``ion:`` (folded name of an ion, without the word),
-``spelling:`` (another way to write the formula of an ion, without its charge). A name that fits two things is a fault; a formula or SMILES that fits two (isomers, mixtures) is left
-out, so that it is asked back.
+``lower:`` (the same in lower case), ``hill:`` (by atoms), ``cas:``, ``smiles:`` (as written, as RDKit writes it, and that
+without stereochemistry), ``container:``, ``class:``, ``gas:`` (folded names), ``ion:`` (folded name of an ion, without the
+word), ``spelling:`` (another way to write the formula of an ion, without its charge). A name that fits two things is a
+fault; a formula or SMILES that fits two (isomers, mixtures) is left out, so that it is asked back.
 """
 
 from __future__ import annotations

@@ -15,7 +15,6 @@ from functools import cached_property
 from itertools import product
 from math import gcd
 
-from carboy.errors import InputError
 from carboy.knowledge.equilibria import components_of
 from carboy.knowledge.folding import fold
 from carboy.model.knowledge import Index
@@ -100,7 +99,9 @@ class SaltReader:
 
     def name(self, salt: Salt) -> str:
         """Its systematic name, or its formula if an ion of it has no name."""
-        names = [self.index.species[token].name.partition(",")[0].removesuffix(" ion").strip() for token, _ in salt.ions]
+        names = [
+            self.index.species[token].name.partition(",")[0].removesuffix(" ion").strip() for token, _ in salt.ions
+        ]
         return " ".join(names) if all(names) else self.formula(salt)
 
     def formula(self, salt: Salt) -> str:

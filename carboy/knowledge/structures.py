@@ -20,7 +20,9 @@ if TYPE_CHECKING:
     from rdkit.Chem import Mol
 
 MOST_ATOMS = 1000  # heavier structures are no label of a bottle, and matching them would take long
-_REASON = re.compile(r"Explicit valence for atom # (?P<place>\d+) (?P<symbol>\w+), (?P<valence>\d+), is greater than permitted")
+_REASON = re.compile(
+    r"Explicit valence for atom # (?P<place>\d+) (?P<symbol>\w+), (?P<valence>\d+), is greater than permitted"
+)
 
 
 @dataclass(frozen=True, slots=True)

@@ -52,6 +52,7 @@ def treatments(facts: Facts) -> dict[str, Treatment]:
             dangers=tuple(sorted(node.texts(":sideHazard"))),
             sources=_locals(node, ":source"),
             note=node.text(":note"),
+            not_calculated=node.text(":notCalculated"),
         )
     return found
 

@@ -18,7 +18,7 @@ from carboy.knowledge.naming import composition_key
 from carboy.knowledge.salts import Salt, SaltReader
 from carboy.knowledge.structures import ClassPatterns, Part, Structure, read_structure
 from carboy.model.knowledge import Index, Species, Substance
-from carboy.model.plan import Add, Case, Ingredient, Portion, Rinse
+from carboy.model.plan import Add, Case, Ingredient, Portion, Rinse, Step
 from carboy.text.formulas import molar_mass, parse_sum
 
 Phase = Literal["s", "l", "g"]
@@ -61,12 +61,10 @@ def _with_portions(case: Case, change: Callable[[Portion], Portion]) -> Case:
     """The case with every portion in it changed; the same case if none is."""
     bottles = {name: change(portion) for name, portion in case.bottles.items()}
     vessels = tuple(
-        spec.model_copy(update={"holds": holds})
-        if (holds := tuple(map(change, spec.holds))) != spec.holds
-        else spec
+        spec.model_copy(update={"holds": holds}) if (holds := tuple(map(change, spec.holds))) != spec.holds else spec
         for spec in case.vessels
     )
-    steps = []
+    steps: list[Step] = []
     for step in case.steps:
         if isinstance(step, Add | Rinse) and step.portion is not None:
             portion = change(step.portion)
@@ -183,7 +181,8 @@ class _Maker:
             return identity
         if structure.charge:
             raise InputError(
-                f"this structure has a charge of {structure.charge:+d}; write its counter-ion too, behind a dot", span=item.span
+                f"this structure has a charge of {structure.charge:+d}; write its counter-ion too, behind a dot",
+                span=item.span,
             )
         if not _molecular(structure):
             raise InputError(
@@ -206,7 +205,8 @@ class _Maker:
         ions = self._ions(structure)
         if ions is None and len({part.canonical for part in structure.parts if part.formula != _WATER}) > 1:
             raise InputError(
-                "these are molecules side by side; give each as an ingredient of its own, as in '1 L of (a + b)'", span=item.span
+                "these are molecules side by side; give each as an ingredient of its own, as in '1 L of (a + b)'",
+                span=item.span,
             )
         phase: Phase = "s" if ions is not None or form in _SOLID_FORMS else "g" if form == "gas" else "l"
         name = item.words
@@ -268,7 +268,12 @@ class _Maker:
         return ions
 
     def _is_hydrogen_halide(self, part: Part) -> bool:
-        return not part.charge and len(part.atoms) == 2 and part.atoms.get("H") == 1 and bool({"F", "Cl", "Br", "I"} & part.atoms.keys())
+        return (
+            not part.charge
+            and len(part.atoms) == 2
+            and part.atoms.get("H") == 1
+            and bool({"F", "Cl", "Br", "I"} & part.atoms.keys())
+        )
 
     def _known(self, part: Part, ions: _Ions) -> bool:
         """Add what is known of a part: an inorganic ion by its composition, any other as a listed molecule and its protons."""

@@ -257,6 +257,7 @@ class Treatment(Struct, frozen=True):
     dangers: tuple[str, ...] = ()
     sources: tuple[str, ...] = ()
     note: str = ""
+    not_calculated: str = ""  # what it rests on and the equilibria do not hold, so that no route by it can be confirmed
 
 
 class Untreatable(Struct, frozen=True):

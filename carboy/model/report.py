@@ -111,6 +111,17 @@ class GoalReport(ReportPart):
     unit: str
 
 
+class HoldPoint(ReportPart):
+    """What must be true before a step: ``must`` in words, the ``test`` that shows it at the bench, and the ``basis``, the margin found."""
+
+    step: int
+    vessel: str = ""
+    must: str
+    test: str
+    basis: str
+    sources: list[str] = []
+
+
 class Report(ReportPart):
     """What `combine` and `vet` return."""
 
@@ -120,6 +131,7 @@ class Report(ReportPart):
     findings: list[Finding] = []
     steps: list[StepReport] = []
     goals: list[GoalReport] = []
+    hold_points: list[HoldPoint] = []
     unrecognised: list[str] = []
     assumptions: list[str] = []
     questions: list[str] = []

@@ -28,7 +28,11 @@ _REFINED = 48  # doses of each further look
 _ROUNDS = 5
 _CLOSE_ENOUGH = 2e-3  # relative width between a dose that fails and one that does
 _FOR_DANGER = 70  # doses of the look that is judged
-OF_THE_VESSEL = ("foam", "pressure", "incomplete")  # kinds that hang on the vessel or on the aim, judged for the chosen dose alone
+OF_THE_VESSEL = (
+    "foam",
+    "pressure",
+    "incomplete",
+)  # kinds that hang on the vessel or on the aim, judged for the chosen dose alone
 
 
 @dataclass(frozen=True)

@@ -117,7 +117,7 @@ class _Dosing:
         least, most = self.search.scale(self.scale["dose-most-volume"], self._room())
         found = self.search.search(least, most)
         needless = self.search.without()
-        whole = None if needless else longest_run(found.doses, found.met.all(axis=0))
+        whole = None if needless else longest_run(found.doses, np.asarray(found.met.all(axis=0)))
         nominal = None if needless else longest_run(found.doses, found.met[0])
         chosen_run = whole or nominal
         upto = self._upto(found, chosen_run)
@@ -129,7 +129,7 @@ class _Dosing:
             verdict: Verdict = "cannot say"
         elif needless:
             verdict = "no objection"
-        elif vetted is None or windows[0] is None and windows[1] is None:
+        elif vetted is None or (windows[0] is None and windows[1] is None):
             verdict = "refuse"
         elif vetted.verdict == "no objection" and (windows[0] is None or self._narrow(windows[0])):
             verdict = "conditional"
@@ -145,18 +145,20 @@ class _Dosing:
             reagent=self.agent.text,
             aim=self.goal.text,
             unit=self.unit,
-            summary=self._summary(needless, whole, nominal, windows, danger, amount, most),
+            summary=self._summary(needless, whole, nominal, windows, danger, amount, most, vetted),
             dose=None if amount is None else self._dose(amount),
             window=windows[0],
             nominal_window=windows[1],
             tolerance=self._tolerance(found, whole, windows[0] or windows[1], amount, needless),
-            curve=self._curve(found, upto, danger),
+            curve=self._curve(found, upto, danger, amount),
             spot_tests=tests,
             findings=[] if vetted is None else [one for one in vetted.findings if one.step == 2],
             steps=[] if vetted is None else vetted.steps,
             unrecognised=self.walk.unrecognised,
             assumptions=list(
-                dict.fromkeys([*self.notes, *forbidden, *(self.walk.assumptions if vetted is None else vetted.assumptions)])
+                dict.fromkeys(
+                    [*self.notes, *forbidden, *(self.walk.assumptions if vetted is None else vetted.assumptions)]
+                )
             ),
             questions=list(dict.fromkeys(self.walk.questions if vetted is None else vetted.questions)),
             cautions=[] if vetted is None else vetted.cautions,
@@ -192,7 +194,10 @@ class _Dosing:
             if danger.before < run.first:
                 return None
             return DoseWindow(
-                least=run.first, most=danger.before, upper_end="danger", upper_words=_DANGER_WORDS + danger.draft.summary.rstrip(".")
+                least=run.first,
+                most=danger.before,
+                upper_end="danger",
+                upper_words=_DANGER_WORDS + danger.draft.summary.rstrip("."),
             )
         if run.ends:
             return DoseWindow(least=run.first, most=run.last, upper_end="aim", upper_words=self._beyond(run.last))
@@ -213,7 +218,9 @@ class _Dosing:
             return f"beyond it the pH leaves the window ({value:.1f} a little further on)"
         forms = self._main_form(course.mixture, 1)
         held = f", as {forms}" if forms else ""
-        return f"beyond it more of it is dissolved than the aim allows ({figures(value)} {unit} a little further on{held})"
+        return (
+            f"beyond it more of it is dissolved than the aim allows ({figures(value)} {unit} a little further on{held})"
+        )
 
     def _main_form(self, mixture: Mixture, lane: int) -> str:
         """The dissolved species that holds most of what the aim speaks of."""
@@ -276,6 +283,7 @@ class _Dosing:
         danger: Danger | None,
         amount: float | None,
         most: float,
+        vetted: Report | None,
     ) -> str:
         if needless:
             return "The aim is met without any of the reagent."
@@ -287,16 +295,28 @@ class _Dosing:
         assert amount is not None
         if window is None:
             assert danger is not None
-            return (
-                f"The aim needs {self._words(run.first)}, but a danger begins at {self._words(danger.begins)}: {danger.draft.summary}"
-            )
-        upper = f"to {self._words(window.most)}" if window.most is not None else "on"
-        text = f"Add {self._words(amount)}. The window is from {self._words(window.least)} {upper}; {window.upper_words}."
-        if self._narrow(window):
+            return f"The aim needs {self._words(run.first)}, but a danger begins at {self._words(danger.begins)}: {danger.draft.summary}"
+        narrow = self._narrow(window)
+        upper = (
+            "on"
+            if window.most is None
+            else f"to {self._words(window.most if narrow else _rounded_down(window.most, 3))}"
+        )
+        least = self._words(window.least if narrow else _rounded_up(window.least, 3))
+        text = f"{self._said(amount, vetted)} The window is from {least} {upper}; {window.upper_words}."
+        if narrow:
             text += " That is narrower than can be measured out: take a weaker or a buffering reagent, or go in drops with a meter."
         if whole is None:
             text += " This holds for the figures as stated, not over the whole of the stated ranges: no one dose does."
         return text
+
+    def _said(self, amount: float, vetted: Report | None) -> str:
+        """What to do with the chosen dose; where it is refused as written, by which dangers."""
+        dangers = [] if vetted is None else [one for one in vetted.findings if one.signal == "danger"]
+        if not dangers:
+            return f"Add {self._words(amount)}."
+        why = " ".join(dict.fromkeys(one.summary for one in dangers[:2]))
+        return f"The aim asks for {self._words(amount)}, but added as written it is refused: {why}"
 
     def _tolerance(
         self, found: Look, whole: Run | None, window: DoseWindow | None, amount: float | None, needless: bool
@@ -331,7 +351,9 @@ class _Dosing:
             words = "In part of the stated ranges no dose meets the aim."
         if factor is not None:
             low = "any smaller amount" if factor[0] is None else f"{figures(factor[0])} times"
-            words += f" The chosen dose serves from {low} up to {figures(factor[1])} times the stated amount of the waste."
+            words += (
+                f" The chosen dose serves from {low} up to {figures(factor[1])} times the stated amount of the waste."
+            )
         return Tolerance(
             ranges=ranges,
             throughout=needless or whole is not None,
@@ -341,10 +363,13 @@ class _Dosing:
             words=words,
         )
 
-    def _curve(self, found: Look, upto: float, danger: Danger | None) -> DoseCurve:
+    def _curve(self, found: Look, upto: float, danger: Danger | None, amount: float | None) -> DoseCurve:
+        """Doses evenly over the logarithm, more where the aim changes, and the chosen one."""
         doses = found.doses[found.doses <= upto * (1 + 1e-9)]
         if doses.size > _CURVE_POINTS:
             doses = doses[np.unique(np.linspace(0, doses.size - 1, _CURVE_POINTS).astype(int))]
+        if amount is not None:
+            doses = np.unique(np.append(doses, amount))
         look = self.search.look(doses)
         course = self.search.course(doses)
         _, unit = goal_value(self.goal, course.mixture, self.lab.stock)
@@ -415,6 +440,11 @@ class _Dosing:
 def _rounded_up(value: float, digits: int) -> float:
     size = 10.0 ** (np.floor(np.log10(value)) - digits + 1)
     return float(f"{np.ceil(value / size - 1e-9) * size:.12g}")
+
+
+def _rounded_down(value: float, digits: int) -> float:
+    size = 10.0 ** (np.floor(np.log10(value)) - digits + 1)
+    return float(f"{np.floor(value / size + 1e-9) * size:.12g}")
 
 
 def _pair(values: Array) -> Pair:

@@ -138,9 +138,10 @@ def not_sealed(variant: Variant, place: int, kind: Literal["vent", "open"]) -> V
     """A vessel is vented or left open in the step that would seal it."""
     steps = list(variant.case.steps)
     step = steps[place]
-    words = "Put a vented cap on" if kind == "vent" else "Leave open"
-    words += f" {step.vessel} instead of sealing it (step {place + 1})." if isinstance(step, Cover) else ""
-    steps[place] = Cover(kind=kind, vessel=vessel_of(step))
+    vessel = vessel_of(step)
+    words = f"Put a vented cap on {vessel}" if kind == "vent" else f"Leave {vessel} open"
+    words += f" instead of sealing it (step {place + 1})."
+    steps[place] = Cover(kind=kind, vessel=vessel)
     return variant.changed(with_steps(variant.case, steps), words, 1.0)
 
 
@@ -189,7 +190,9 @@ def filter_first(variant: Variant, place: int) -> Variant:
     sieve = Filter(kind="filter", vessel=vessel, cake=cake, filtrate=clear)
     goals = tuple(_moved_goal(goal, vessel, clear) for goal in case.goals)
     steps = [*case.steps[:place], sieve, *later]
-    words = f"Filter {vessel} before {spoken(case.steps[place])} (step {place + 1}), and go on with the clear liquid only."
+    words = (
+        f"Filter {vessel} before {spoken(case.steps[place])} (step {place + 1}), and go on with the clear liquid only."
+    )
     return variant.changed(with_steps(case, steps).model_copy(update={"goals": goals}), words, 3.0)
 
 

@@ -19,13 +19,15 @@ from carboy.model.plan import Case
 from carboy.model.report import Report
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.firing import Reactor
-from carboy.text.cases import case_from_mapping
 from carboy.text.portions import NameLookup, parse_portion
 
 WASTE, TANK = "waste", "tank"
 _SIZES = (0.1, 0.25, 0.5, 1, 2, 3, 5, 10, 15, 20, 30, 50, 75, 100, 150, 200, 300)  # L
 _GRID = 48  # amounts tried at once when a pH is sought
+_WATER_DENSITY = 0.997  # g/mL at 25 degC, CRC Handbook (from memory)
 _WITHIN = 0.2  # how far into a window of pH one goes
+_LEAST = 1e-6  # mol of a reagent per litre of waste; below it there is nothing to dose
+_LEAST_G, _LEAST_L = 0.02, 5e-5  # of a reagent per litre of waste; less can be neither weighed nor measured
 _ORDINALS = ("", "second ", "third ", "fourth ", "fifth ", "sixth ", "seventh ")
 
 
@@ -41,7 +43,7 @@ class Vetter(Protocol):
     @property
     def names(self) -> NameLookup: ...
     def walk(self, case: Case) -> Walk: ...
-    def vet(self, case: Case) -> Report: ...
+    def vet(self, case: Case, *, hold_points: bool = False) -> Report: ...
 
 
 class CannotDo(Exception):
@@ -62,6 +64,8 @@ class Procedure:
     vessels: list[str] = field(default_factory=lambda: [TANK])
     cakes: list[tuple[str, str]] = field(default_factory=list)  # vessel, treatment that filled it
     size_L: float = 1000.0
+    content: Mixture | None = None  # of the vessel where the liquid is, after the steps so far
+    fullest_L: float = 0.0
 
     @property
     def vessel(self) -> str:
@@ -93,7 +97,8 @@ class Builder:
         self.lab = lab
         self.waste = waste
         self.setting = setting
-        self._contents: dict[str, Mixture] = {}
+        self._ranges = Ranges()
+        self._waste = self._made_up()
         self._reagents: dict[str, tuple[Mixture, str]] = {}
 
     def build(self, sequence: tuple[str, ...], *, slower: float = 1.0, roomier: float = 1.0) -> Procedure:
@@ -104,31 +109,71 @@ class Builder:
         for treatment in treatments:
             for stage in treatment.stages:
                 self._stage(made, treatment, stage)
-        final = self.content(made)
+        final = float(self.content(made).volume_L[0])
         largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
-        if float(final.volume_L[0]) > largest:
-            raise CannotDo(f"it takes {float(final.volume_L[0]):.3g} L of liquid, more than the {largest:g} L of a bench treatment")
+        if final > largest:
+            raise CannotDo(f"it takes {final:.3g} L of liquid, more than the {largest:g} L of a bench treatment")
         room = self.lab.index.thresholds["treatment-free-space"].value.magnitude * roomier
-        made.size_L = next((size for size in _SIZES if size >= room * self._fullest(made)), _SIZES[-1])
+        made.size_L = next((size for size in _SIZES if size >= room * made.fullest_L), _SIZES[-1])
         return made
 
-    def content(self, made: Procedure) -> Mixture:
-        """What is in the vessel where the liquid is, after the steps so far."""
-        key = repr(made.steps)
-        known = self._contents.get(key)
-        if known is None:
-            walk = self.lab.walk(case_from_mapping(made.mapping([]), self.lab.names))
-            known = self._contents[key] = walk.vessels[made.vessel].content
-        return known
+    def waste_alone(self) -> Mixture:
+        """The waste as it comes, reacted."""
+        made = Procedure(self.waste, self.setting)
+        self._put(made, self._waste)
+        return self.content(made)
 
-    def _fullest(self, made: Procedure) -> float:
-        walk = self.lab.walk(case_from_mapping(made.mapping([]), self.lab.names))
-        return max(float(trace.after.volume_L.max()) for trace in walk.steps)
+    def open_ranges(self) -> list[str]:
+        """The uncertain numbers of the waste, in words."""
+        return [f"{key} {low:.3g} to {high:.3g}" for key, (low, _, high) in self._ranges.variables.items()]
+
+    def content(self, made: Procedure) -> Mixture:
+        """What is in the vessel where the liquid is. The amounts are sought on this short form of the walk, in which each addition is one
+        step to its end; what is offered is judged on the whole one."""
+        assert made.content is not None
+        return made.content
+
+    def _made_up(self) -> Mixture:
+        portion = parse_portion(self.waste, self.lab.names)
+        Bench(self.lab.stock, self._ranges).make_up(portion, WASTE, 25.0)
+        self._ranges.fix()
+        return Bench(self.lab.stock, self._ranges).make_up(portion, WASTE, 25.0).mixture
+
+    def _put(self, made: Procedure, added: Mixture) -> None:
+        together = added if made.content is None else poured_together(made.content, added)
+        self._react(made, together, "minutes")
+        made.fullest_L = max(made.fullest_L, float(self.content(made).volume_L.max()))
+
+    def _react(self, made: Procedure, content: Mixture, slowest: str) -> None:
+        """React the content of an open vessel and let its bubbles go."""
+        after, _ = self.lab.reactor.run(content.take(np.arange(content.lanes)), Surroundings(), slowest=slowest)
+        amounts = dict(after.amounts)
+        for token, left in after.gases.items():
+            for component, count in self.lab.stock.components_of(token).items():
+                amounts[component] = amounts.get(component, after.zeros()) - count * left
+        amounts = {key: value if key == PROTON else np.maximum(value, 0.0) for key, value in amounts.items()}
+        made.content = after.with_amounts(amounts)
+
+    def _clear(self, made: Procedure) -> None:
+        """Only the liquid goes on."""
+        content = self.content(made)
+        bound: dict[str, np.ndarray] = {}
+        for token, amount in content.solids.items():
+            for component, count in self.lab.stock.components_of(token).items():
+                bound[component] = bound.get(component, content.zeros()) + count * amount
+        for token, amount in content.aside.items():
+            if self.lab.stock.species(token).phase == "s":
+                bound[token] = amount
+        amounts = {key: value - bound.get(key, 0.0) for key, value in content.amounts.items()}
+        made.content = content.with_amounts(
+            {key: value if key == PROTON else np.maximum(value, 0.0) for key, value in amounts.items()}
+        )
 
     # --- the beginning: the waste, into water where it must be diluted
 
     def _begin(self, made: Procedure, treatments: list[Treatment]) -> None:
         made.add({"add": WASTE, "to": TANK})
+        self._put(made, self._waste)
         content = self.content(made)
         volume = float(content.volume_L[0])
         factor = 1.0
@@ -138,12 +183,22 @@ class Builder:
         if factor > 1.02:
             largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
             if volume * factor > largest:
-                raise CannotDo(f"it asks for dilution to {volume * factor:.3g} L, more than the {largest:g} L of a bench treatment")
+                raise CannotDo(
+                    f"it asks for dilution to {volume * factor:.3g} L, more than the {largest:g} L of a bench treatment"
+                )
             water = _round_up(volume * (factor - 1.0))
             made.steps.clear()
             made.origin.clear()
+            made.content = None
+            unit, _ = self._reagent("water")
+            self._put(made, self._scaled(unit, 1000.0 * water * _WATER_DENSITY))
+            self._put(made, self._waste)
             made.add({"add": f"{_amount(water)} of water", "to": TANK})
-            made.add({"add": WASTE, "to": TANK, "over": f"{_minutes(20 * made.slower)} min"}, "", "The liquid stays cool to the hand of the vessel's wall.")
+            made.add(
+                {"add": WASTE, "to": TANK, "over": f"{_minutes(20 * made.slower)} min"},
+                "",
+                "The wall of the vessel stays cool to the hand.",
+            )
 
     def _strength(self, content: Mixture, token: str) -> float:
         """mol/L; of the proton: free acid or free base, whichever there is."""
@@ -163,18 +218,22 @@ class Builder:
             case "dose":
                 self._dose(made, treatment, stage)
             case "stir" | "stand":
+                self._react(made, self.content(made), _speed(stage.action, stage.minutes))
                 made.add({stage.action: _time(stage.minutes), "in": made.vessel}, treatment.id, stage.test)
             case "filter":
                 place = _ORDINALS[min(len(made.cakes), len(_ORDINALS) - 1)]
                 cake, jug = f"{place}sludge", f"{place}jug"
                 made.add({"filter": made.vessel, "cake": cake, "filtrate": jug}, treatment.id, stage.test)
+                self._clear(made)
                 made.cakes.append((cake, treatment.id))
                 made.vessels.append(jug)
 
     def _dose(self, made: Procedure, treatment: Treatment, stage: Stage) -> None:
         content = self.content(made)
-        needed = stage.excess * sum(float(content.total(demand.species)[0]) * demand.mol_per_mol for demand in stage.demands)
-        if needed <= 1e-9:
+        # for the most that the stated ranges allow: too little treats nothing, and too much is judged by the vetting
+        demands = (content.total(demand.species) * demand.mol_per_mol for demand in stage.demands)
+        needed = stage.excess * float(np.max(sum(demands, content.zeros())))
+        if needed <= _LEAST * float(content.volume_L[0]):
             return
         unit, words = self._reagent(stage.reagent)
         per_unit = float(unit.total(stage.agent)[0])
@@ -184,7 +243,8 @@ class Builder:
 
     def _to_pH(self, made: Procedure, treatment: Treatment, stage: Stage) -> None:
         """The least amount that brings the pH well into the window: a grid of amounts, each solved for its equilibrium, closed in on twice."""
-        assert stage.pH_low is not None and stage.pH_high is not None
+        assert stage.pH_low is not None
+        assert stage.pH_high is not None
         content = self.content(made)
         content = content.take(np.array([0]))
         up = stage.action == "raise"
@@ -198,7 +258,7 @@ class Builder:
         low, high = 1e-6 * litres, (2000.0 if words == "g" else 5.0) * litres
         amounts = np.geomspace(low, high, _GRID)
         reached = np.nan
-        for _ in range(4):
+        for _ in range(3):
             pH = self._pH_after(content, unit, amounts)
             there = pH >= aim if up else pH <= aim
             if not there.any():
@@ -208,7 +268,8 @@ class Builder:
             amounts = np.linspace(low, high, _GRID)
         if reached > stage.pH_high + 0.3 if up else reached < stage.pH_low - 0.3:
             raise CannotDo(f"{stage.reagent} overshoots the window of pH {stage.pH_low:g} to {stage.pH_high:g}")
-        self._pour(made, treatment, stage, high, words)
+        if high > (_LEAST_G if words == "g" else _LEAST_L) * litres:
+            self._pour(made, treatment, stage, high, words)
 
     def _pH_after(self, content: Mixture, unit: Mixture, amounts: np.ndarray) -> np.ndarray:
         together = poured_together(content.repeated(len(amounts)), unit.repeated(len(amounts)).scaled(amounts))
@@ -222,6 +283,12 @@ class Builder:
         if stage.minutes:
             step["over"] = f"{_minutes(stage.minutes * made.slower)} min"
         made.add(step, treatment.id, stage.test)
+        unit, _ = self._reagent(stage.reagent)
+        self._put(made, self._scaled(unit, amount))
+
+    def _scaled(self, unit: Mixture, amount: float) -> Mixture:
+        """So many units of a reagent, in as many lanes as the waste has."""
+        return unit.repeated(self._waste.lanes).scaled(amount)
 
     def _reagent(self, label: str) -> tuple[Mixture, str]:
         """The content of one gram or one litre of a reagent, and the unit."""
@@ -236,6 +303,11 @@ class Builder:
             mixture = Bench(self.lab.stock, ranges).make_up(portion, "reagent", 25.0).mixture
             known = self._reagents[label] = (mixture.take(np.array([0])), "L" if solution else "g")
         return known
+
+
+def _speed(action: str, minutes: float) -> str:
+    """The slowest reactions that go on, as the walk has it."""
+    return "minutes" if action == "stir" or minutes < 30 else "hours" if minutes < 720 else "days"
 
 
 def _figures(value: float, digits: int = 4) -> str:

@@ -21,8 +21,8 @@ from carboy.text.portions import NameLookup
 
 # First guesses of sizes and times. They judge nothing: each is vetted, and what does not clear the finding is not offered.
 _DILUTIONS = (1.0, 4.0)  # litres of water for a litre
-_SLOW = (1800.0, 14400.0)  # s, where no time is given
-_SLOWER = (4.0, 16.0)  # times as long, where one is
+_SLOW = (1800.0, 14400.0)  # s
+_SLOWER = (4.0, 16.0)  # times as long as it takes now
 _LONGEST = 86400.0  # s
 _WIDER = (2.0, 5.0)  # times as large
 _COLD = 5.0  # degC, an ice bath
@@ -30,6 +30,7 @@ _REAGENT_TIME = 1800.0  # s
 _PORTIONS = 5
 _ROOM = 0.7  # a vessel is filled no further than this where a new one is chosen
 _MATERIALS = 4  # how many other vessel materials are tried
+_TO_BE_REMOVED = ("explosive", "fire", "toxic-product")  # not made safe by another pH or by water while both are there
 _AFTERWARDS = 4  # how many later pours are tried before the step
 
 Way = Callable[[Finding], Iterator[Variant]]
@@ -52,6 +53,8 @@ class Proposer:
             yield from way(finding)
 
     def _ways(self, finding: Finding) -> tuple[Way, ...]:
+        if finding.kind == "pressure":
+            return self._cover, self._later_pours, self._quench, self._wider
         if finding.moment == "storage":
             first: tuple[Way, ...] = (self._cover, self._later_pours, self._quench, self._neutralise, self._dilute)
             return (*self._upstream(finding), *first, self._material, self._wider)
@@ -64,7 +67,6 @@ class Proposer:
             self._aside,
             self._dilute,
             self._wider,
-            self._portions,
             self._cool,
         )
         ways: dict[str, tuple[Way, ...]] = {
@@ -74,7 +76,6 @@ class Proposer:
             "oxygen": (self._slower, self._dilute, *gas),
             "heat": (self._exchange, self._slower, self._portions, self._dilute, self._aside, self._cool),
             "foam": (self._slower, self._wider, self._later_pours, self._exchange, self._dilute, self._aside),
-            "pressure": (self._cover, self._wider, self._later_pours),
             "remobilised": (self._filter, self._later_pours, self._exchange, self._quench, self._neutralise),
             "incomplete": (self._filter, self._later_pours, self._exchange, self._quench, self._neutralise),
             "attack": (self._material, self._neutralise),
@@ -85,8 +86,6 @@ class Proposer:
             self._material,
             self._quench,
             self._aside,
-            self._neutralise,
-            self._dilute,
             self._cool,
         )
         return ways.get(finding.kind, other)
@@ -115,7 +114,9 @@ class Proposer:
 
     def _with_room(self, variant: Variant, vessel: str, more_L: float) -> Variant:
         """The variant with a larger vessel where what is added would not go in."""
-        most = max((float(trace.after.volume_L.max()) for trace in self.walk.steps if trace.vessel == vessel), default=0)
+        most = max(
+            (float(trace.after.volume_L.max()) for trace in self.walk.steps if trace.vessel == vessel), default=0
+        )
         spec = edits.spec_of(variant.case, vessel)
         if spec is None or spec.volume is None or most + more_L <= spec.volume.low:
             return variant
@@ -146,29 +147,28 @@ class Proposer:
         step = self.case.steps[place]
         if not isinstance(step, Add | Transfer) or self._trace(finding).before is None:
             return
-        times = _SLOW if step.over is None else tuple(min(step.over.low * factor, _LONGEST) for factor in _SLOWER)
-        for seconds in dict.fromkeys(times):
-            if step.over is None or seconds > step.over.low:
-                yield edits.slower(self.variant, place, seconds)
+        now = 0.0 if step.over is None else step.over.low
+        times = {*_SLOW, *(min(now * factor, _LONGEST) for factor in _SLOWER)}
+        for seconds in sorted(one for one in times if one > now):
+            yield edits.slower(self.variant, place, seconds)
 
     def _cool(self, finding: Finding) -> Iterator[Variant]:
         found = self._pour(finding)
         if found is not None:
             place, step = found
-            yield edits.insert(self.variant, place, [_cooling(step.to, _COLD)], f"Cool {step.to} to {_COLD:g} degC first.", 2.0)
+            yield edits.insert(
+                self.variant, place, [_cooling(step.to, _COLD)], f"Cool {step.to} to {_COLD:g} degC first.", 2.0
+            )
 
     def _portions(self, finding: Finding) -> Iterator[Variant]:
         found = self._pour(finding)
         if found is None:
             return
         place, step = found
-        ambient = self.case.setting.temperature.low
-        for cooling in ([], [_cooling(step.to, min(ambient, 20.0))]):
-            if finding.kind == "heat" and not cooling:
-                continue  # without loss of heat it comes to the same
-            variant = edits.in_portions(self.variant, place, _PORTIONS, cooling)
-            if variant is not None:
-                yield variant
+        cooling = _cooling(step.to, min(self.case.setting.temperature.low, 20.0))
+        variant = edits.in_portions(self.variant, place, _PORTIONS, [cooling])
+        if variant is not None:
+            yield variant
 
     def _wider(self, finding: Finding) -> Iterator[Variant]:
         vessel = finding.vessel
@@ -285,7 +285,10 @@ class Proposer:
         return math.isfinite(amount) and _share(amount, reagent, content) <= 10.0
 
     def _named(self, place: int) -> str:
-        return f"{edits.spoken(self.case.steps[place])} (step {place + 1})"
+        step = self.case.steps[place]
+        if isinstance(step, Add):
+            return f"{edits.spoken(step)} (step {place + 1})"
+        return f"step {place + 1} ({step.kind} {edits.vessel_of(step)})"
 
     def _dilute(self, finding: Finding) -> Iterator[Variant]:
         spot = self._place_for_reagent(finding)
@@ -306,12 +309,15 @@ class Proposer:
         found = self._pour(finding)
         if found is None or found[1].source in self.walk.vessels:
             return
-        place, step = found
+        place, _ = found
         added = self._trace(finding).added
         assert added is not None
         what = self._named(place)
         over = Interval(low=_REAGENT_TIME, high=_REAGENT_TIME)
-        for reagent in (*self._reagents("quench"), *self._reagents("base"), *self._reagents("acid")):
+        takes_away = self._reagents("quench")
+        thins = finding.kind not in _TO_BE_REMOVED
+        milder = [*self._reagents("base"), *self._reagents("acid")] if thins else []
+        for reagent in (*takes_away, *milder):
             amount = (
                 self.doser.to_quench(reagent, added)
                 if reagent.serves == "quench"
@@ -322,7 +328,7 @@ class Proposer:
             portion = self.doser.portion(reagent, amount)
             words = f"Put {what} into an empty vessel first, add {portion.text} over 30 min there, and go on with that."
             yield self._beside(place, [], [Add(portion=portion, over=over)], portion, added, words)
-        for reagent in self._reagents("diluent"):
+        for reagent in self._reagents("diluent") if thins else []:
             for times in _DILUTIONS:
                 portion = self.doser.portion(reagent, times * float(added.volume_L.max()))
                 words = f"Run {what} into {portion.text} in a vessel of its own first, and go on with that."

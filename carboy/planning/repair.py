@@ -8,6 +8,7 @@ mended, the last offer is to keep a bottle out of it.
 
 from __future__ import annotations
 
+import re
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 from typing import Protocol
@@ -17,7 +18,7 @@ from carboy.chemistry.stock import ChemicalStock
 from carboy.errors import InputError
 from carboy.knowledge.names import Names
 from carboy.model.knowledge import Index
-from carboy.model.plan import Add, Case, Check, Portion
+from carboy.model.plan import Add, Case, Check, Filter, Portion, Transfer
 from carboy.model.report import Finding, Report, Verdict
 from carboy.planning import edits
 from carboy.planning.amounts import Doser
@@ -29,6 +30,9 @@ from carboy.text.cases import read_case
 MOST_TRIED = 40
 ENOUGH = 5
 _FOR_KEEPING_APART = 3  # of the tries, held back for leaving a bottle out
+_NOT_BY_HALVES = ("explosive", "fire", "pressure")  # what is a warning still is no way out
+_FIRST_ELEMENT = re.compile(r"[A-Z][a-z]?")  # the metal stands first in the formula of what it dissolves as
+_PATIENCE = 8  # tries without success, once something is found
 _DEEPEST = 3  # changes on top of each other
 _SURELY = {"no objection": 3, "conditional": 2, "cannot say": 1, "refuse": 0}
 
@@ -118,16 +122,19 @@ class Mender:
                 break  # single changes clear it: no need of double ones
             if len(current.variant.changes) >= _DEEPEST:
                 continue
+            fruitless = 0
             for trial in self._tries(current, base, signal, doser):
+                fruitless += 1
                 if self._clears(trial.report, base.report, trial.variant.case, case):
                     found.append(trial)
-                    if len(found) >= ENOUGH:
-                        break
-                elif signal == "danger" and self._helps(trial.report, current.report):
+                    fruitless = 0
+                if len(found) >= ENOUGH or (found and fruitless >= _PATIENCE):
+                    break
+                if fruitless and signal == "danger" and self._helps(trial.report, current.report):
                     helped.append(trial)
             helped.sort(key=lambda one: one.rank)
         found.sort(key=lambda one: self._order(one, base.report))
-        menders = [self._mending(one, base.report) for one in found]
+        menders = [self._mending(one) for one in found]
         if len(menders) < ENOUGH and signal == "danger":
             menders += self._kept_apart(base)
         return menders
@@ -160,7 +167,7 @@ class Mender:
             case = read_case(text, self.engine.names, file="").model_copy(update={"file": ""})
             if self.ends_with_pour and not isinstance(case.steps[-1], Add):
                 return None
-            if case_text(case) != text:
+            if case_text(read_case(case_text(case), self.engine.names, file="")) != case_text(case):
                 return None
             self._tried += 1
             if self.progress is not None:
@@ -186,14 +193,42 @@ class Mender:
             return False
         if report.verdict == "cannot say" and not report.unrecognised:
             return False  # the calculation did not come to rest
+        if not self._less_of_it(report, before) or not self._stays_down(report, case, before, old):
+            return False
         return _goals_hold(report, before) and _checks_hold(report, case, before, old) and _all_goes_in(report, case)
+
+    def _less_of_it(self, report: Report, before: Report) -> bool:
+        """Whether what was a danger is gone in substance: where a gas or product is a warning still, or is only spread over more steps,
+        there must be much less of it."""
+        left = self.engine.index.thresholds["repair-amount-left"].value.magnitude
+        for danger in _at(before, "danger"):
+            if danger.kind in _NOT_BY_HALVES and any(one.kind == danger.kind for one in _at(report, "warning")):
+                return False
+            if danger.kind in ("heat", "foam", "pressure"):
+                continue
+            then, now = _alike(danger, before), _alike(danger, report)
+            stands = any(one.signal == "warning" for one in now) or len(now) > len(then)
+            if stands and _most(now) > left * _most(then):
+                return False
+        return True
+
+    def _stays_down(self, report: Report, case: Case, before: Report, old: Case) -> bool:
+        """Whether a metal that was put back into solution is out of it at the end, and has not merely never come down."""
+        left = self.engine.index.thresholds["repair-metal-left"].value.magnitude
+        for danger in _at(before, "danger"):
+            metal = _FIRST_ELEMENT.match(danger.species[0]) if danger.kind == "remobilised" and danger.species else None
+            if metal is not None and _dissolved_in_the_end(metal[0], report, case) > left * _dissolved_in_the_end(
+                metal[0], before, old
+            ):
+                return False
+        return True
 
     def _order(self, trial: _Try, before: Report) -> tuple[int, int, float]:
         known = {(one.kind, tuple(one.species)) for one in before.findings if one.signal != "note"}
         new = sum((one.kind, tuple(one.species)) not in known for one in _at(trial.report, "warning"))
         return len(trial.variant.changes), new, trial.variant.size
 
-    def _mending(self, trial: _Try, before: Report, apart: str = "") -> Mending:
+    def _mending(self, trial: _Try, apart: str = "") -> Mending:
         return Mending(
             changes=tuple(change.words for change in trial.variant.changes),
             report=trial.report,
@@ -220,7 +255,7 @@ class Mender:
             case, place = current.variant.case, pours[0]
             step = case.steps[place]
             assert isinstance(step, Add)
-            if len(edits.pours_into(case, step.to)) < 2:
+            if len(edits.pours_into(case, step.to)) < 2 or self._only_dilutes(step, case):
                 return []
             words = f"Do not add {edits.spoken(step)} (step {place + 1}) to {step.to}."
             apart.append(self._destination(step, case))
@@ -228,15 +263,24 @@ class Mender:
             if trial is None:
                 return []
             if self._clears(trial.report, base.report, trial.variant.case, base.variant.case):
-                return [self._mending(trial, base.report, " ".join(apart))]
+                return [self._mending(trial, " ".join(apart))]
             current = trial
         return []
+
+    def _only_dilutes(self, step: Add, case: Case) -> bool:
+        portion = step.portion or case.bottles.get(step.source)
+        diluents = {
+            f"substance:{one.substance}" for one in self.engine.index.repair_reagents if one.serves == "diluent"
+        }
+        return portion is not None and all(item.reference in diluents for item in portion.ingredients)
 
     def _destination(self, step: Add, case: Case) -> str:
         portion = step.portion or case.bottles.get(step.source)
         kinds = self._kinds(portion) if portion is not None else []
         stream = f", as waste of its own kind ({', '.join(kinds)})" if kinds else ""
-        return f"{edits.spoken(step)[:1].upper()}{edits.spoken(step)[1:]} stays in its own labelled bottle{stream}, for its own treatment or the licensed contractor."
+        what = edits.spoken(step)
+        where = f"its own labelled bottle{stream}, for its own treatment or the licensed contractor"
+        return f"{what[:1].upper()}{what[1:]} stays in {where}."
 
     def _kinds(self, portion: Portion) -> list[str]:
         kinds = []
@@ -250,6 +294,31 @@ class Mender:
 
 def _at(report: Report, signal: str) -> list[Finding]:
     return [one for one in report.findings if one.signal == signal]
+
+
+def _alike(finding: Finding, report: Report) -> list[Finding]:
+    """The findings of the same kind on the same thing."""
+    return [one for one in report.findings if (one.kind, one.species) == (finding.kind, finding.species)]
+
+
+def _most(findings: list[Finding]) -> float:
+    """mol in all, at the most."""
+    return sum(one.amount_mol[1] for one in findings if one.amount_mol is not None)
+
+
+def _dissolved_in_the_end(metal: str, report: Report, case: Case) -> float:
+    """mol of a metal dissolved in all vessels when the procedure is over, at the most."""
+    last: dict[str, float] = {}
+    for step, state in zip(case.steps, report.steps, strict=True):
+        emptied = {
+            Filter: lambda one: one.vessel,
+            Transfer: lambda one: one.vessel if one.part is None else "",
+            Add: lambda one: one.source if one.part is None else "",
+        }.get(type(step))
+        if emptied is not None:
+            last.pop(emptied(step), None)
+        last[state.vessel] = state.dissolved_mol.get(metal, (0.0, 0.0))[1]
+    return sum(last.values())
 
 
 def _leads(findings: Sequence[Finding]) -> list[Finding]:

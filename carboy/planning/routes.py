@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from dataclasses import dataclass
 from io import StringIO
 from typing import Any
 
@@ -18,7 +19,7 @@ from carboy.model.plan import Goal
 from carboy.model.report import Report
 from carboy.model.treatment import Rejected, Route, RouteStep, Stream, TreatReport
 from carboy.planning.liquid import counted_mass, hazards_of, said, unknown_metals
-from carboy.planning.procedure import TANK, WASTE, Builder, CannotDo, Procedure, Vetter
+from carboy.planning.procedure import WASTE, Builder, CannotDo, Procedure, Vetter
 from carboy.planning.search import State, must_go, reachable, sequences
 from carboy.text.cases import case_from_mapping
 from carboy.text.goals import parse_goal
@@ -34,8 +35,8 @@ CAUTIONS = (
 )
 NEUTRALISATION = "Only the pH makes this a waste: the elementary neutralisation exclusion may hold (40 CFR 264.1(g)(6)); ask the site."
 DEFAULT_SETTING = {"place": "hood", "hood_flow": "0.4 m3/s", "temperature": "22 degC"}
-_TRIED = 12  # sequences made into procedures
-_OFFERED = 4
+_TRIED = 10  # sequences made into procedures
+_OFFERED = 3
 _PATIENCE = ((1.0, 1.0), (4.0, 2.5))  # how much slower and roomier each try is
 _CURED_BY_PATIENCE = frozenset({"foam", "heat", "asphyxiant-gas", "pressure", "oxygen", "toxic-gas"})
 _SHOWN = 1e-3  # mg/L
@@ -65,9 +66,7 @@ def find_routes(
         ]
         return blank
     builder = Builder(lab, waste, places)
-    start = Procedure(waste, places)
-    start.add({"add": WASTE, "to": TANK})
-    content = builder.content(start)
+    content = builder.waste_alone()
     if content.solved is None and not content.aside:
         raise InputError(f"'{waste}' is not a liquid in water; dissolve or name its solution first")
     state = hazards_of(content, lab.stock)
@@ -87,7 +86,9 @@ def _searched(
 ) -> TreatReport:
     metals = unknown_metals(content, lab.stock)
     if metals:
-        report.reasons.append(f"No treatment is recorded for {', '.join(metals)}: this leaves untreated by a contractor.")
+        report.reasons.append(
+            f"No treatment is recorded for {', '.join(metals)}: this leaves untreated by a contractor."
+        )
         return report
     refused = [item for item in lab.index.untreatable.values() if set(item.hazards) & state]
     if refused:
@@ -99,22 +100,40 @@ def _searched(
         return report
     report.outcome = "no sound treatment"
     found: list[Route] = []
-    tried = list(sequences(state, lab.index, _TRIED))
-    for number, sequence in enumerate(tried, start=1):
+    queue = list(sequences(state, lab.index, _TRIED))
+    tried: list[tuple[str, ...]] = []
+    while queue and len(tried) < _TRIED and len(found) < _OFFERED:
+        sequence = queue.pop(0)
+        if sequence in tried or any(set(route.treatments) <= set(sequence) for route in found):
+            continue  # the same with something needless added
+        tried.append(sequence)
         if progress is not None:
-            progress(number, len(tried))
-        route = _tried(sequence, state, builder, lab, goal)
-        if isinstance(route, Rejected):
-            report.rejected.append(route)
-        else:
-            found.append(route)
-            if len(found) == _OFFERED:
-                break
+            progress(len(tried), len(tried) + len(queue))
+        attempt = _tried(sequence, state, builder, lab, goal)
+        if isinstance(attempt, Route):
+            if all(route.case_file != attempt.case_file for route in found):
+                found.append(attempt)
+            continue
+        report.rejected.append(attempt.rejected)
+        if attempt.left and attempt.left != state:  # what the records did not foresee: go on from where it ended
+            further = next(sequences(attempt.left, lab.index, 1), ())
+            if further and not set(further) & set(sequence):
+                queue.insert(0, (*sequence, *further))
     if found:
         report.outcome = "routes found"
         report.routes = sorted(found, key=lambda route: route.cost)
         if state <= {"acid", "base"}:
             report.cautions.insert(1, NEUTRALISATION)
+    elif unheld := _not_calculated(tried, lab.index):
+        report.outcome = "cannot say"
+        report.reasons += ["The published treatment cannot be confirmed by this calculation.", *unheld]
+    elif tried and builder.open_ranges():
+        report.outcome = "cannot say"
+        report.reasons.append(
+            "The label leaves open how much there is: "
+            + "; ".join(builder.open_ranges())
+            + ". No one amount of reagent fits both ends. Measure it, and ask again with the figure."
+        )
     elif tried:
         report.reasons.append(
             "None of the treatments of the graph reaches a safe end by way of steps that vet clean; what stood in the way is told for each."
@@ -128,31 +147,51 @@ def _searched(
     return report
 
 
+def _not_calculated(tried: list[tuple[str, ...]], index: Index) -> list[str]:
+    """What the treatments that were tried rest on beyond the equilibria."""
+    words = (index.treatments[key].not_calculated for sequence in tried for key in sequence)
+    return [text for text in dict.fromkeys(words) if text]
+
+
 def _aim(text: str, lab: Vetter) -> Goal:
-    goal = parse_goal(text, lab.names)  # type: ignore[arg-type]  # names look up subjects too
+    goal = parse_goal(text, lab.names)
     if goal.vessel:
         raise InputError("the aim names no vessel here; it is the last liquid that is meant")
     return goal
 
 
-def _tried(sequence: tuple[str, ...], state: State, builder: Builder, lab: Vetter, goal: Goal | None) -> Route | Rejected:
+@dataclass(frozen=True)
+class _Attempt:
+    """A procedure that is not offered; ``left`` are the hazards at its end where nothing but these stood against it."""
+
+    rejected: Rejected
+    left: State = frozenset()
+
+
+def _tried(
+    sequence: tuple[str, ...], state: State, builder: Builder, lab: Vetter, goal: Goal | None
+) -> Route | _Attempt:
     names = [lab.index.treatments[key].name for key in sequence]
     reasons: list[str] = []
+    left: State = frozenset()
     for slower, roomier in _PATIENCE:
         try:
             made = builder.build(sequence, slower=slower, roomier=roomier)
         except CannotDo as problem:
-            return Rejected(names=names, reasons=[f"{problem}."])
+            return _Attempt(Rejected(names=names, reasons=[f"{problem}."]))
         mapping = made.mapping(_goals(sequence, state, made, lab.index, goal))
         case = case_from_mapping(mapping, lab.names)
         report = lab.vet(case)
         walk = lab.walk(case)
         reasons = _objections(report, walk, made, lab)
         if not reasons:
-            return _route(sequence, made, mapping, report, walk, lab)
-        if not any(finding.signal == "danger" and finding.kind in _CURED_BY_PATIENCE for finding in report.findings):
+            return _route(sequence, made, mapping, lab.vet(case, hold_points=True), walk, lab)
+        dangers = [finding for finding in report.findings if finding.signal == "danger"]
+        if not dangers:
+            left = hazards_of(walk.vessels[made.vessel].content, lab.stock) & must_go(lab.index)
+        if not any(finding.kind in _CURED_BY_PATIENCE for finding in dangers):
             break
-    return Rejected(names=names, reasons=reasons)
+    return _Attempt(Rejected(names=names, reasons=reasons), left)
 
 
 def _goals(sequence: tuple[str, ...], state: State, made: Procedure, index: Index, aim: Goal | None) -> list[str]:
@@ -189,15 +228,17 @@ def _with_vessel(aim: Goal, vessel: str) -> str:
 
 def _objections(report: Report, walk: Walk, made: Procedure, lab: Vetter) -> list[str]:
     """Why a procedure is not offered; empty where nothing stands against it."""
-    words = [
-        f"Step {finding.step}: {finding.summary}" for finding in report.findings if finding.signal == "danger"
+    words = [f"Step {finding.step}: {finding.summary}" for finding in report.findings if finding.signal == "danger"]
+    words += [
+        f"Not reached: {goal.goal}{_had(goal.value, goal.unit)}." for goal in report.goals if goal.met is not True
     ]
-    words += [f"Not reached: {goal.goal}{_had(goal.value, goal.unit)}." for goal in report.goals if goal.met is not True]
     if report.verdict == "cannot say":
         words.append("The calculation does not settle.")
     left = hazards_of(walk.vessels[made.vessel].content, lab.stock) & must_go(lab.index)
     told = " ".join(words)
-    words += [f"Still in the liquid: {name}." for name in said(left, lab.index.hazards) if name not in told and not words]
+    words += [
+        f"Still in the liquid: {name}." for name in said(left, lab.index.hazards) if name not in told and not words
+    ]
     if report.verdict == "refuse" and not words:
         words.append("The procedure is refused.")
     return list(dict.fromkeys(words))
@@ -214,11 +255,14 @@ def _had(value: tuple[float, float] | None, unit: str) -> str:
 def _route(
     sequence: tuple[str, ...], made: Procedure, mapping: dict[str, Any], report: Report, walk: Walk, lab: Vetter
 ) -> Route:
-    treatments = [lab.index.treatments[key] for key in sequence]
+    done = [
+        key for key in sequence if any(key == treatment for treatment, _ in made.origin)
+    ]  # not those that found nothing to do
+    treatments = [lab.index.treatments[key] for key in done]
     streams = _streams(made, walk, lab)
     sludge = sum(high for stream in streams for _, high in stream.solids_g.values())
     return Route(
-        treatments=list(sequence),
+        treatments=done,
         names=[item.name for item in treatments],
         vessel_L=made.size_L,
         steps=[
@@ -249,13 +293,20 @@ def _said_step(step: Mapping[str, str]) -> str:
 
 def _streams(made: Procedure, walk: Walk, lab: Vetter) -> list[Stream]:
     streams = []
-    last = lab.index.treatments[made.origin[-1][0]]
+    ending = made.origin[-1][0]
+    rest = (
+        lab.index.treatments[ending].goes_to
+        if ending and not made.cakes
+        else "the sewer, where its authority allows, or a contractor"
+    )
     for vessel, kind, goes in (
         *((name, "sludge", lab.index.treatments[key].goes_to) for name, key in made.cakes),
-        (made.vessel, "liquid", last.goes_to if not made.cakes else "the sewer, where its authority allows, or a contractor"),
+        (made.vessel, "liquid", rest),
     ):
         content = walk.vessels[vessel].content
-        solids = {lab.stock.label(token): amount * lab.stock.molar_mass(token) for token, amount in content.solids.items()}
+        solids = {
+            lab.stock.label(token): amount * lab.stock.molar_mass(token) for token, amount in content.solids.items()
+        }
         for token, amount in content.aside.items():
             if lab.stock.species(token).phase == "s":
                 solids[lab.stock.label(token)] = amount * lab.stock.molar_mass(token)
@@ -265,7 +316,12 @@ def _streams(made: Procedure, walk: Walk, lab: Vetter) -> list[Stream]:
                 record = lab.stock.species(token)
                 if not record.report_key or not _worth_telling(token, lab):
                     continue
-                strength = 1000 * content.dissolved(token) * counted_mass(token, lab.stock) / np.maximum(content.volume_L, 1e-9)
+                strength = (
+                    1000
+                    * content.dissolved(token)
+                    * counted_mass(token, lab.stock)
+                    / np.maximum(content.volume_L, 1e-9)
+                )
                 if np.any(strength > _SHOWN):
                     dissolved[record.report_key] = pair(strength)
         streams.append(
@@ -292,5 +348,3 @@ def _yaml(mapping: dict[str, Any]) -> str:
     text = StringIO()
     writer.dump(mapping, text)
     return text.getvalue()
-
-

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -115,10 +116,13 @@ class Reactor:
         self._bound: dict[tuple[str, int, tuple[tuple[str, str], ...]], BoundReaction | None] = {}
 
     def run(
-        self, mixture: Mixture, surroundings: Surroundings, *, slowest: str = "minutes"
+        self, mixture: Mixture, surroundings: Surroundings, *, slowest: str = "minutes", already: Sequence[Firing] = ()
     ) -> tuple[Mixture, list[Firing]]:
-        """Fire all rules not slower than ``slowest`` until nothing changes; returns the end state and the record of firings."""
-        record: list[Firing] = []
+        """Fire all rules not slower than ``slowest`` until nothing changes; returns the end state and the record of firings.
+
+        ``already``: firings of the same lanes that went before, whose shares of conversion are used up.
+        """
+        record: list[Firing] = list(already)
         for speed in SPEEDS[: SPEEDS.index(slowest) + 1]:
             rules = [rule for rule in self.rules if SPEEDS.index(rule.speed) <= SPEEDS.index(speed)]
             view = View(mixture, surroundings)
@@ -129,7 +133,7 @@ class Reactor:
                 if len(record) == before:
                     break
             mixture = view.mixture
-        return mixture, record
+        return mixture, record[len(already) :]
 
     def _try(self, rule: Rule, view: View, record: list[Firing]) -> View:
         """One rule in one vessel; the view after it."""
@@ -198,7 +202,9 @@ class Reactor:
             there = mixture.amount_of(token)
             extent = np.minimum(extent, there / count)
             scale = np.maximum(scale, there)
-        earlier = sum((one.extent for one in record if one.rule is rule and one.reaction is bound), mixture.zeros())
+        earlier = sum(
+            (one.extent for one in record if one.rule is rule and one.reaction.change == bound.change), mixture.zeros()
+        )
         share = reaction.share[0 if self.least else 1]
         extent = np.where(mask & np.isfinite(extent), extent, 0.0)
         if share < 1.0:  # of all that was there before this rule began, not of what is left in each round

@@ -9,9 +9,10 @@ from carboy.model.knowledge import Source
 from carboy.model.report import Report
 from carboy.reports.citations import Citations
 from carboy.reports.figures import handy, number, quantity
+from carboy.reports.hold_points import upper_first
 from carboy.reports.plot import Axis, plot_lines
 from carboy.reports.sentences import finding_lines, gathered, listed
-from carboy.reports.style import Style, wrapped
+from carboy.reports.style import Style, ascii_text, wrapped
 from carboy.reports.table import table
 from carboy.reports.words import VERDICTS
 
@@ -43,7 +44,9 @@ def _lines(report: DoseReport, style: Style, citations: Citations, *, full: bool
     for test in report.spot_tests:
         marks = citations.marks(test.sources)
         yield from wrapped(
-            style.words(f"{test.name[:1].upper()}{test.name[1:]}: {test.role} ({test.basis}). {marks}"), style.width, "  - "
+            style.words(f"{upper_first(test.name)}: {test.role} ({test.basis}). {marks}"),
+            style.width,
+            "  - ",
         )
         yield from wrapped(style.words(f"{test.procedure} {test.reading} {test.caution}"), style.width, "    ")
     if report.findings:
@@ -106,10 +109,12 @@ def _figures(report: DoseReport, style: Style, first: float) -> Iterator[str]:
     """Some doses of the curve, each with what the vessel then is."""
     curve = report.curve
     places = [place for place, dose in enumerate(curve.dose) if dose >= first]
-    chosen = {places[round(step * (len(places) - 1) / (_ROWS - 1))] for step in range(_ROWS)}
-    if report.dose is not None:
-        aimed = report.dose.amount
-        chosen.add(min(places, key=lambda place: abs(curve.dose[place] - aimed)))
+    low, high = curve.dose[places[0]], curve.dose[places[-1]]
+    wanted = [low * (high / low) ** (step / (_ROWS - 1)) for step in range(_ROWS)]
+    window = report.window or report.nominal_window
+    if window is not None:
+        wanted += [window.least, window.least if window.most is None else window.most]
+    chosen = {_nearest(curve.dose, places, aimed) for aimed in wanted}
     metals = list(curve.dissolved_mg_L)
     gases = sorted(curve.gas_mol, key=lambda gas: -max(curve.gas_mol[gas]))[:2]
     rows: list[Sequence[str]] = [
@@ -138,4 +143,10 @@ def _figures(report: DoseReport, style: Style, first: float) -> Iterator[str]:
                 "danger" if curve.danger[place] else "",
             ]
         )
+    if style.plain:  # columns are as wide as what is printed
+        rows = [[ascii_text(cell) for cell in row] for row in rows]
     yield from table(rows, style.width, indent=2)
+
+
+def _nearest(doses: Sequence[float], places: Sequence[int], aimed: float) -> int:
+    return min(places, key=lambda place: abs(doses[place] / aimed - 1))

@@ -9,6 +9,7 @@ from carboy.reports.figures import handy, runs, span
 from carboy.reports.sentences import numbered
 from carboy.reports.style import Style, wrapped
 from carboy.reports.table import table
+from carboy.reports.words import is_formed
 
 _LEAST_SHOWN = 1e-12  # mol
 _LEAST_GAS = 1e-6  # mol: less is no news in a table
@@ -26,8 +27,7 @@ def measure_lines(report: Report, style: Style, *, full: bool) -> Iterator[str]:
     rows: list[list[str]] = []
     shown: set[tuple[str, ...]] = set()
     for number, finding in entries:
-        formed = finding.amount_mol is not None and finding.species and finding.kind != "remobilised"
-        own = [_formed(finding, style)] if formed else []
+        own = [_formed(finding, style)] if is_formed(finding) else []
         for measure in finding.measures:
             value = list(measure.value) if isinstance(measure.value, Sequence) else measure.value
             own.append([style.words(measure.quantity), handy(value, measure.unit), style.words(measure.basis)])

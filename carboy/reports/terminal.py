@@ -7,6 +7,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from carboy.model.knowledge import Source
 from carboy.model.report import Report
 from carboy.reports.citations import Citations
+from carboy.reports.hold_points import hold_lines
 from carboy.reports.measures import measure_lines, step_lines
 from carboy.reports.paths import path_lines
 from carboy.reports.sentences import finding_lines, gathered, goal_lines, listed, verdict_lines
@@ -36,6 +37,7 @@ def _lines(
     yield from verdict_lines(report, style, near)
     yield from finding_lines(report, style, citations, full=full)
     yield from goal_lines(report.goals, style)
+    yield from hold_lines(report, style, citations, full=full)
     yield from listed("To settle it", report.questions, style)
     yield from measure_lines(report, style, full=full)
     yield from step_lines(report, style)

@@ -69,7 +69,9 @@ def drawn(path: Sequence[PathStep], goal: Sequence[str], style: Style, indent: i
     root = linked(path, goal)
     room = style.width - indent
     lines: list[str] | None = None
-    for label_width in _LABEL_WIDTHS:
+    for label_width in (
+        _LABEL_WIDTHS if root.suppliers or not root.mark else ()
+    ):  # an event of which no cause is known is told, not drawn
         block = _draw(root, style, label_width)
         if block.width <= room:
             lines = block.lines

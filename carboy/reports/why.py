@@ -14,7 +14,7 @@ from carboy.reports.sentences import numbered
 from carboy.reports.style import Style, wrapped
 from carboy.reports.table import table
 from carboy.reports.tree import drawn
-from carboy.reports.words import KINDS, OTHER_ORDER, moment_words
+from carboy.reports.words import KINDS, OTHER_ORDER, is_formed, moment_words
 
 _STEP = 2  # columns by which a number stands further in than the one that it went into
 _LABEL = 34
@@ -114,7 +114,7 @@ def _numbers(finding: Finding, style: Style, citations: Citations) -> Iterator[s
         return
     yield ""
     yield style.strong("How each number was had")
-    if finding.amount_mol is not None and finding.species and finding.kind != "remobilised":
+    if finding.amount_mol is not None and is_formed(finding):
         name = style.formula(finding.species[0])
         counted = "(molecules, dissolved or not, less those that were there before; over the stated ranges)"
         text = f"{name} formed = {_shown(finding.amount_mol, 'mol')} {counted}"
@@ -131,7 +131,8 @@ def _measure(measure: Measure, style: Style, citations: Citations, indent: int, 
     if behind and words + behind not in told:
         told.add(words + behind)
         words += behind
-    yield from wrapped(words, style.width, " " * indent, " " * (indent + _STEP))
+    lines = wrapped(words, style.width, " " * indent, " " * (indent + _STEP))
+    yield from (style.strong(line) for line in lines) if indent == _STEP else lines
     deeper = indent + 2 * _STEP
     if measure.equation:
         signs = measure.equation if style.plain else measure.equation.replace(" x ", " × ").replace(" - ", " − ")

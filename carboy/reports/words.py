@@ -40,6 +40,13 @@ _WHOLE = 0.995
 _START = 0.005
 
 
+def is_formed(finding: Finding) -> bool:
+    """Whether its amount is of something that the event makes, not of something that was there and is at stake, or goes back."""
+    if finding.amount_mol is None or not finding.species or finding.kind == "remobilised":
+        return False
+    return not finding.path or not set(finding.path[-1].to) <= set(finding.path[-1].from_)
+
+
 def moment_words(finding: Finding, actions: dict[int, str], *, alike: bool = False) -> str:
     """When it stands: the step, and the part of the addition.
 

@@ -44,9 +44,13 @@ class ExampleRunner:
         self._count += 1
         if self._progress is not None:
             self._progress(self._count, self._total)
-        laboratory, case, _ = self._laboratory.prepared(self.case(example))
+        return self.run(self.case(example))
+
+    def run(self, case: Case) -> list[Found]:
+        """What was found in a case, in the same form. Raises EngineFault, or InputError for a structure that is none."""
+        laboratory, ready, _ = self._laboratory.prepared(case)
         try:
-            walk = laboratory.walk(case)
+            walk = laboratory.walk(ready)
             findings = laboratory.judge.findings(walk)
         except (
             ArithmeticError,

@@ -12,9 +12,6 @@ import re
 from collections.abc import Sequence
 from typing import Any, Literal
 
-from ruamel.yaml import YAML
-from ruamel.yaml.comments import CommentedMap, CommentedSeq
-
 from carboy.model.plan import (
     Add,
     Case,
@@ -81,15 +78,17 @@ def _way(interval: Interval, unit: str) -> tuple[str, float]:
 
 def case_text(case: Case, comments: Sequence[str] = ()) -> str:
     """The case as a YAML text that ends in a newline; ``comments`` are lines put at its head."""
-    root = CommentedMap()
+    from ruamel.yaml import YAML  # a check that writes no file goes without it
+
+    root: dict[str, Any] = {}
     root["title"] = case.title
     setting = _setting(case.setting)
     if setting:
         root["setting"] = setting
     if case.bottles:
-        root["bottles"] = CommentedMap((name, portion.text) for name, portion in case.bottles.items())
+        root["bottles"] = {name: portion.text for name, portion in case.bottles.items()}
     if case.vessels:
-        root["vessels"] = CommentedMap((spec.name, _vessel(spec)) for spec in case.vessels)
+        root["vessels"] = {spec.name: _vessel(spec) for spec in case.vessels}
     root["steps"] = [_step(step) for step in case.steps]
     if case.goals:
         root["goals"] = [goal.text for goal in case.goals]
@@ -105,13 +104,16 @@ def case_text(case: Case, comments: Sequence[str] = ()) -> str:
     return head + stream.getvalue()
 
 
-def _flow(entries: dict[str, Any]) -> CommentedMap:
+def _flow(entries: dict[str, Any]) -> dict[str, Any]:
+    """On one line, in braces."""
+    from ruamel.yaml.comments import CommentedMap
+
     row = CommentedMap(entries)
     row.fa.set_flow_style()
     return row
 
 
-def _setting(setting: Setting) -> CommentedMap | None:
+def _setting(setting: Setting) -> dict[str, Any] | None:
     entries: dict[str, Any] = {}
     if setting.place:
         entries["place"] = setting.place
@@ -128,7 +130,7 @@ def _setting(setting: Setting) -> CommentedMap | None:
     return _flow(entries) if entries else None
 
 
-def _vessel(spec: VesselSpec) -> CommentedMap:
+def _vessel(spec: VesselSpec) -> dict[str, Any]:
     entries: dict[str, Any] = {}
     if spec.volume is not None:
         entries["volume"] = quantity_text(spec.volume, "L")
@@ -139,11 +141,11 @@ def _vessel(spec: VesselSpec) -> CommentedMap:
     if not spec.holds:
         return _flow(entries)
     entries["holds"] = [portion.text for portion in spec.holds]
-    return CommentedMap(entries)
+    return entries
 
 
-def _step(step: Step) -> CommentedMap | str:
-    row = CommentedMap()
+def _step(step: Step) -> dict[str, Any] | str:
+    row: dict[str, Any] = {}
     match step:
         case Add():
             row["add"] = _added(step)
@@ -197,12 +199,12 @@ def _added(step: Add) -> str:
     return f"{quantity_text(step.part, 'g' if step.part_unit == 'g' else 'L')} from {step.source}"
 
 
-def _timed(row: CommentedMap, key: str, duration: Interval | None) -> None:
+def _timed(row: dict[str, Any], key: str, duration: Interval | None) -> None:
     if duration is not None:
         row[key] = quantity_text(duration, "s")
 
 
-def _placed(row: CommentedMap, vessel: str) -> None:
+def _placed(row: dict[str, Any], vessel: str) -> None:
     if vessel:
         row["in"] = vessel
 
@@ -231,7 +233,7 @@ def _check_words(step: Check) -> str:
     return f"{step.quantity} below {figure(step.high or 0.0)}{unit}"
 
 
-def _expectation(one: Expectation) -> CommentedMap:
+def _expectation(one: Expectation) -> dict[str, Any]:
     entries: dict[str, Any] = {}
     if one.step is not None:
         entries["step"] = one.step
@@ -245,9 +247,7 @@ def _expectation(one: Expectation) -> CommentedMap:
     if one.quantity:
         entries["quantity"] = one.quantity
         if one.low is not None and one.high is not None:
-            ends = CommentedSeq([one.low, one.high])
-            ends.fa.set_flow_style()
-            entries["between"] = ends
+            entries["between"] = [one.low, one.high]
         elif one.low is not None:
             entries["above"] = one.low
         elif one.high is not None:

@@ -200,9 +200,6 @@ def test_plain_solutions_may_be_capped_and_left(portions: tuple[str, str]) -> No
     assert report.verdict == "no objection", outline(report)
 
 
-@pytest.mark.xfail(
-    strict=True, reason="sealing lets days pass, and a wait after it lets them pass again (bench/walk.py)"
-)
 def test_a_share_of_conversion_is_not_taken_twice() -> None:
     # a wait of hours after the cap is part of the days that the cap is judged for
     report = left("1 L of 12 % sodium hypochlorite", litres="2 L", then=("seal", "wait 72 h"))

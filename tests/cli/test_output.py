@@ -17,19 +17,20 @@ class Terminal(io.StringIO):
         return True
 
 
-@pytest.fixture
 def terminal(monkeypatch: pytest.MonkeyPatch) -> Terminal:
+    """Standard error as a terminal; called in the test, since pytest puts its own in place when that begins."""
     made = Terminal()
     monkeypatch.setattr(sys, "stderr", made)
     return made
 
 
 @pytest.mark.parametrize("compiled", [True, False])
-def test_the_first_reading_is_told_where_the_graph_must_be_compiled(terminal, monkeypatch, compiled):
+def test_the_first_reading_is_told_where_the_graph_must_be_compiled(monkeypatch, compiled):
+    shown = terminal(monkeypatch)
     monkeypatch.setattr(index, "is_compiled", lambda: compiled)
     with first_reading():
-        assert terminal.getvalue() == ("" if compiled else FIRST_READING)
-    assert terminal.getvalue() == ("" if compiled else f"{FIRST_READING}\r\033[K")
+        assert shown.getvalue() == ("" if compiled else FIRST_READING)
+    assert shown.getvalue() == ("" if compiled else f"{FIRST_READING}\r\033[K")
 
 
 def test_nothing_is_told_where_that_is_no_terminal(monkeypatch):
@@ -41,16 +42,17 @@ def test_nothing_is_told_where_that_is_no_terminal(monkeypatch):
     assert quiet.getvalue() == ""
 
 
-def test_progress_waits_a_second_and_cleans_up(terminal, monkeypatch):
+def test_progress_waits_a_second_and_cleans_up(monkeypatch):
+    shown = terminal(monkeypatch)
     now = [0.0]
     monkeypatch.setattr(output.time, "monotonic", lambda: now[0])
     with Progress("step") as progress:
         progress(1, 9)
-        assert terminal.getvalue() == ""
+        assert shown.getvalue() == ""
         now[0] = 1.5
         progress(4, 9, "pour")
-        assert terminal.getvalue().endswith("step 4 of 9 pour")
-    assert terminal.getvalue().endswith("\r\033[K")
+        assert shown.getvalue().endswith("step 4 of 9 pour")
+    assert shown.getvalue().endswith("\r\033[K")
 
 
 def test_counted_words():

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import subprocess
 import sys
 
@@ -9,7 +10,7 @@ import pytest
 from rdkit import Chem
 from rdkit.Chem import Fragments
 
-from carboy.errors import CarboyError, InputError
+from carboy.errors import InputError
 from carboy.knowledge.index import load_index
 from carboy.knowledge.structures import ClassPatterns, faulty_patterns, read_structure
 from carboy.model.knowledge import ChemicalClass
@@ -85,10 +86,20 @@ LABELLED = [
     ("azobis(cyclohexanecarbonitrile)", "N#CC1(CCCCC1)N=NC1(CCCCC1)C#N", "azo-compound nitrile", "aromatic-azo"),
     ("phenyl azide", "[N-]=[N+]=Nc1ccccc1", "organic-azide energetic", "diazo-compound diazonium azo-compound"),
     ("diphenyldiazomethane", "[N-]=[N+]=C(c1ccccc1)c1ccccc1", "diazo-compound energetic", "imine organic-azide"),
-    ("4-nitrobenzenediazonium", "N#[N+]c1ccc([N+](=O)[O-])cc1.F[B-](F)(F)F", "diazonium nitroarene", "nitrile diazo-compound"),
+    (
+        "4-nitrobenzenediazonium",
+        "N#[N+]c1ccc([N+](=O)[O-])cc1.F[B-](F)(F)F",
+        "diazonium nitroarene",
+        "nitrile diazo-compound",
+    ),
     ("5-phenyltetrazole", "c1ccc(-c2nnn[nH]2)cc1", "tetrazole-ring energetic", "organic-azide"),
     ("1-nitropropane", "CCC[N+](=O)[O-]", "nitroalkane", "nitroarene nitrate-ester polynitro-compound"),
-    ("trinitroresorcinol ether", "COc1c([N+](=O)[O-])cc([N+](=O)[O-])c(OC)c1[N+](=O)[O-]", "nitro-aromatic-energetic polynitro-compound", "phenol"),
+    (
+        "trinitroresorcinol ether",
+        "COc1c([N+](=O)[O-])cc([N+](=O)[O-])c(OC)c1[N+](=O)[O-]",
+        "nitro-aromatic-energetic polynitro-compound",
+        "phenol",
+    ),
     ("isopropyl nitrate", "CC(C)O[N+](=O)[O-]", "nitrate-ester energetic", "nitro-compound ester alkyl-nitrite"),
     ("butyl nitrite", "CCCCON=O", "alkyl-nitrite oxidiser", "nitrate-ester nitroso-compound"),
     ("N-nitrosodiethylamine", "CCN(CC)N=O", "nitrosamine", "nitrosamide nitroso-compound hydrazine tertiary-amine"),
@@ -97,7 +108,12 @@ LABELLED = [
     ("pentachloroethane", "ClC(Cl)C(Cl)(Cl)Cl", "polyhaloalkane halogenated-solvent", "haloform vinyl-halide"),
     ("bromodichloromethane", "ClC(Cl)Br", "haloform", "alkylating-agent"),
     ("fluorobenzene", "Fc1ccccc1", "aryl-halide aromatic", "fluorocarbon alkyl-halide"),
-    ("2-bromoacetophenone", "BrCC(=O)c1ccccc1", "alpha-halo-carbonyl alkylating-agent", "halogenated-solvent methyl-ketone"),
+    (
+        "2-bromoacetophenone",
+        "BrCC(=O)c1ccccc1",
+        "alpha-halo-carbonyl alkylating-agent",
+        "halogenated-solvent methyl-ketone",
+    ),
     ("bis(chloromethyl) ether", "ClCOCCl", "alpha-halo-ether water-reactive", "peroxidisable-ether"),
     ("2-chloroethanol", "OCCCl", "halohydrin primary-alcohol", "halogenated-solvent epoxide"),
     ("mechlorethamine", "CN(CCCl)CCCl", "beta-halo-amine tertiary-amine", "halogenated-solvent"),
@@ -119,14 +135,24 @@ LABELLED = [
     ("trimethyl phosphite", "COP(OC)OC", "phosphite-ester reductant", "phosphate-ester orthoester"),
     ("parathion", "CCOP(=S)(OCC)Oc1ccc([N+](=O)[O-])cc1", "phosphate-ester nitroarene", "phosphite-ester ether"),
     ("triethylsilane", "CC[SiH](CC)CC", "hydrosilane", "chlorosilane alkoxysilane"),
-    ("tert-butyldimethylsilyl chloride", "CC(C)(C)[Si](C)(C)Cl", "chlorosilane water-reactive", "alkyl-halide halogenated-solvent"),
+    (
+        "tert-butyldimethylsilyl chloride",
+        "CC(C)(C)[Si](C)(C)Cl",
+        "chlorosilane water-reactive",
+        "alkyl-halide halogenated-solvent",
+    ),
     ("hexamethyldisiloxane", "C[Si](C)(C)O[Si](C)(C)C", "siloxane", "ether"),
     ("phenylboronic acid", "OB(O)c1ccccc1", "boronic-acid", "phenol alcohol"),
     ("triethylborane", "CCB(CC)CC", "trialkylborane pyrophoric", "boronic-acid"),
     ("hexyllithium", "CCCCCC[Li]", "organolithium organometallic water-reactive", "organomagnesium"),
     ("cyclohexylmagnesium chloride", "Cl[Mg]C1CCCCC1", "organomagnesium organometallic", "halogenated-solvent"),
     ("tetramethyltin", "C[Sn](C)(C)C", "organotin", "organometallic"),
-    ("2,5-dimethylhexane-2,5-dihydroperoxide", "CC(C)(CCC(C)(C)OO)OO", "hydroperoxide organic-peroxide", "peroxy-acid alcohol ether"),
+    (
+        "2,5-dimethylhexane-2,5-dihydroperoxide",
+        "CC(C)(CCC(C)(C)OO)OO",
+        "hydroperoxide organic-peroxide",
+        "peroxy-acid alcohol ether",
+    ),
     ("propylene ozonide", "CC1OCOO1", "geminal-peroxide energetic", "peroxidisable-ether"),
     ("perbenzoic acid", "O=C(OO)c1ccccc1", "peroxy-acid organic-peroxide", "hydroperoxide carboxylic-acid ester"),
     ("2,3-dimethylbutadiene", "CC(=C)C(C)=C", "diene-monomer polymeriser peroxide-former", "styrene-like"),
@@ -135,7 +161,12 @@ LABELLED = [
     ("3-hexyne", "CCC#CCC", "alkyne", "terminal-alkyne"),
     ("indane", "c1ccc2c(c1)CCC2", "peroxidisable-hydrocarbon aromatic", "polycyclic-aromatic alkene"),
     ("isooctane", "CC(C)CC(C)(C)C", "alkane", "alkene peroxide-former aromatic"),
-    ("EDTA", "OC(=O)CN(CC(=O)O)CCN(CC(=O)O)CC(=O)O", "aminopolycarboxylate carboxylic-acid", "tertiary-amine amino-acid"),
+    (
+        "EDTA",
+        "OC(=O)CN(CC(=O)O)CCN(CC(=O)O)CC(=O)O",
+        "aminopolycarboxylate carboxylic-acid",
+        "tertiary-amine amino-acid",
+    ),
 ]
 
 
@@ -143,7 +174,9 @@ def with_those_above(smiles: str) -> set[str]:
     return {up for key in PATTERNS.classes_of(smiles) for up in INDEX.ancestors[key]}
 
 
-@pytest.mark.parametrize(("smiles", "wanted", "unwanted"), [row[1:] for row in LABELLED], ids=[row[0] for row in LABELLED])
+@pytest.mark.parametrize(
+    ("smiles", "wanted", "unwanted"), [row[1:] for row in LABELLED], ids=[row[0] for row in LABELLED]
+)
 def test_labelled_molecule(smiles: str, wanted: str, unwanted: str) -> None:
     found = with_those_above(smiles)
     assert set(wanted.split()) <= found, sorted(found)
@@ -169,7 +202,7 @@ AGAINST_RDKIT = [
     ("fr_isocyan", "isocyanate", "", ""),
     ("fr_isothiocyan", "isothiocyanate", "", ""),
     ("fr_sulfone", "sulfone", "", ""),
-    ("fr_sulfide", "thioether", "", ""),
+    ("fr_sulfide", "thioether", "thioester dithiocarbamate organic-thiocyanate", ""),
     ("fr_term_acetylene", "terminal-alkyne", "", ""),
     ("fr_diazo", "diazonium", "", ""),
     ("fr_benzene", "aromatic", "", ""),
@@ -187,26 +220,58 @@ AGAINST_RDKIT = [
     ("fr_aldehyde", "aldehyde", "", "formaldehyde paraformaldehyde chloral-hydrate"),  # no carbon beside it; a hydrate
     ("fr_phenol", "phenol", "", "sodium-phenolate picrate eosin-y"),  # the ion too
     ("fr_SH", "thiol", "guanidinium-thiocyanate", "sodium-methanethiolate"),  # the ion too; no thiocyanic acid
-    ("fr_nitrile", "nitrile", "guanidinium-thiocyanate", ""),
-    ("fr_ester", "ester", "anhydride", "carbonate-ester phosphate-ester phosphite-ester sulfonate-ester dialkyl-sulfate ethyl-formate methyl-formate"),
-    ("fr_ether", "ether", "ester anhydride epoxide carbohydrate xanthate acid-chloride organic-peroxide carbamate", "furan furfural furfuryl-alcohol eosin-y rhodamine-b"),
+    ("fr_nitrile", "nitrile", "guanidinium-thiocyanate organic-thiocyanate", ""),
+    (
+        "fr_ester",
+        "ester",
+        "anhydride",
+        "carbonate-ester phosphate-ester phosphite-ester sulfonate-ester dialkyl-sulfate ethyl-formate methyl-formate",
+    ),
+    (
+        "fr_ether",
+        "ether",
+        "ester anhydride epoxide carbohydrate xanthate acid-chloride organic-peroxide carbamate azodicarboxylate",
+        "furan furfural furfuryl-alcohol eosin-y rhodamine-b",
+    ),
     ("fr_alkyl_halide", "alkyl-halide", "fluorocarbon", ""),
-    ("fr_phos_ester", "phosphate-ester", "", "diphenylphosphoryl-azide"),
-    ("fr_urea", "urea-like", "hydrazide azodicarbonamide n-halo-compound nitrosamide", "guanidine-like thioamide melamine"),
+    ("fr_phos_ester", "phosphate-ester", "", "diphenylphosphoryl-azide parathion"),
+    (
+        "fr_urea",
+        "urea-like",
+        "hydrazide azodicarbonamide n-halo-compound nitrosamide",
+        "guanidine-like thioamide melamine",
+    ),
     ("fr_sulfonamd", "sulfonamide", "organic-azide isocyanate n-halo-compound", ""),
     ("fr_imide", "imide", "n-halo-compound", ""),  # hydantoins
     ("fr_hdrzine", "hydrazine", "hydrazide nitramine", ""),
     ("fr_Imine", "imine", "amidine isocyanate isothiocyanate carbodiimide guanidine-like", ""),
-    ("fr_amide", "amide", "urea-like hydrazide azo-compound nitrosamide ammonium-carbamate", "phosphoramide 1-1-carbonyldiimidazole"),
+    (
+        "fr_amide",
+        "amide",
+        "urea-like hydrazide azo-compound nitrosamide carbamate hydroxamic-acid ammonium-carbamate",
+        "phosphoramide 1-1-carbonyldiimidazole",
+    ),
     ("fr_azo", "azo-compound", "aromatic-azo dithizone", ""),
     ("fr_COO", "carboxylic-acid", "carboxylate perhalo-carboxylic-acid", "formic-acid"),
-    ("fr_aniline", "aromatic-amine", "hydrazine hydrazide hydrazone nitrosamine 4-dimethylaminopyridine 5-aminotetrazole-monohydrate melamine", ""),
-    ("fr_quatN", "quaternary-ammonium", "ammonium", "ethidium-bromide"),  # RDKit counts the ammonium ion
-    ("fr_pyridine", "pyridine-like", "ethidium-bromide", "imidazole 1-methylimidazole"),
+    (
+        "fr_aniline",
+        "aromatic-amine",
+        "amide hydrazine hydrazide hydrazone nitrosamine 4-dimethylaminopyridine 5-aminotetrazole-monohydrate melamine",
+        "",
+    ),
+    (
+        "fr_quatN",
+        "quaternary-ammonium",
+        "ammonium ammonium-picrate ammonium-pyrrolidinedithiocarbamate cupferron",
+        "ethidium-bromide",
+    ),  # RDKit counts the ammonium ion
+    ("fr_pyridine", "pyridine-like", "amine-oxide ethidium-bromide", "imidazole 1-methylimidazole"),
 ]
 
 
-@pytest.mark.parametrize(("counter", "key", "rdkit_too", "ours_too"), AGAINST_RDKIT, ids=[row[0] for row in AGAINST_RDKIT])
+@pytest.mark.parametrize(
+    ("counter", "key", "rdkit_too", "ours_too"), AGAINST_RDKIT, ids=[row[0] for row in AGAINST_RDKIT]
+)
 def test_against_the_counts_of_rdkit(counter: str, key: str, rdkit_too: str, ours_too: str) -> None:
     """Over every structure of the graph and every labelled one a class and RDKit's own count of that group agree, but for what the table says."""
     count = getattr(Fragments, counter)
@@ -270,14 +335,33 @@ def test_what_is_no_molecule_is_an_error_in_words(smiles: str, words: str) -> No
         read_structure(smiles)
 
 
-@pytest.mark.parametrize("text", ["", " ", "C(", "[", "]", "C=", "=C", "%", "[X]", "C:C", "C.", "..", "[Na", "0", "((", "C1C2C1", "\\", "[H]", "[C+5]"])
+@pytest.mark.parametrize(
+    "text",
+    [
+        "",
+        " ",
+        "C(",
+        "[",
+        "]",
+        "C=",
+        "=C",
+        "%",
+        "[X]",
+        "C:C",
+        "C.",
+        "..",
+        "[Na",
+        "0",
+        "((",
+        "C1C2C1",
+        "\\",
+        "[H]",
+        "[C+5]",
+    ],
+)
 def test_any_text_is_read_or_refused(text: str) -> None:
-    try:
-        structure = read_structure(text)
-    except CarboyError as error:
-        assert error.message
-    else:
-        assert structure.atoms
+    with contextlib.suppress(InputError):  # nothing else may come out
+        assert read_structure(text).atoms
 
 
 def test_faulty_patterns_are_found() -> None:
@@ -310,7 +394,11 @@ def test_stated_classes_are_borne_out_by_the_structures() -> None:
         item.id: missing
         for item in INDEX.substances.values()
         if item.smiles
-        and (missing := PATTERNS.unfounded(tuple(set(item.classes) - set(item.derived)), PATTERNS.classes_of(item.smiles)))
+        and (
+            missing := PATTERNS.unfounded(
+                tuple(set(item.classes) - set(item.derived)), PATTERNS.classes_of(item.smiles)
+            )
+        )
     }
     assert not unfounded
 
