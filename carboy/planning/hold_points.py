@@ -333,12 +333,8 @@ class HoldPoints:
                     must=f"an alarm for {gas.name}{at} is running, and the hood draws",
                     test=_test_words(tests[0].name, f"{tests[0].procedure} {tests[0].reading}"),
                     basis="This gas comes if the pH above is missed."
-                    + (
-                        ""
-                        if limit is None
-                        else f" The limit is its short-term limit or, where it has none, its IDLH ({limit.source})."
-                    ),
-                    sources=list(tests[0].sources),
+                    + ("" if limit is None else " The limit is its short-term limit or, where it has none, its IDLH."),
+                    sources=[*tests[0].sources, *([] if limit is None else [limit.source])],
                 )
             )
         return found

@@ -146,7 +146,7 @@ def test_chlorine_demand_of_cyanide(lab: Laboratory):
     rules = {rule.id: rule for rule in lab.rules}
 
     def ratio(rule: str, agent: str, target: str) -> float:
-        reactants = {term.name: term.count for term in rules[rule].does[0].reactants}
+        reactants = {term.term: term.coefficient or 1.0 for term in rules[rule].does[0].reactants}
         return reactants[agent] / reactants[target]
 
     both = ratio("hypochlorite-on-cyanide", "ClO-", "CN-") + ratio("hypochlorite-on-cyanate", "ClO-", "OCN-")
