@@ -5,11 +5,11 @@ from __future__ import annotations
 from collections.abc import Iterable, Iterator
 from itertools import product
 
+from carboy.chemistry.balance import Formula
+from carboy.chemistry.relations import part_of
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.model.knowledge import Index
 from carboy.model.rule import Bound, Rule, Where
-from carboy.chemistry.balance import Formula
-from carboy.chemistry.relations import part_of
 
 _PHASE = {"dissolved": "aq", "solid": "s", "liquid": "l", "gas": "g"}
 

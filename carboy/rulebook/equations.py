@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Iterator, Sequence
 from itertools import islice
 
+from carboy.chemistry.balance import balance, imbalance
 from carboy.errors import RuleError
 from carboy.model.rule import Reaction, ReactionTerm, Rule
-from carboy.chemistry.balance import balance, imbalance
 from carboy.rulebook.composition import Composition
 from carboy.rulebook.problems import Problem
 

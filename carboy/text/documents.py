@@ -84,8 +84,8 @@ _NULLS = ("", "~", "null", "Null", "NULL")
 
 def read_yaml(text: str, file: str = "") -> Node:
     """The tree of a YAML text. Raises InputError with the place."""
-    from ruamel.yaml import YAML  # noqa: PLC0415  (only case files pay for it)
-    from ruamel.yaml.error import YAMLError  # noqa: PLC0415
+    from ruamel.yaml import YAML
+    from ruamel.yaml.error import YAMLError
 
     text = text.removeprefix("\ufeff")
     if len(text) > MOST_CHARACTERS:

@@ -90,7 +90,7 @@ def passage_of(text: str | Passage, file: str = "") -> Passage:
 
 def closest(word: str, known: Iterable[str], count: int = 3, cutoff: float = 60.0) -> tuple[str, ...]:
     """The words of ``known`` most like ``word``, best first."""
-    from rapidfuzz import fuzz, process  # noqa: PLC0415  (only errors pay for it)
+    from rapidfuzz import fuzz, process
 
     folded: dict[str, str] = {}
     for entry in known:

@@ -42,7 +42,8 @@ from carboy.text.units import read_strength_unit, read_unit, refuse_unit, unit_w
 class NameMatch(Protocol):
     """What a name was found to mean.
 
-    ``kind`` is "substance", "material", "salt" (of known ions; ``id`` is their sum) or another; ``extra_water`` the water of crystallisation beyond that of the
+    ``kind`` is "substance", "material", "salt" (of known ions; ``id`` is their sum) or another; ``extra_water`` the water of
+    crystallisation beyond that of the
     thing (mol per mol); ``dropped`` the words that were passed over to find it ("powder", "solution").
     """
 

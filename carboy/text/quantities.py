@@ -77,7 +77,7 @@ def begins_quantity(passage: Passage, at: int, end: int | None = None) -> bool:
     return read_number(passage, where, end) is not None
 
 
-def read_quantity(  # noqa: PLR0913  (what is read, and how strictly)
+def read_quantity(
     passage: Passage,
     at: int,
     end: int,
