@@ -136,10 +136,14 @@ def test_a_harmless_unlisted_structure_raises_nothing() -> None:
     assert report.verdict == "no objection"
 
 
-def test_an_acid_chloride_unlisted_meets_water() -> None:
-    listed = LAB.combine(("10 mL of propionyl chloride", "100 mL of water"))
-    unlisted = LAB.combine(("10 mL of SMILES CCCCCC(=O)Cl", "100 mL of water"))
-    assert listed.verdict == unlisted.verdict == "refuse"
+def test_an_unlisted_acid_chloride_meets_water_as_a_listed_one_does() -> None:
+    def found(portion: str) -> set[tuple[str, str]]:
+        report = LAB.combine((portion, "100 mL of water"))
+        return {(one.kind, rule) for one in report.findings for rule in one.rules}
+
+    listed = found("0.1 mol of propionyl chloride")
+    assert ("toxic-gas", "water-on-acid-chloride") in listed
+    assert found("0.1 mol of SMILES CCCCCC(=O)Cl") == listed
 
 
 def test_nothing_stays_behind_in_the_laboratory() -> None:
