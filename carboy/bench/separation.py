@@ -32,7 +32,8 @@ def separated(
             solid[token] = amount
     retained = (LIQUID_IN_CAKE if retained_mL_per_g is None else retained_mL_per_g) * grams
     kept = np.clip(retained / 1000 / np.maximum(content.volume_L, 1e-9), 0.0, _MOST_KEPT)
-    liquid = {token: amount - solid.get(token, 0.0) for token, amount in content.amounts.items()}
+    # a component may be in the solids alone: protons that a hydroxide has given up count even where the liquid's own total is nil
+    liquid = {token: content.total(token) - solid.get(token, 0.0) for token in {**content.amounts, **solid}}
     liquid = {token: value if token == PROTON else np.maximum(value, 0.0) for token, value in liquid.items()}
     loose = np.maximum(content.mass_g - grams, 0.0)
     clear = {token: value * (1 - kept) + passes * solid.get(token, 0.0) for token, value in liquid.items()}

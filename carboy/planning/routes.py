@@ -8,7 +8,6 @@ from io import StringIO
 from typing import Any
 
 import numpy as np
-from ruamel.yaml import YAML
 
 from carboy.bench.walk import Walk
 from carboy.chemistry.mixture import TRACE, Mixture
@@ -343,6 +342,8 @@ def _worth_telling(token: str, lab: Vetter) -> bool:
 
 
 def _yaml(mapping: dict[str, Any]) -> str:
+    from ruamel.yaml import YAML  # only a route that is written out needs it
+
     writer = YAML()
     writer.width = 120
     text = StringIO()

@@ -412,3 +412,22 @@ def test_a_vessel_without_a_size_holds_twice_the_content_and_says_so() -> None:
 def test_what_cannot_be_done_is_an_input_error(steps: list[Any]) -> None:
     with pytest.raises(InputError):
         follow(steps, {"tank": {"volume": "5 L"}, "jug": {"volume": "5 L"}}, bottles={"rinse": "1 L of water"})
+
+
+def test_filtering_leaves_the_pH_of_the_liquid() -> None:
+    # basic lead carbonate takes hydroxide with it; the liquid that runs off is the liquid that stood over it
+    lab = laboratory()
+    plan = {
+        "title": "Lead by soda",
+        "vessels": {"tank": {"volume": "3 L"}},
+        "steps": [
+            {"add": "1 L of 0.01 M lead nitrate"},
+            {"add": "1.484 g of sodium carbonate"},
+            {"filter": "tank", "cake": "cake", "filtrate": "jug"},
+        ],
+    }
+    report = lab.vet(case_from_mapping(plan, lab.names))
+    before, after = report.steps[1].pH, report.steps[2].pH
+    assert before is not None
+    assert after is not None
+    assert after == pytest.approx(before, abs=0.02)
