@@ -27,17 +27,6 @@ carboy kb check --kb my/kb --rules my/rules
 Problems stand as file:line: what is wrong. Exit status: 0 sound, 1 errors."""
 
 
-COVERAGE_HELP = """What do the graph and the rules leave uncovered? Classes that no rule or container asks for, substances without a class,
-gases without a Henry constant, substances without a CAS number; with --run also the rules that no shipped case fires.
-
-\b
-carboy kb coverage
-carboy kb coverage --run            carries out the shipped cases (a minute or so)
-carboy kb coverage --run --examples and every fires line of the rules (minutes)
-
-A gap is not always a fault. Exit status: 0."""
-
-
 @app.callback()
 def _group() -> None:
     """Check the knowledge graph and the rules."""
@@ -81,44 +70,6 @@ def check(
         write("rules: they cannot be read")
         raise typer.Exit(Status.OBJECTION) from None
     raise typer.Exit(_check_rules(book, index, rule or [], quick=quick))
-
-
-@app.command("coverage", help=COVERAGE_HELP)
-def coverage_command(
-    run: Annotated[
-        bool, typer.Option("--run", help="Carry out the shipped cases and list rules that none fires.")
-    ] = False,
-    examples: Annotated[bool, typer.Option("--examples", help="With --run: the fires lines of the rules too.")] = False,
-    json: Annotated[bool, typer.Option("--json", help="Print one JSON object.")] = False,
-) -> None:
-    from dataclasses import asdict
-
-    from carboy.cli.cases import case_files
-    from carboy.datafiles import data_dir
-    from carboy.rulebook.coverage import coverage, rules_fired
-    from carboy.text.cases import read_case
-    from carboy.vetting import laboratory
-
-    lab = laboratory()
-    fired = None
-    if run:
-        plans = [read_case(file, lab.names) for file in case_files([data_dir("cases")])]
-        with Progress("case or example") as progress:
-            fired = rules_fired(lab, plans, examples=examples, progress=progress)
-    gaps = asdict(coverage(lab.index, lab.rules, fired))
-    if json:
-        from msgspec.json import encode, format
-
-        write(format(encode(gaps), indent=2).decode())
-        return
-    for key, found in gaps.items():
-        title = key.replace("_", " ").replace("cas", "CAS").replace("henry", "Henry")
-        if found is None:
-            write(f"{title}: not asked; --run carries out the cases")
-            continue
-        write(f"{title}: {len(found)}")
-        for one in found:
-            write(f"  {one}")
 
 
 COVERAGE_HELP = """What do the graph and the rules leave uncovered? Classes that no rule asks for, substances that no rule can bind,

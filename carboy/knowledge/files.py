@@ -19,7 +19,17 @@ _PACKAGE = Path(__file__).resolve().parent.parent
 _COMPILING_CODE = (
     *(
         f"knowledge/{name}.py"
-        for name in ("cas", "compile", "equilibria", "folding", "loading", "naming", "structures", "treatments", "vocabulary")
+        for name in (
+            "cas",
+            "compile",
+            "equilibria",
+            "folding",
+            "loading",
+            "naming",
+            "structures",
+            "treatments",
+            "vocabulary",
+        )
     ),
     "text/formulas.py",
     "model/knowledge.py",

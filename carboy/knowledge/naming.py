@@ -97,9 +97,7 @@ def add_ions(
     return table.clashes
 
 
-def _add_formulas(
-    table: _Table, substances: Mapping[str, Substance], structures: Mapping[str, Iterable[str]]
-) -> None:
+def _add_formulas(table: _Table, substances: Mapping[str, Substance], structures: Mapping[str, Iterable[str]]) -> None:
     """Formulas of substances that no name has taken; of several with one formula the plain one (zinc, not zinc
     powder) or none.
     """

@@ -94,8 +94,7 @@ class SaltReader:
             return ()
         if " " not in text.strip() and written[:1] in {*_OPEN, *_CAPITALS} and is_formula(written):
             return self._by_formula(written)
-        named = self._by_name(text)
-        return (named,) if named else ()
+        return self._by_name(text)
 
     def name(self, salt: Salt) -> str:
         """Its systematic name, or its formula if an ion of it has no name."""
@@ -216,28 +215,34 @@ class SaltReader:
 
     # --- names
 
-    def _by_name(self, text: str) -> Salt | None:
-        """Cation and anion by their names. The balance of charge gives their numbers; a prefix must agree with it."""
+    def _by_name(self, text: str) -> tuple[Salt, ...]:
+        """Cation and anion by their names. The balance of charge gives their numbers; a prefix must agree with it. A metal
+        whose charge is left open has a reading for each of its ions.
+        """
         words = text.split()
         if not 2 <= len(words) <= 6:
-            return None
-        found = set()
+            return ()
+        found: dict[tuple[str, int, str, int], None] = {}
         for cut in range(1, len(words)):
             anion = self._ion(" ".join(words[cut:]), negative=True)
             if anion is None:
                 continue
             for first, times in _without_prefix(" ".join(words[:cut])):
-                cation = self._ion(first, negative=False)
-                if cation is None:
-                    continue
-                plus, minus = self.index.species[cation].charge, -self.index.species[anion].charge
-                shared = gcd(plus, minus)
-                if times is None or times == minus // shared:
-                    found.add((cation, minus // shared, anion, plus // shared))
-        if len(found) != 1:
-            return None
-        cation, cations, anion, anions = found.pop()
-        return Salt(((cation, float(cations)), (anion, float(anions))))
+                known = self._ion(first, negative=False)
+                for cation in self._of_element(first) if known is None else (known,):
+                    plus, minus = self.index.species[cation].charge, -self.index.species[anion].charge
+                    shared = gcd(plus, minus)
+                    if times is None or times == minus // shared:
+                        found[cation, minus // shared, anion, plus // shared] = None
+        return tuple(
+            Salt(((cation, float(cations)), (anion, float(anions)))) for cation, cations, anion, anions in found
+        )
+
+    def _of_element(self, name: str) -> tuple[str, ...]:
+        """The cations that an element may be where several are known and its charge is not said."""
+        folded = fold(name)
+        ions = tuple(self._ions[key] for numeral in _ROMAN if (key := f"{folded}<{numeral}>") in self._ions)
+        return ions if len(ions) > 1 else ()
 
     def _ion(self, name: str, *, negative: bool) -> str | None:
         """The token of a named ion of this sign; the number of a charge may stand with an element that has one charge only."""

@@ -47,7 +47,9 @@ def _check_structures(facts: Facts, index: Index) -> list[Problem]:
         if structure.charge:
             problems.append(node.problem(f":smiles {item.smiles} has a charge of {structure.charge:+d}"))
         if structure.atoms != item.atoms:
-            problems.append(node.problem(f":smiles {item.smiles} is {structure.formula}, but :formula is {item.formula}"))
+            problems.append(
+                node.problem(f":smiles {item.smiles} is {structure.formula}, but :formula is {item.formula}")
+            )
         stated = tuple(key for key in item.classes if key not in item.derived)
         for key in patterns.unfounded(stated, patterns.classes_of(item.smiles)):
             problems.append(node.problem(f"is stated to be {key}, which its structure {item.smiles} does not show"))

@@ -168,6 +168,11 @@ def test_an_ambiguous_salt_is_asked_back() -> None:
     assert {"sodium butyrate", "sodium isobutyrate"} <= set(NAMES.suggest("NaC4H7O2", 4))
 
 
+def test_a_metal_whose_charge_is_left_open_is_asked_back() -> None:
+    assert NAMES.resolve("iron chlorate").kind == "unrecognised"
+    assert NAMES.suggest("iron chlorate", 2) == ("iron(II) chlorate", "iron(III) chlorate")
+
+
 def test_an_unlisted_salt_is_vetted_and_said_to_be_one() -> None:
     report = Laboratory(INDEX).combine(("5 g of NaHSe", "100 mL of 2 M hydrochloric acid"))
     assert report.verdict == "refuse"

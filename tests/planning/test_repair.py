@@ -45,6 +45,7 @@ REFUSED = (
 )
 
 
+@pytest.mark.long
 @pytest.mark.parametrize("stem", REFUSED)
 def test_each_offer_is_clear_when_vetted_by_itself(stem):
     other = Laboratory(laboratory().index, laboratory().rules)
@@ -65,6 +66,7 @@ def test_each_offer_is_clear_when_vetted_by_itself(stem):
             assert new.met or not old.met
 
 
+@pytest.mark.long
 def test_sulfide_waits_for_the_neutralising():
     first = mended("mercury-sulfide-before-neutralising")[0]
     poured = [step.portion.text if step.portion else step.source for step in first.case.steps]
@@ -72,6 +74,7 @@ def test_sulfide_waits_for_the_neutralising():
     assert len(first.changes) == 1
 
 
+@pytest.mark.long
 def test_base_is_offered_before_the_sulfide_too():
     lab = laboratory()
     bases = {one.substance for one in lab.index.repair_reagents if one.serves == "base"}
@@ -85,6 +88,7 @@ def test_base_is_offered_before_the_sulfide_too():
     assert any(adds_base(offer) for offer in mended("mercury-sulfide-before-neutralising"))
 
 
+@pytest.mark.long
 def test_polish_comes_after_the_filter_and_reaches_the_goal():
     first = mended("mercury-polish-on-the-sludge")[0]
     filtering = next(place for place, step in enumerate(first.case.steps) if isinstance(step, Filter))
@@ -110,12 +114,14 @@ def test_acid_goes_into_the_water():
     assert not any(offer.apart for offer in mended("water-onto-sulfuric-acid"))  # water needs no waste stream
 
 
+@pytest.mark.long
 def test_fast_bicarbonate_goes_in_slowly_or_into_a_larger_vessel():
     offers = mended("acid-neutralised-at-once")
     assert any(offer.case.steps[1].over.low > 60.0 for offer in offers if not offer.apart)
     assert any(offer.case.vessels[0].volume.low > 20.0 for offer in offers)
 
 
+@pytest.mark.long
 def test_azide_and_lead_are_only_kept_apart():
     offers = mended("azide-and-lead-rests")
     assert [bool(offer.apart) for offer in offers] == [True]
@@ -123,6 +129,7 @@ def test_azide_and_lead_are_only_kept_apart():
     assert "labelled bottle" in offers[0].apart
 
 
+@pytest.mark.long
 def test_bleach_and_ammonia_never_meet_as_they_are():
     """Thinned, cooled or slowed bleach makes the same chloramine: it is taken away first, or kept out."""
     for offer in mended("bleach-and-ammonia"):
@@ -142,6 +149,7 @@ def test_nothing_is_mended_where_nothing_is_wrong():
     assert mended("unrecognised-bottle") == []
 
 
+@pytest.mark.long
 def test_bottles_poured_together_are_mended_with_what_standing_does():
     lab = laboratory()
     offers = lab.mend_together(("500 mL of 1 M hydrochloric acid", "200 mL of 1 M sodium thiosulfate"))
@@ -151,6 +159,7 @@ def test_bottles_poured_together_are_mended_with_what_standing_does():
         assert [one for one in report.findings if one.signal == "danger"] == []
 
 
+@pytest.mark.long
 def test_smallest_change_comes_first():
     for stem in REFUSED:
         offers = [offer for offer in mended(stem) if not offer.apart]

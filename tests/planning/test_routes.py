@@ -71,6 +71,7 @@ def additions(route: Route, token: str, lab: Laboratory, treatment: str = "") ->
     return total
 
 
+@pytest.mark.long
 @pytest.mark.parametrize(("waste", "treatment"), WASTES.items())
 def test_each_route_is_vetted_again_by_an_independent_call(waste: str, treatment: str):
     report = treated(waste)
@@ -86,6 +87,7 @@ def test_each_route_is_vetted_again_by_an_independent_call(waste: str, treatment
         assert len(again.steps) == len(route.steps)
 
 
+@pytest.mark.long
 @pytest.mark.parametrize("waste", [MERCURY, CYANIDE])
 def test_the_last_liquid_holds_no_hazard_that_must_go(waste: str, lab: Laboratory):
     for route in treated(waste).routes:
@@ -94,6 +96,7 @@ def test_the_last_liquid_holds_no_hazard_that_must_go(waste: str, lab: Laborator
         assert not hazards_of(walk.vessels[last].content, lab.stock) & must_go(lab.index)
 
 
+@pytest.mark.long
 def test_sulfide_comes_after_the_acid_is_gone(lab: Laboratory):
     for route in treated(MERCURY).routes:
         for before, step in zip(route.steps, route.steps[1:], strict=False):
@@ -111,6 +114,7 @@ def test_acid_goes_into_water_and_not_the_other_way(lab: Laboratory):
 # --- published figures ------------------------------------------------------------------------------------------------
 
 
+@pytest.mark.long
 def test_sulfide_is_dosed_one_to_one_with_mercury(lab: Laboratory):
     """HgS: one sulfide a mercury(II), 1.160 g of HgS per g of Hg (formula masses; issue 5 names the figure)."""
     route = route_of(MERCURY, "metals-as-sulfide")
@@ -122,6 +126,7 @@ def test_sulfide_is_dosed_one_to_one_with_mercury(lab: Laboratory):
     assert sludge.solids_g["HgS"][0] / grams == pytest.approx(1.160, abs=0.001)
 
 
+@pytest.mark.long
 def test_bisulfite_is_dosed_three_to_two_with_chromium(lab: Laboratory):
     """2 Cr(VI) : 3 bisulfite (Patterson, Industrial Wastewater Treatment Technology, from memory)."""
     route = route_of(CHROMATE, "chromate-with-bisulfite")
@@ -134,6 +139,7 @@ def test_bisulfite_is_dosed_three_to_two_with_chromium(lab: Laboratory):
     )
 
 
+@pytest.mark.long
 def test_chlorine_demand_of_cyanide(lab: Laboratory):
     """2.73 g Cl2 per g CN to cyanate and 6.82 to nitrogen (US EPA, Managing Cyanide in Metal Finishing; Patterson; from memory).
     The first is what the route doses, the second follows from the rules that the engine goes by."""
@@ -162,6 +168,7 @@ def test_bicarbonate_per_acid(lab: Laboratory):
     assert 1.0 <= additions(route, "CO3-2", lab) / acid < 1.1
 
 
+@pytest.mark.long
 def test_peroxide_per_sulfide(lab: Laboratory):
     """Four peroxide a sulfide in alkali: 4.0 g of H2O2 per g of H2S (136.06 / 34.08; common practice of sulfide control)."""
     waste = "1 L of 0.1 M sodium sulfide"
@@ -205,6 +212,7 @@ def test_a_strength_left_open_asks_for_a_measurement():
     assert "Measure it" in " ".join(report.reasons)
 
 
+@pytest.mark.long
 def test_uptake_on_iron_hydroxide_is_beyond_the_calculation():
     report = treated("1 L of 0.01 M sodium arsenate")
     assert report.outcome == "cannot say"
@@ -216,6 +224,7 @@ def test_salt_water_needs_nothing():
     assert treated("1 L of 0.1 M sodium chloride").outcome == "nothing to treat"
 
 
+@pytest.mark.long
 def test_a_limit_of_the_user_takes_the_place_of_the_level_of_the_graph(lab: Laboratory):
     report = carboy.treat(MERCURY, "dissolved mercury below 0.05 mg/L")
     for route in report.routes:
@@ -224,6 +233,7 @@ def test_a_limit_of_the_user_takes_the_place_of_the_level_of_the_graph(lab: Labo
         assert not any("0.2 mg/L" in goal for goal in goals)
 
 
+@pytest.mark.long
 def test_an_aim_that_cannot_be_reached_gives_no_route():
     report = carboy.treat("1 L of (0.01 M lead nitrate + 0.1 M nitric acid)", "dissolved lead below 1e-12 mg/L")
     assert report.outcome == "no sound treatment"
@@ -239,6 +249,7 @@ def test_bad_wastes_give_a_sentence(text: str):
 # --- the search -------------------------------------------------------------------------------------------------------
 
 
+@pytest.mark.long
 def test_acid_is_never_offered_while_cyanide_or_sulfide_stands(lab: Laboratory):
     lowering = [item for item in lab.index.treatments.values() if any(stage.action == "lower" for stage in item.stages)]
     assert lowering
@@ -247,6 +258,7 @@ def test_acid_is_never_offered_while_cyanide_or_sulfide_stands(lab: Laboratory):
             assert not applies(treatment, frozenset({hazard, *treatment.takes}) - {""} | {hazard})
 
 
+@pytest.mark.long
 def test_oxidisers_and_sulfide_are_not_brought_together(lab: Laboratory):
     for key in ("metals-as-sulfide", "metals-as-sulfide-in-hydroxide"):
         for oxidiser in ("hypochlorite", "permanganate", "peroxide", "chromium-vi"):
