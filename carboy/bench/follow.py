@@ -16,7 +16,7 @@ from carboy.reasoning.firing import Firing, Reactor
 
 _FINE = 41  # points of a path while there are few lanes
 _COARSE = 11
-_MANY = 12  # lanes of ranges above which the path is followed more coarsely
+_MANY = 21  # lanes of ranges above which the path is followed more coarsely
 _WATER_TO_DISSOLVE = (
     3.0  # mol of water that takes up one mol of salt or base with its heat; common practice, the order of a hydrate
 )

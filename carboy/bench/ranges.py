@@ -11,7 +11,7 @@ from carboy.chemistry.mixture import Array
 MOST_FULL = 4  # with up to four ranges every corner is a lane, and points between the ends as well
 _STEPS = 40  # a range runs from 0 to 40, the nominal value lies at 20
 _MIDDLE = 20
-_GRID = {1: 11, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may lie between the ends
+_GRID = {1: 21, 2: 5, 3: 3, 4: 2}  # points along each range: a worst case may lie between the ends
 _ALONE = (0, 10, 30, 40)  # with many ranges, where each is tried with the others nominal
 SAMPLED_CORNERS = 12
 WIDE = 4.0  # ends further apart than this have the points between them in equal ratios

@@ -141,7 +141,7 @@ def test_a_range_of_decades_has_a_point_in_every_decade() -> None:
     narrow = Ranges()
     narrow.draw("volume", 1.0, 2.0)
     narrow.fix()
-    assert np.sort(narrow.draw("volume", 1.0, 2.0)) == pytest.approx(np.linspace(1.0, 2.0, 11))
+    assert np.sort(narrow.draw("volume", 1.0, 2.0)) == pytest.approx(np.linspace(1.0, 2.0, 21))
 
 
 # --- in part, and what to measure -----------------------------------------------------------------------------------------
