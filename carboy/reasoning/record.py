@@ -121,17 +121,21 @@ class Record:
         A way holds every label that the event needs through one choice of its events, so it is a small tree written in order:
         causes before effects.
         """
-        return [[self._as_step(step) for step in steps] for _, steps in self._ways(node, frozenset())]
+        return [[self._as_step(step) for step in steps] for _, steps in self._ways(node, frozenset(), {})]
 
-    def _ways(self, node: Node, above: frozenset[Node]) -> list[tuple[float, tuple[Node, ...]]]:
+    def _ways(
+        self, node: Node, above: frozenset[Node], known: dict[Node, list[tuple[float, tuple[Node, ...]]]]
+    ) -> list[tuple[float, tuple[Node, ...]]]:
         """Ways to an event with the mol that its own suppliers brought, the weightiest first; none through an event that is on the way."""
+        if node in known:
+            return known[node]
         by_token: list[list[tuple[float, tuple[Node, ...]]]] = []
         for suppliers in self._causes[node].values():
             options = [
                 (weight, steps)
                 for source, weight in suppliers.items()
                 if source not in above
-                for _, steps in self._ways(source, above | {node})
+                for _, steps in self._ways(source, above | {node}, known)
             ]
             if options:
                 by_token.append(sorted(options, key=lambda option: -option[0])[:MOST_PATHS])
@@ -141,7 +145,8 @@ class Record:
             weight = sum(share for share, _ in chosen)
             ways[(*steps, node)] = max(ways.get((*steps, node), 0.0), weight)
         ordered = sorted(ways.items(), key=lambda way: (-way[1], len(way[0])))
-        return [(weight, steps) for steps, weight in ordered[:MOST_PATHS]]
+        known[node] = [(weight, steps) for steps, weight in ordered[:MOST_PATHS]]
+        return known[node]
 
     def _as_step(self, node: Node) -> PathStep:
         event = self._events[node]
