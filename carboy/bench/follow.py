@@ -169,11 +169,16 @@ def _names(source: Mixture) -> list[str]:
 def _wetted(vessel: Mixture, dose: Mixture) -> Array:
     """Share of what was dry that the water at hand can take up, ``[lanes]``: the first drops on a heap do not dissolve the heap.
 
+    All of it where there is no water to speak of: two dry solids lie side by side, and a neat liquid meets the whole of what it wets.
     A salt of known solubility dissolves to saturation, and with as much acid or base as there is beside it; anything else takes
     _WATER_TO_DISSOLVE mol of water per mol.
     """
     needed = np.zeros(vessel.lanes)
     water = np.zeros(vessel.lanes)
+    dry = [part for part in (vessel, dose) if part.neat]
+    solids = all(part.stock.index.substances[name].state == "s" for part in dry for name in part.neat)
+    if len(dry) != 1 or not solids:
+        return np.ones(vessel.lanes)
     for part, other in ((vessel, dose), (dose, vessel)):
         own = np.zeros(part.lanes)  # water that a hydrate or base holds in itself is not there to dissolve it
         for name in part.neat:
