@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import Any, Literal
+from typing import Literal
 
 from carboy.model.report import Finding, Pair, ReportPart, StepReport, Verdict
 
@@ -94,11 +94,3 @@ class DoseReport(ReportPart):
     assumptions: list[str] = []
     questions: list[str] = []
     cautions: list[str] = []
-
-    def model_dump(self, **options: Any) -> dict[str, Any]:
-        """As pydantic's, with the contract's own key names."""
-        return super().model_dump(**{"by_alias": True, **options})
-
-    def model_dump_json(self, **options: Any) -> str:
-        """As pydantic's, with the contract's own key names."""
-        return super().model_dump_json(**{"by_alias": True, **options})

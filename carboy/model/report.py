@@ -19,6 +19,14 @@ class ReportPart(BaseModel):
 
     model_config = ConfigDict(populate_by_name=True, extra="forbid", ser_json_inf_nan="null")
 
+    def model_dump(self, **options: Any) -> dict[str, Any]:
+        """As pydantic's, with the contract's own key names."""
+        return super().model_dump(**{"by_alias": True, **options})
+
+    def model_dump_json(self, **options: Any) -> str:
+        """As pydantic's, with the contract's own key names."""
+        return super().model_dump_json(**{"by_alias": True, **options})
+
 
 class PathStep(ReportPart):
     """One link of a reaction path: the rule or equilibrium, its equation, what went in and what came out. ``from`` words are labels or formulas."""
@@ -136,11 +144,3 @@ class Report(ReportPart):
     assumptions: list[str] = []
     questions: list[str] = []
     cautions: list[str] = []
-
-    def model_dump(self, **options: Any) -> dict[str, Any]:
-        """As pydantic's, with the contract's own key names."""
-        return super().model_dump(**{"by_alias": True, **options})
-
-    def model_dump_json(self, **options: Any) -> str:
-        """As pydantic's, with the contract's own key names."""
-        return super().model_dump_json(**{"by_alias": True, **options})
