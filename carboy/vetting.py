@@ -22,20 +22,17 @@ from carboy.hazards.steps import step_report
 from carboy.knowledge.index import load_index
 from carboy.knowledge.names import Names
 from carboy.knowledge.unlisted import admit
-from carboy.model.dosing import DoseReport
 from carboy.model.knowledge import Index
 from carboy.model.plan import Case, Interval, Setting, VesselSpec
 from carboy.model.report import Finding, GoalReport, Report, StepReport, Verdict
 from carboy.model.rule import Rule
-from carboy.model.treatment import TreatReport
-from carboy.planning.dosing import dose_report
-from carboy.planning.hold_points import HoldPoints
-from carboy.planning.routes import find_routes
 from carboy.reasoning.firing import Reactor
 from carboy.rulebook.book import load_rules
 from carboy.text.cases import combine_case, read_case
 
-if TYPE_CHECKING:
+if TYPE_CHECKING:  # planning is brought in by the calls that plan: a check of two bottles goes without it
+    from carboy.model.dosing import DoseReport
+    from carboy.model.treatment import TreatReport
     from carboy.planning.repair import Mending
 
 CAUTIONS = (
@@ -115,6 +112,8 @@ class Laboratory:
         outcome = lab._outcome(ready, progress)
         report = lab._report(outcome, notes)
         if hold_points:
+            from carboy.planning.hold_points import HoldPoints
+
             report.hold_points = HoldPoints(lab.judge, lab.reactor, lab.stock).of(outcome.walk)
         return report
 
@@ -185,7 +184,7 @@ class Laboratory:
 
     def _report(self, outcome: Outcome, notes: tuple[str, ...] = ()) -> Report:
         walk, findings = outcome.walk, outcome.findings
-        unsettled = [note for trace in walk.steps for note in trace.notes if "converge" in note]
+        unsettled = any(trace.unsettled for trace in walk.steps)
         assumptions = [
             *notes,
             *walk.assumptions,
@@ -196,7 +195,7 @@ class Laboratory:
         questions = [*walk.questions, *_questions(outcome.leverage)]
         return Report(
             title=walk.case.title,
-            verdict=verdict_of(findings, bool(walk.unrecognised) or bool(unsettled)),
+            verdict=verdict_of(findings, bool(walk.unrecognised) or unsettled),
             findings=findings,
             steps=outcome.steps,
             goals=outcome.goals,
@@ -319,6 +318,8 @@ def dose(
 
     Raises InputError where one of them cannot be read.
     """
+    from carboy.planning.dosing import dose_report
+
     return dose_report(laboratory(), waste, reagent, aim, setting, vessel, over)
 
 
@@ -338,4 +339,6 @@ def treat(waste: str, aim: str | None = None) -> TreatReport:
 
     Raises InputError where the waste or the aim cannot be read.
     """
+    from carboy.planning.routes import find_routes
+
     return find_routes(laboratory(), waste, aim)

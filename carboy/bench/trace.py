@@ -76,3 +76,10 @@ class StepTrace:
     sludge: Mixture | None = None  # a filter's cake
     left_alone: tuple[Mixture, ...] = ()  # what was poured, each left standing by itself: what storage is compared with
     left_firings: tuple[Firing, ...] = ()  # what would go on in each of them by itself
+
+    @property
+    def unsettled(self) -> bool:
+        """Whether some state of the step, along it, at contact or in storage, has no converged speciation in some lane."""
+        courses = (self.path, self.contact, self.storage)
+        mixtures = [self.after, *(course.mixture for course in courses if course is not None)]
+        return not all(bool(np.all(mixture.converged)) for mixture in mixtures)

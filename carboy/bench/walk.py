@@ -412,7 +412,7 @@ class Walker:
         for token, amount in after.aqueous.items():
             if self.stock.classes.get(token) and np.any(amount > TRACE):
                 state.earlier[token] = self.stock.classes[token]
-        if not np.all(after.converged):
+        if trace.unsettled:
             trace.notes.append("The equilibrium of this step did not converge over the whole of the stated ranges.")
 
     def _air(self, state: VesselState, content: Mixture, also_L: Array | float = 0.0) -> Array:
