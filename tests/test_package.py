@@ -31,7 +31,8 @@ def test_a_check_from_the_cache_imports_no_parser_of_knowledge_or_rules():
     """A one-off check must not pay for Turtle, SHACL, YAML or the grammar."""
     code = (
         "import sys, carboy; carboy.combine('10 mL of water', '10 mL of water'); "
-        "print(*sorted({m.split('.')[0] for m in sys.modules} & {'rdflib', 'pyshacl', 'pyparsing', 'ruamel', 'rapidfuzz', 'rich', 'typer'}))"
+        "print(*sorted({m.split('.')[0] for m in sys.modules} & {'rdflib', 'pyshacl', 'pyparsing', 'ruamel', 'rapidfuzz', "
+        "'rich', 'typer', 'networkx', 'rdkit'}))"
     )
     carboy.combine("10 mL of water", "10 mL of water")  # fills the cache
     ran = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
