@@ -163,8 +163,10 @@ def class_drafts(
             flag = raised.flag
             if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
                 continue
-            if flag.kind in ("heat", "foam", "remobilised") or (where == "contact" and flag.kind in _END_STATE_ONLY):
+            if flag.kind in ("foam", "remobilised") or (where == "contact" and flag.kind in _END_STATE_ONLY):
                 continue
+            if flag.kind == "heat" and not _heat_unknown(raised, course, stock):
+                continue  # it was computed, and is too little for a line
             if flag.kind == "pressure" and (
                 trace.cover != "sealed" or where == "contact" or any(one.kind == "pressure" for one in computed)
             ):
@@ -185,6 +187,12 @@ def class_drafts(
             if known is None or (known.where == where and draft.level > known.level):
                 drafts[key] = draft
     return list(drafts.values())
+
+
+def _heat_unknown(raised: Raised, course: Course, stock: ChemicalStock) -> bool:
+    """Whether the graph lacks the very enthalpy that a rule's heat would be computed from: of its reaction, or of what it binds."""
+    names = {name_of(token, stock) for token in raised.bound.values()} | {raised.rule.title}
+    return bool(names.intersection(course.unknown_heat))
 
 
 def named_by(term: str, bound: dict[str, str], stock: ChemicalStock) -> str:
@@ -353,7 +361,7 @@ def _class_draft(
         and float(grams.max()) <= scale["markedly-worse-factor"] * max(stood, 1e-12)
     ):
         levels = np.minimum(levels, NOTE)
-    if where == "contact" and flag.kind not in _ANYWAY_AT_CONTACT:
+    if flag.kind == "heat" or (where == "contact" and flag.kind not in _ANYWAY_AT_CONTACT):
         levels = np.minimum(levels, WARNING)
     moment = flag.moment or rule.moment
     if moment == "storage" and where == "contact":
