@@ -58,12 +58,15 @@ def along(
     start = vessel.repeated(points)
     dose = added.repeated(points).scaled(np.tile(fractions, vessel.lanes))
     wetted = _wetted(start, dose)
-    parts = [part.scaled(wetted) if part.neat else part for part in (start, dose)]
-    together = poured_together(*parts)
+    together = poured_together(*(part.scaled(wetted) if part.neat else part for part in (start, dose)))
     if capacity_L is not None:
         together.headspace_L = np.maximum(np.repeat(capacity_L, points) - together.volume_L, 1e-3)
         together.air_mol = None if air_mol is None else np.repeat(air_mol, points)
-    course = _reacted(together, parts, fractions, reactor, surroundings)
+    shares = (np.ones(start.lanes), np.tile(fractions, vessel.lanes))
+    sources = [
+        (part, share * wetted if part.neat else share) for part, share in zip((vessel, added), shares, strict=True)
+    ]
+    course = _reacted(together, sources, fractions, reactor, surroundings)
     course.dissolved_share = wetted
     return course
 
@@ -98,30 +101,34 @@ def stored(vessel: Mixture, reactor: Reactor, surroundings: Surroundings, slowes
 
 
 def _reacted(
-    together: Mixture, sources: Sequence[Mixture], fractions: Array, reactor: Reactor, surroundings: Surroundings
+    together: Mixture,
+    sources: Sequence[tuple[Mixture, Array]],
+    fractions: Array,
+    reactor: Reactor,
+    surroundings: Surroundings,
 ) -> Course:
-    """React a course and add up its heat."""
+    """React a course and add up its heat. ``sources``: what was poured together, with the share of it that is there, ``[lanes]``."""
     book = heat_book(together.stock)
     mixture, firings = reactor.run(together, surroundings, slowest="minutes")
     before = together.zeros()
     unknown: list[str] = []
     end = len(fractions) - 1  # the nominal range at the end of the addition
     parts: list[tuple[str, float]] = []
-    for source in sources:
+    for source, share in sources:
         if source.amounts:
-            held, missing = _held_by(book, source)
+            whole, missing = _held_by(book, source)
+            held = np.repeat(whole, len(fractions)) * share
             before = before + held
             unknown += missing
-            if source.neat and not missing:
+            if source.neat and not missing and not together.neat:
                 parts.append((f"dissolving {' and '.join(_names(source))}", float(held[end])))
     capacity = np.maximum(book.heat_capacity(together), 1e-6)
     reached = together.temperature_C
     for _ in range(_HEAT_ROUNDS):
         steps, missing = _reaction_heat(book, firings)
         after = book.of_speciation(mixture)
-        heat = sum((kJ for _, kJ in steps), before - after)
-        if together.neat:  # solids side by side: nothing dissolves
-            heat = together.zeros()
+        dissolved = together.zeros() if together.neat else before - after  # side by side nothing dissolves
+        heat = sum((kJ for _, kJ in steps), dissolved)
         warmer = together.temperature_C + heat / capacity
         if float(np.max(warmer - reached)) < _WORTH_A_ROUND:
             reached = warmer
@@ -134,7 +141,7 @@ def _reacted(
         if not more:
             break
     dissolving = sum(share for _, share in parts)
-    parts.append(("dilution, acid and base, complexes, solids and gases", float(before[end] - after[end]) - dissolving))
+    parts.append(("dilution, acid and base, complexes, solids and gases", float(dissolved[end]) - dissolving))
     parts += [(title, float(kJ[end])) for title, kJ in steps if abs(kJ[end]) > 0]
     return Course(
         mixture,

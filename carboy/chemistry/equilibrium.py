@@ -64,6 +64,15 @@ class Solved:
         places = np.arange(self.converged.size)[which]
         return Solved(network=self.network, reasons=[self.reasons[place] for place in places], **cut)
 
+    def followed_by(self, other: Solved) -> Solved:
+        """These lanes and then those of another solution of the same network."""
+        both = {
+            part.name: np.concatenate([getattr(self, part.name), getattr(other, part.name)])
+            for part in fields(self)
+            if part.name not in _NO_LANES
+        }
+        return Solved(network=self.network, reasons=[*self.reasons, *other.reasons], **both)
+
 
 _NO_LANES = ("network", "reasons")
 

@@ -12,7 +12,7 @@ from functools import cached_property
 import numpy as np
 from numpy.typing import NDArray
 
-from carboy.chemistry.equilibrium import Solved, solve
+from carboy.chemistry.equilibrium import Solved
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 
 Array = NDArray[np.float64]
@@ -85,7 +85,7 @@ class Mixture:
         water = np.maximum(
             self.total(WATER), 0.0
         )  # a dry salt that takes up water may ask for more than the first drop brings
-        return solve(network, totals, water, headspace_L=self.headspace_L, start=start)
+        return self.stock.solved_states.solve(network, totals, water, headspace_L=self.headspace_L, start=start)
 
     @property
     def pH(self) -> Array:
@@ -253,7 +253,7 @@ def poured_together(first: Mixture, second: Mixture) -> Mixture:
     """Two contents in one vessel: amounts, volumes and masses add; the temperature is that of the mixed heat capacity (before any heat
     of reaction). Cover and headspace are the first one's and must be set again by the caller."""
     tokens = {**first.amounts, **second.amounts}
-    dry = _dry(first) and _dry(second)
+    dry = _waterless(first) and _waterless(second)
     names = {**first.labelled, **second.labelled}
     mass = first.mass_g + second.mass_g
     heavy = np.where(mass > 0, mass, 1.0)
@@ -271,11 +271,18 @@ def poured_together(first: Mixture, second: Mixture) -> Mixture:
     )
 
 
-def _dry(content: Mixture) -> bool:
-    """Nothing but solids that no water has touched, or nothing at all."""
+def _waterless(content: Mixture) -> bool:
+    """Whether nothing ionises in it: no water has touched it, and it brings no medium of its own. Nothing at all is waterless too."""
     return not content.amounts or (
-        bool(content.neat) and all(content.stock.index.substances[name].state == "s" for name in content.neat)
+        bool(content.neat) and not any(_ionises_by_itself(content.stock, name) for name in content.neat)
     )
+
+
+def _ionises_by_itself(stock: ChemicalStock, substance_id: str) -> bool:
+    """A liquid acid or base meets a salt as it would in water, and so does a gas that is an acid before it finds water."""
+    brought = stock.yield_of(substance_id)
+    state = stock.index.substances[substance_id].state
+    return abs(brought.get(PROTON, 0.0)) > 0 and (state == "l" or (state == "g" and brought.get(WATER, 0.0) >= 0))
 
 
 def empty(stock: ChemicalStock, lanes: int, temperature_C: float) -> Mixture:

@@ -6,6 +6,7 @@ from functools import cached_property
 from typing import Literal
 
 from carboy.chemistry.network import NetworkFactory
+from carboy.chemistry.solved_states import SolvedStates
 from carboy.model.knowledge import Equilibrium, Index, Species
 from carboy.text.formulas import molar_mass
 
@@ -25,6 +26,7 @@ class ChemicalStock:
     def __init__(self, index: Index) -> None:
         self.index = index
         self.networks = NetworkFactory(index.equilibria, index.species)
+        self.solved_states = SolvedStates()
         self.formation: dict[str, Equilibrium] = {item.product: item for item in index.equilibria}
 
     @cached_property

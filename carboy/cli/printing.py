@@ -46,10 +46,12 @@ def printed(
 
 def _near(words: Sequence[str], lab: Laboratory) -> dict[str, tuple[str, ...]]:
     """For each name that was not recognised those that are spelled nearly like it."""
+    named = {word: lab.names.suggest(word) for word in words if word != UNKNOWN}
+    if not named:
+        return {}
     from rapidfuzz.distance import DamerauLevenshtein
 
     def slips(word: str, name: str) -> bool:
         return DamerauLevenshtein.distance(word.casefold(), name.casefold()) <= max(1, len(word) // _LETTERS_A_SLIP)
 
-    named = {word: lab.names.suggest(word) for word in words if word != UNKNOWN}
     return {word: tuple(name for name in found if slips(word, name))[:_MOST_NEAR] for word, found in named.items()}

@@ -18,6 +18,7 @@ from carboy.hazards.workings import dissolved_measure, limit_measure, plain
 from carboy.model.knowledge import Limit
 from carboy.model.report import Measure
 from carboy.model.rule import Bound, Flag, Kind, Present, Rule
+from carboy.reasoning.at_hand import RulesAtHand
 from carboy.reasoning.binding import Binding, Mask, View
 from carboy.reasoning.firing import SPEEDS, Firing
 from carboy.text.formulas import elements, molar_mass
@@ -44,7 +45,7 @@ class Raised:
 
 
 def raised_flags(
-    course: Course, trace: StepTrace, where: str, rules: tuple[Rule, ...], stock: ChemicalStock
+    course: Course, trace: StepTrace, where: str, book: RulesAtHand, stock: ChemicalStock
 ) -> Iterator[Raised]:
     """Every flag that a rule raises in a course."""
     after = View(course.mixture, trace.surroundings)
@@ -52,11 +53,12 @@ def raised_flags(
     fired: dict[str, list[Firing]] = {}
     for firing in course.firings:
         fired.setdefault(firing.rule.id, []).append(firing)
-    for rule in rules:
-        if rule.off or not rule.flags:
+    able = {rule.id for rule in book.of(after, start)}
+    for rule in book.rules:
+        if not (rule.id in fired if rule.does else rule.id in able):
             continue
         if rule.does:
-            for firing in fired.get(rule.id, ()):
+            for firing in fired[rule.id]:
                 for flag in rule.flags:
                     mask = firing.extent > TRACE
                     mask = _and_when(mask, flag, start, firing.bound, rule)
@@ -149,7 +151,7 @@ def _weight_of_firing(flag: Flag, firing: Firing, course: Course, stock: Chemica
 
 
 def class_drafts(
-    trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, scale: Scale, computed: list[Draft]
+    trace: StepTrace, book: RulesAtHand, stock: ChemicalStock, scale: Scale, computed: list[Draft]
 ) -> list[Draft]:
     """Drafts for flags without a computed magnitude; flags with one lend their words to the drafts in ``computed``."""
     drafts: dict[tuple[str, ...], Draft] = {}
@@ -157,9 +159,9 @@ def class_drafts(
     for where, course in courses(trace):
         stored = where == "storage"
         if stored not in stood:
-            stood[stored] = _standing(trace, rules, stock, stored) if trace.added is not None else {}
+            stood[stored] = _standing(trace, book, stock, stored) if trace.added is not None else {}
         standing = stood[stored]
-        for raised in raised_flags(course, trace, where, rules, stock):
+        for raised in raised_flags(course, trace, where, book, stock):
             flag = raised.flag
             if flag.kind in COMPUTED and _lend(raised, where, computed, stock, course):
                 continue
@@ -211,7 +213,7 @@ def _mark(rule: Rule, flag: Flag, bound: dict[str, str]) -> Mark:
     return rule.id, rule.flags.index(flag), tuple(sorted(bound.items()))
 
 
-def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, stored: bool) -> dict[Mark, float]:
+def _standing(trace: StepTrace, book: RulesAtHand, stock: ChemicalStock, stored: bool) -> dict[Mark, float]:
     """Flags that stood already in the vessel or in the bottle, with the grams that weighed them; what each would do if left by itself
     stands whatever its weight."""
     stood: dict[Mark, float] = {
@@ -222,8 +224,8 @@ def _standing(trace: StepTrace, rules: tuple[Rule, ...], stock: ChemicalStock, s
         if mixture is None or not mixture.amounts:
             continue
         view = View(mixture, own)
-        for rule in rules:
-            if rule.off or rule.does:
+        for rule in book.of(view):
+            if rule.does:
                 continue
             for flag in rule.flags:
                 for names, mask, grams, _ in _matches(rule, flag, view, stock):

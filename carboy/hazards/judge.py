@@ -21,6 +21,7 @@ from carboy.model.report import Finding, PathStep, RuleSight, Signal
 from carboy.model.rule import Rule
 from carboy.reasoning.equation import consumed_for
 from carboy.reasoning.firing import SPEEDS
+from carboy.reasoning.at_hand import RulesAtHand
 from carboy.reasoning.record import Node, Record
 
 _SIGNALS: dict[int, Signal] = {1: "note", 2: "warning", 3: "danger"}
@@ -48,7 +49,7 @@ class Judge:
     def __init__(self, stock: ChemicalStock, rules: tuple[Rule, ...]) -> None:
         self.stock = stock
         self.index: Index = stock.index
-        self.rules = rules
+        self.book = RulesAtHand(tuple(rule for rule in rules if rule.flags and not rule.off), stock)
         self.scale = Scale(stock.index)
 
     def judge(self, walk: Walk) -> Judgement:
@@ -88,7 +89,7 @@ class Judge:
             for draft in drafts_of(trace, self.stock, looked_at):
                 draft.thresholds = looked_at.used
                 computed.append(draft)
-        drafts = [*computed, *class_drafts(trace, self.rules, self.stock, self.scale, computed)]
+        drafts = [*computed, *class_drafts(trace, self.book, self.stock, self.scale, computed)]
         if trace.before is None and trace.added is not None:
             # a bottle poured into an empty vessel is what it was; only what it does to the vessel, or in itself at once, is news
             drafts = [draft for draft in drafts if draft.level > NOTE]

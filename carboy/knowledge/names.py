@@ -372,6 +372,8 @@ def _variants(text: str) -> Iterator[tuple[str, list[str]]]:
 def _shortened(text: str, dropped: list[str]) -> Iterator[tuple[str, list[str]]]:
     lower = text.casefold()
     for word in (*_SOLUTION_WORDS, *_FORM_WORDS):
+        if word not in lower:
+            continue
         end = re.search(rf"[\s,]+\(?{re.escape(word)}\)?$", lower)
         if end:
             yield text[: end.start()].rstrip(" ,"), [*dropped, word]

@@ -15,7 +15,7 @@ from carboy.span import Span
 class Frozen(BaseModel):
     """Base of the plan's records."""
 
-    model_config = ConfigDict(frozen=True, extra="forbid", arbitrary_types_allowed=True)
+    model_config = ConfigDict(frozen=True, extra="forbid", arbitrary_types_allowed=True, defer_build=True)
 
 
 class Interval(Frozen):

@@ -17,7 +17,7 @@ Pair = tuple[float, float]
 class ReportPart(BaseModel):
     """Base of the report's records."""
 
-    model_config = ConfigDict(populate_by_name=True, extra="forbid", ser_json_inf_nan="null")
+    model_config = ConfigDict(populate_by_name=True, extra="forbid", ser_json_inf_nan="null", defer_build=True)
 
     def model_dump(self, **options: Any) -> dict[str, Any]:
         """As pydantic's, with the contract's own key names."""

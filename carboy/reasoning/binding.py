@@ -57,6 +57,7 @@ class View:
         for carrier in self.carriers:
             for key in (carrier.token, *carrier.classes):
                 self._by_class.setdefault(key, []).append(carrier)
+        self.keys = frozenset(self._by_class)  # every token and class that is there
 
     def _carriers(self) -> Iterator[Carrier]:
         mixture, classes = self.mixture, self.stock.classes

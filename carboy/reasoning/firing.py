@@ -14,6 +14,7 @@ from carboy.chemistry.roots import bracketed_root
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.errors import RuleError
 from carboy.model.rule import Bound, Condition, Measured, Reaction, ReactionTerm, Rule
+from carboy.reasoning.at_hand import RulesAtHand
 from carboy.reasoning.binding import Binding, Mask, Surroundings, View
 
 SPEEDS = ("at once", "minutes", "hours", "days")
@@ -113,6 +114,11 @@ class Reactor:
         self.stock = stock
         self.least = least
         self.rules = tuple(rule for rule in rules if rule.does and not rule.off)
+        self._places = {rule.id: place for place, rule in enumerate(self.rules)}
+        self._at_hand = {
+            speed: RulesAtHand(tuple(rule for rule in self.rules if rule.speed in SPEEDS[: place + 1]), stock)
+            for place, speed in enumerate(SPEEDS)
+        }
         self._bound: dict[tuple[str, int, tuple[tuple[str, str], ...]], BoundReaction | None] = {}
 
     def run(
@@ -124,16 +130,29 @@ class Reactor:
         """
         record: list[Firing] = list(already)
         for speed in SPEEDS[: SPEEDS.index(slowest) + 1]:
-            rules = [rule for rule in self.rules if SPEEDS.index(rule.speed) <= SPEEDS.index(speed)]
             view = View(mixture, surroundings)
             for _ in range(_ROUNDS):
                 before = len(record)
-                for rule in rules:
-                    view = self._try(rule, view, record)
+                view = self._round(self._at_hand[speed], view, record)
                 if len(record) == before:
                     break
             mixture = view.mixture
         return mixture, record[len(already) :]
+
+    def _round(self, body: RulesAtHand, view: View, record: list[Firing]) -> View:
+        """Every rule once, in order; what an earlier one makes is there for the later ones."""
+        tried = -1
+        while True:
+            for rule in body.of(view):
+                place = self._places[rule.id]
+                if place > tried:
+                    tried = place
+                    after = self._try(rule, view, record)
+                    if after is not view:
+                        view = after
+                        break
+            else:
+                return view
 
     def _try(self, rule: Rule, view: View, record: list[Firing]) -> View:
         """One rule in one vessel; the view after it."""
