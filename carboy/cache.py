@@ -1,4 +1,4 @@
-"""Compiled data between runs: MessagePack of plain records (nothing of it can run), led by a digest of itself.
+"""Compiled data between runs: MessagePack of plain records (nothing of it can run), led by a checksum of itself.
 
 The folder may be deleted at any time; what cannot be read or written is passed over.
 """
@@ -6,9 +6,9 @@ The folder may be deleted at any time; what cannot be read or written is passed 
 from __future__ import annotations
 
 import gc
-import hashlib
 import os
 import tempfile
+import zlib
 from pathlib import Path
 from typing import TypeVar
 
@@ -16,7 +16,7 @@ import msgspec
 
 Record = TypeVar("Record")
 
-_CHECK_SIZE = 16  # bytes of the leading digest
+_CHECK_SIZE = 4  # bytes of the leading checksum, CRC-32: it guards against half-written files, not against people
 _KEPT = 4  # files of one sort kept in the folder
 
 
@@ -42,7 +42,7 @@ def read_cached(sort: str, digest: str, record: type[Record]) -> Record | None:
     except OSError:
         return None
     check, body = content[:_CHECK_SIZE], content[_CHECK_SIZE:]
-    if hashlib.blake2b(body, digest_size=_CHECK_SIZE).digest() != check:
+    if zlib.crc32(body).to_bytes(_CHECK_SIZE, "big") != check:
         return None
     collecting = gc.isenabled()
     gc.disable()  # ten thousand fresh records, none of them garbage
@@ -67,7 +67,7 @@ def write_cached(sort: str, digest: str, record: object) -> None:
         folder.mkdir(parents=True, exist_ok=True)
         with tempfile.NamedTemporaryFile(dir=folder, prefix=f"{sort}-", suffix=".part", delete=False) as file:
             temporary = file.name
-            file.write(hashlib.blake2b(body, digest_size=_CHECK_SIZE).digest() + body)
+            file.write(zlib.crc32(body).to_bytes(_CHECK_SIZE, "big") + body)
         os.replace(temporary, folder / f"{sort}-{digest}.msgpack")
         temporary = ""
         old = sorted(folder.glob(f"{sort}-*.msgpack"), key=lambda item: item.stat().st_mtime, reverse=True)

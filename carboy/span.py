@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from msgspec import Struct
 
 
-@dataclass(frozen=True, slots=True)
-class Span:
+class Span(Struct, frozen=True):
     """Characters ``start`` to ``end`` (0-based, end exclusive) of ``text``, which came from ``file``."""
 
     text: str

@@ -4,6 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 
+from msgspec import Struct
+
 from carboy.bench.make_up import MadeUp
 from carboy.chemistry.mixture import Array, Mixture
 from carboy.model.plan import Interval, Portion, VesselSpec
@@ -30,8 +32,7 @@ class VesselState:
         return bool(self.content.amounts)
 
 
-@dataclass(frozen=True)
-class Pouring:
+class Pouring(Struct, frozen=True):
     """What is poured in one step: its content, the words of its label, how long it takes, and the portion where it comes off a label."""
 
     action: str

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields
-
 import numpy as np
+from msgspec import Struct
 
 from carboy.chemistry.activity import TRUSTED_IONIC_STRENGTH
 from carboy.chemistry.iteration import (
@@ -36,8 +35,7 @@ from carboy.chemistry.mass_action import (
 from carboy.chemistry.network import FloatArray, Network
 
 
-@dataclass(eq=False)
-class Solved:
+class Solved(Struct, eq=False):
     """The outcome of :func:`solve` for L lanes. Where ``converged`` is false the numbers are the last iterate and
     mean nothing.
     """
@@ -60,16 +58,16 @@ class Solved:
 
     def take(self, which: IntArray | BoolArray) -> Solved:
         """These lanes only."""
-        cut = {part.name: getattr(self, part.name)[which] for part in fields(self) if part.name not in _NO_LANES}
+        cut = {name: getattr(self, name)[which] for name in self.__struct_fields__ if name not in _NO_LANES}
         places = np.arange(self.converged.size)[which]
         return Solved(network=self.network, reasons=[self.reasons[place] for place in places], **cut)
 
     def followed_by(self, other: Solved) -> Solved:
         """These lanes and then those of another solution of the same network."""
         both = {
-            part.name: np.concatenate([getattr(self, part.name), getattr(other, part.name)])
-            for part in fields(self)
-            if part.name not in _NO_LANES
+            name: np.concatenate([getattr(self, name), getattr(other, name)])
+            for name in self.__struct_fields__
+            if name not in _NO_LANES
         }
         return Solved(network=self.network, reasons=[*self.reasons, *other.reasons], **both)
 

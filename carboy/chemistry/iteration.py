@@ -14,9 +14,8 @@ components' activities; ``ln`` saturation ratio <= 0 of each solid and ``ln(sum 
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-
 import numpy as np
+from msgspec import Struct
 
 from carboy.chemistry.mass_action import (
     KG_PER_MOL_WATER,
@@ -49,8 +48,7 @@ _SHRINK = 0.05  # of the centring, from turn to turn
 _TIE = 0.02  # of the error of the balances, below which the centring does not go
 
 
-@dataclass(frozen=True)
-class Pace:
+class Pace(Struct, frozen=True):
     """How carefully a solution is approached."""
 
     passes: int  # of the rough start
@@ -303,8 +301,7 @@ def _admit(rows: FloatArray, phases: FloatArray, present: BoolArray, new: int) -
         phases[leaves] = 0.0
 
 
-@dataclass(eq=False)
-class Elimination:
+class Elimination(Struct, eq=False):
     """The phases that are present, solved for one pivot component each (Gauss-Jordan on their small whole
     coefficients).
 

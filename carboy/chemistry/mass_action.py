@@ -7,10 +7,11 @@ further terms beside the aqueous species.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, fields, replace
 from typing import Self
 
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 from numpy.typing import NDArray
 
 from carboy.chemistry import activity
@@ -29,8 +30,7 @@ ABSENT = -1e5  # ln of what is not there
 _CEILING = 60.0  # ln of the largest molality that is evaluated
 
 
-@dataclass(frozen=True, eq=False)
-class Terms:
+class Terms(Struct, frozen=True, eq=False):
     """What all lanes share: J terms (aqueous species, then headspace gases) and M solids over C components."""
 
     nu: FloatArray  # [J, C]
@@ -95,8 +95,7 @@ class Terms:
         )
 
 
-@dataclass(eq=False)
-class Lanes:
+class Lanes(Struct, eq=False):
     """What differs from lane to lane and does not change while solving. K = M + 1: the solids and the gas phase of
     bubbles.
     """
@@ -116,11 +115,10 @@ class Lanes:
 
     def take(self, which: IntArray | BoolArray) -> Lanes:
         """These lanes only."""
-        return Lanes(**{part.name: getattr(self, part.name)[which] for part in fields(self)})
+        return Lanes(**{name: getattr(self, name)[which] for name in self.__struct_fields__})
 
 
-@dataclass(eq=False)
-class State:
+class State(Struct, eq=False):
     """Where the iteration stands."""
 
     x: FloatArray  # [L, C] ln activity of the components
@@ -131,20 +129,19 @@ class State:
 
     def take(self, which: IntArray | BoolArray) -> State:
         """A copy of these lanes."""
-        return State(**{part.name: getattr(self, part.name)[which].copy() for part in fields(self)})
+        return State(**{name: getattr(self, name)[which].copy() for name in self.__struct_fields__})
 
     def put(self, which: IntArray | BoolArray, other: State) -> None:
         """Write ``other`` into these lanes."""
-        for part in fields(self):
-            getattr(self, part.name)[which] = getattr(other, part.name)
+        for name in self.__struct_fields__:
+            getattr(self, name)[which] = getattr(other, name)
 
     def copy(self) -> State:
         """A copy."""
-        return replace(self, **{part.name: getattr(self, part.name).copy() for part in fields(self)})
+        return replace(self, **{name: getattr(self, name).copy() for name in self.__struct_fields__})
 
 
-@dataclass(frozen=True, eq=False)
-class Vessel:
+class Vessel(Struct, frozen=True, eq=False):
     """What stands over the liquid."""
 
     headspace_L: FloatArray | None  # [L]; None is open
@@ -229,8 +226,7 @@ def _pairs(rows: FloatArray) -> FloatArray:
     return np.ascontiguousarray((rows[:, :, None] * rows[:, None, :]).reshape(rows.shape[0], rows.shape[1] ** 2))
 
 
-@dataclass(eq=False)
-class Medium:
+class Medium(Struct, eq=False):
     """Activity corrections of each lane at its ionic strength and sum of molalities; all [L]."""
 
     ion: FloatArray
@@ -251,7 +247,7 @@ class Medium:
 
     def take(self, which: BoolArray) -> Medium:
         """These lanes only."""
-        return Medium(**{part.name: getattr(self, part.name)[which] for part in fields(self)})
+        return Medium(**{name: getattr(self, name)[which] for name in self.__struct_fields__})
 
 
 def ln_constants(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:
@@ -286,8 +282,7 @@ def ln_saturation(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> F
     return lanes.solid_ln_beta + state.x @ terms.solid_nu.T + medium.water[:, None] * terms.solid_water
 
 
-@dataclass(eq=False)
-class Constraints:
+class Constraints(Struct, eq=False):
     """The phases' conditions: ``excess <= 0``; their gradients by x are the solids' coefficients and ``gas_row``."""
 
     excess: FloatArray  # [L, K] ln of saturation ratio, and of sum(p) over the available pressure

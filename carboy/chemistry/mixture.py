@@ -111,14 +111,28 @@ class Mixture:
     def gases(self) -> dict[str, Array]:
         """mol of each gas in the gas phase (bubbles of an open vessel, headspace of a sealed one)."""
         if self.solved is None:
-            return {}
+            return self._evolved()
         return {token: self.solved.gas[:, column] for column, token in enumerate(self.solved.network.gases)}
+
+    def _evolved(self) -> dict[str, Array]:
+        """Where no water holds it, all of a gas that has formed, which no label brought, has left the rest."""
+        found = {}
+        for gas, molecule in self.stock.dissolved_form.items():
+            if molecule in self.amounts and self.stock.kind(molecule) == "component":
+                put_in = sum(
+                    (moles * self.stock.yield_of(name).get(molecule, 0.0) for name, moles in self.labelled.items()),
+                    self.zeros(),
+                )
+                formed = self.amounts[molecule] - put_in
+                if np.any(formed > TRACE):
+                    found[gas] = np.maximum(formed, 0.0)
+        return found
 
     @cached_property
     def pressures(self) -> dict[str, Array]:
         """atm over the liquid of each gas."""
         if self.solved is None:
-            return {}
+            return {token: np.where(amount > TRACE, 1.0, 0.0) for token, amount in self.gases.items()}
         return {token: self.solved.pressures[:, column] for column, token in enumerate(self.solved.network.gases)}
 
     @cached_property
@@ -147,7 +161,10 @@ class Mixture:
         return np.maximum(amount, 0.0)
 
     def amount_of(self, token: str) -> Array:
-        """mol of a species, or of a component's dissolved family, or of a labelled substance that is still itself."""
+        """mol of a species, or of a component's dissolved family, or of a labelled substance that is still itself.
+
+        Of what nothing has ionised the protons and hydroxide are those that it would bring to water.
+        """
         if token in self.stock.index.species or token == WATER:
             kind = self.stock.kind(token)
             if kind == "water":
@@ -162,6 +179,8 @@ class Mixture:
                 return self.solids.get(token, self.zeros())
             if kind == "gas":
                 return self.gases.get(token, self.zeros())
+            if self.solved is None and set(self.stock.components_of(token)) == {PROTON, WATER}:
+                return np.maximum(self.total(PROTON) * np.sign(self.stock.components_of(token)[PROTON]), 0.0)
             return self.aqueous.get(token, self.zeros())
         return self.remaining(token)
 

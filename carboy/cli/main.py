@@ -1,8 +1,7 @@
-"""The console entry: the commands put together, and every error turned into a sentence."""
+"""The commands put together, and every error turned into a sentence."""
 
 from __future__ import annotations
 
-import gc
 import os
 import sys
 from typing import Annotated
@@ -25,8 +24,6 @@ carboy ask "?r gives ?g, ?g is toxic-gas, ?r needs acid"
 Exit status: 0 no objection, 1 conditional or refuse, 3 cannot say, 2 the input is wrong.
 
 A screening aid, not a permit: the safety data sheets, the rules of the site and a qualified person decide."""
-
-_FRESH_OBJECTS = 50_000  # made before a search for garbage
 
 app = typer.Typer(
     name="carboy",
@@ -68,7 +65,6 @@ def run() -> None:
     """Run the command line and exit. No user input ends in a traceback."""
     # pydantic would look through every installed distribution for plug-ins, which no record here uses
     os.environ.setdefault("PYDANTIC_DISABLE_PLUGINS", "__all__")
-    gc.set_threshold(_FRESH_OBJECTS)  # a run is short and its records live to its end: searching them for garbage is lost time
     try:
         app()
     except CarboyError as error:

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
+from msgspec import Struct
 
 from carboy.bench.trace import Course, StepTrace
 from carboy.chemistry.mixture import TRACE, Array
@@ -31,8 +32,7 @@ _GRADES = {"": DANGER, "danger": DANGER, "warning": WARNING, "note": NOTE}
 _ANYWAY_AT_CONTACT: tuple[Kind, ...] = ("explosive", "fire")
 
 
-@dataclass
-class Raised:
+class Raised(Struct):
     """One flag of one rule raised in a course: lanes and the grams that weigh it, ``[lanes]``."""
 
     rule: Rule
@@ -282,8 +282,7 @@ def name_of(token: str, stock: ChemicalStock) -> str:
     return substance.name if substance is not None else token
 
 
-@dataclass(frozen=True)
-class Shortfall:
+class Shortfall(Struct, frozen=True):
     """A treatment that leaves something above its limit: mg/L and severity, ``[lanes]``."""
 
     element: str

@@ -2,10 +2,10 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
+from msgspec import Struct
 
 from carboy.bench.make_up import MOLAR_VOLUME
 from carboy.bench.trace import Course, StepTrace
@@ -25,8 +25,7 @@ UNLIMITED_ATM = 1e-5  # a gas without a published limit is taken to leave down t
 _NOTE_SHARE = 0.1  # of the warning threshold: below it a gas is not worth a line
 
 
-@dataclass(frozen=True)
-class Load:
+class Load(Struct, frozen=True):
     """What one gas amounts to in a mixture, ``[L]``: mol in the gas phase, mol dissolved that could follow, atm over the liquid, and
     whether what is dissolved is counted as molecules (an acid gas that dissolves as ions has none)."""
 
@@ -52,8 +51,7 @@ class Load:
         return self.gas + np.minimum(self.dissolved * above, np.where(above > 0, carried, 0.0))
 
 
-@dataclass(frozen=True)
-class Yardstick:
+class Yardstick(Struct, frozen=True):
     """What judges a gas under one kind: a concentration in air, with its name and origin."""
 
     kind: Kind
@@ -222,8 +220,7 @@ def _gives_by_itself(mixture: Mixture, token: str) -> bool:
     return False
 
 
-@dataclass(frozen=True)
-class Judged:
+class Judged(Struct, frozen=True):
     """One gas under one yardstick over a course: levels ``[ranges, points]``, and ``[lanes]`` of mol formed, mol leaving, litres of air."""
 
     levels: Levels

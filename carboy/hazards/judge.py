@@ -3,9 +3,9 @@
 from __future__ import annotations
 
 import re
-from dataclasses import dataclass
 
 import numpy as np
+from msgspec import Struct
 
 from carboy.bench.trace import StepTrace
 from carboy.bench.walk import Walk
@@ -19,9 +19,9 @@ from carboy.hazards.sight import sights
 from carboy.model.knowledge import Index
 from carboy.model.report import Finding, PathStep, RuleSight, Signal
 from carboy.model.rule import Rule
+from carboy.reasoning.at_hand import RulesAtHand
 from carboy.reasoning.equation import consumed_for
 from carboy.reasoning.firing import SPEEDS
-from carboy.reasoning.at_hand import RulesAtHand
 from carboy.reasoning.record import Node, Record
 
 _SIGNALS: dict[int, Signal] = {1: "note", 2: "warning", 3: "danger"}
@@ -30,8 +30,7 @@ _MOMENT_ORDER = {"contact": 0, "during": 1, "after": 2, "storage": 3}
 _VARIABLE = re.compile(r"\?(\w+)(?:\.\w+)?")
 
 
-@dataclass
-class Judgement:
+class Judgement(Struct):
     """Findings, and by how many grades of severity each stated range moves them in all."""
 
     findings: list[Finding]

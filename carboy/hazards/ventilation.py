@@ -8,9 +8,9 @@ Where flow or room are stated as a range, the least of it is taken.
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
-
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 
 from carboy.bench.make_up import MOLAR_VOLUME
 from carboy.bench.trace import Course, StepTrace
@@ -32,8 +32,7 @@ _PRECISION = 1e-4  # of a time of addition
 _AT_ONCE = 1e-9  # s
 
 
-@dataclass(frozen=True)
-class Air:
+class Air(Struct, frozen=True):
     """The air about the vessel: its flow in m3/s, the volume in m3 in which gas gathers (None: swept away at once), the volume of the
     room, and how one says where it is."""
 

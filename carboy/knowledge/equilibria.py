@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Collection, Iterable, Mapping
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 from carboy.model.knowledge import Equilibrium, Index, Value
 from carboy.text.formulas import Equation
 
 
-@dataclass(frozen=True, slots=True)
-class PrintedEquilibrium:
+class PrintedEquilibrium(Struct, frozen=True):
     """An equilibrium as written in kb/: ``product`` stands in ``equation`` once, on either side."""
 
     product: str

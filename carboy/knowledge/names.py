@@ -10,9 +10,11 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterator
-from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Literal
+
+from msgspec import Struct
+from msgspec.structs import replace
 
 from carboy.errors import InputError
 from carboy.knowledge.cas import check_digit_fits, has_cas_form
@@ -64,8 +66,7 @@ _FORM_WORDS = (
 )  # fmt: skip
 
 
-@dataclass(frozen=True, slots=True)
-class Match:
+class Match(Struct, frozen=True):
     """What a text means.
 
     ``id`` is a substance id, material id, species token, or for a salt that is not listed the sum of its ions

@@ -3,15 +3,15 @@
 from __future__ import annotations
 
 from collections.abc import Iterable
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 from carboy.errors import KnowledgeError
 from carboy.span import Span
 
 
-@dataclass(frozen=True, slots=True)
-class Problem:
+class Problem(Struct, frozen=True):
     """One fault. ``file`` is relative to kb/; ``node`` names the thing (``sub:acetone``); ``span`` its place, where
     known.
 

@@ -10,10 +10,11 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
 from functools import cached_property
 from itertools import product
 from math import gcd
+
+from msgspec import Struct
 
 from carboy.knowledge.equilibria import components_of
 from carboy.knowledge.folding import fold
@@ -34,8 +35,7 @@ _UNNAMED = "X"  # stands for matter that a label does not name; no label writes 
 Group = tuple[str, int]  # spelling of an ion, how often
 
 
-@dataclass(frozen=True, slots=True)
-class Salt:
+class Salt(Struct, frozen=True):
     """A salt as a sum of ions: token of a species -> how often, cations first; ``water`` of crystallisation, mol per formula unit."""
 
     ions: tuple[tuple[str, float], ...]

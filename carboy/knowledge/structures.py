@@ -8,8 +8,9 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass
 from typing import TYPE_CHECKING
+
+from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.model.knowledge import ChemicalClass
@@ -25,8 +26,7 @@ _REASON = re.compile(
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Part:
+class Part(Struct, frozen=True):
     """One molecule or ion of a structure (what stands between the dots of a SMILES string)."""
 
     canonical: str
@@ -44,8 +44,7 @@ class Part:
         return self.formula + charge_suffix(self.charge)
 
 
-@dataclass(frozen=True, slots=True)
-class Structure:
+class Structure(Struct, frozen=True):
     """What a SMILES string says. ``canonical`` keeps stereochemistry, ``flat`` leaves it and isotopes out; both are RDKit's."""
 
     smiles: str

@@ -12,6 +12,7 @@ from functools import cached_property
 from typing import Literal
 
 import msgspec
+from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.knowledge.naming import composition_key
@@ -29,8 +30,7 @@ _SOLID_FORMS = frozenset(
 )
 
 
-@dataclass(frozen=True, slots=True)
-class Admitted:
+class Admitted(Struct, frozen=True):
     """A case that names substances only, the index that has them all, and what is to be said of those that were made."""
 
     case: Case

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from msgspec import Struct
 
 from carboy.chemistry.stock import ChemicalStock
 from carboy.model.rule import Bound, Present, Rule
@@ -11,8 +11,7 @@ from carboy.reasoning.binding import View
 _FORMED = ("aqueous", "gas", "water")  # a figure of the state tells whether it is there, no name in the vessel
 
 
-@dataclass(frozen=True)
-class _Wants:
+class _Wants(Struct, frozen=True):
     rule: Rule
     choices: tuple[frozenset[str], ...]  # tokens and classes: one of each choice must be there
 

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
 
 import numpy as np
+from msgspec import Struct
+from msgspec.structs import replace
 
 from carboy.chemistry.balance import balance, imbalance
 from carboy.chemistry.mixture import TRACE, Array, Mixture
@@ -25,8 +26,7 @@ _EXTENT_PRECISION = 1e-4  # of the extent that the reactants would allow
 _LEAST_CHANGE = 1e-7  # of the amount at hand: smaller extents are not worth another round
 
 
-@dataclass(frozen=True)
-class BoundReaction:
+class BoundReaction(Struct, frozen=True):
     """A reaction with its variables bound: mol per unit of extent of each token, as written and in components."""
 
     reactants: tuple[tuple[str, float], ...]
@@ -34,8 +34,7 @@ class BoundReaction:
     change: dict[str, float]  # component -> mol gained per unit extent
 
 
-@dataclass(frozen=True)
-class Firing:
+class Firing(Struct, frozen=True):
     """One rule at work in one mixture: extent ``[L]`` in mol of reaction."""
 
     rule: Rule

@@ -6,9 +6,10 @@ fast equilibria). Edges run from cause to effect and carry the mol that passed.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from itertools import islice, product
 from typing import TYPE_CHECKING, Literal
+
+from msgspec import Struct
 
 from carboy.model.report import PathStep
 
@@ -20,8 +21,7 @@ MOST_PATHS = 12
 _MOST_TRIED = 200
 
 
-@dataclass(frozen=True)
-class Event:
+class Event(Struct, frozen=True):
     """One event: the rule (or ``equilibrium``), its equation and the step."""
 
     key: str

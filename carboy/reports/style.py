@@ -8,8 +8,9 @@ import shutil
 import sys
 import unicodedata
 from collections.abc import Iterator
-from dataclasses import dataclass
 from typing import TextIO
+
+from msgspec import Struct
 
 from carboy.errors import CarboyError
 from carboy.text.formulas import pretty_equation, pretty_formula
@@ -33,8 +34,7 @@ _UNIT = re.compile(r"(?<=[\d\s])(?:degC|m3)(?![\w])")
 _POWER = re.compile("×10([⁰¹²³⁴⁵⁶⁷⁸⁹⁻]+)")
 
 
-@dataclass(frozen=True, slots=True)
-class Style:
+class Style(Struct, frozen=True):
     """How wide, with colour or not, with signs beyond ASCII or not."""
 
     width: int = 80

@@ -7,6 +7,8 @@ from dataclasses import dataclass, field
 from itertools import count, product
 from string import ascii_lowercase
 
+from msgspec import Struct
+
 from carboy.model.report import PathStep
 from carboy.reports.style import Style, columns_of, wrapped
 
@@ -24,8 +26,7 @@ class Link:
     suppliers: list[Link] = field(default_factory=list)
 
 
-@dataclass(frozen=True, slots=True)
-class Block:
+class Block(Struct, frozen=True):
     """Drawn lines and the row from which the tree goes on."""
 
     lines: list[str]

@@ -20,6 +20,8 @@ from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any, Literal, get_args
 
+from msgspec import Struct
+
 from carboy.errors import InputError
 from carboy.model.plan import (
     Add,
@@ -207,8 +209,7 @@ def _setting(node: Node) -> Setting:
     return Setting(**values)
 
 
-@dataclass
-class _Bottle:
+class _Bottle(Struct):
     """What is left in a bottle. ``left`` None: parts were taken in units that cannot be compared with its amount."""
 
     portion: Portion

@@ -8,8 +8,9 @@ refused.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
 from typing import Any, Literal, NoReturn
+
+from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.span import Span
@@ -20,8 +21,7 @@ MOST_ENTRIES = 50_000
 DEEPEST = 12
 
 
-@dataclass(frozen=True)
-class Node:
+class Node(Struct, frozen=True):
     """A place of the tree: a text, nothing (``null``), a list of nodes, or a mapping of named nodes in their order."""
 
     kind: Literal["text", "null", "list", "mapping"]

@@ -9,9 +9,10 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 from functools import lru_cache
 from itertools import chain
+
+from msgspec import Struct
 
 from carboy.datafiles import data_dir
 from carboy.errors import InputError
@@ -52,8 +53,7 @@ _DOT = re.compile(r"(?P<whole>\d*)\.(?P<after>\d*)(?P<rest>[^·]*)")
 _USUAL_ANION_CHARGE = {"O": 2, "S": 2, "Se": 2, "Te": 2, "P": 3, "As": 3, "Sb": 3}
 
 
-@dataclass(frozen=True, slots=True)
-class Element:
+class Element(Struct, frozen=True):
     """One line of kb/elements.ttl. ``weight`` is the abridged standard atomic weight, g/mol; None where there is
     none.
     """
@@ -64,8 +64,7 @@ class Element:
     weight: float | None
 
 
-@dataclass(frozen=True, slots=True)
-class Formula:
+class Formula(Struct, frozen=True):
     """A formula that was read.
 
     ``atoms`` per formula unit, water of crystallisation included; ``water`` is the amount of that water, mol/mol;
@@ -220,8 +219,7 @@ def pretty_formula(text: str) -> str:
 # --- equations -----------------------------------------------------------------------------------------------------
 
 
-@dataclass(frozen=True, slots=True)
-class Equation:
+class Equation(Struct, frozen=True):
     """Both sides of a reaction: species token -> coefficient (positive)."""
 
     text: str

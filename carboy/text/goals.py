@@ -17,8 +17,9 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Any, Literal, Protocol
+
+from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.model.plan import Goal
@@ -50,8 +51,7 @@ class SubjectLookup(Protocol):
         """Known names like ``text``, best first."""
 
 
-@dataclass(frozen=True)
-class Target:
+class Target(Struct, frozen=True):
     """What a goal or check says: ``quantity`` "dissolved", "total", "pH" or "temperature", the report key, the vessel,
     the window.
 

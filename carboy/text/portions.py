@@ -22,8 +22,9 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Literal, NoReturn, Protocol
+
+from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.model.plan import Ingredient, Interval, Portion, Strength, StrengthUnit
@@ -174,8 +175,7 @@ _STRAY = (
 _WATER = "substance:water"
 
 
-@dataclass
-class _Item:
+class _Item(Struct):
     """One ingredient as read, and the solvent if it was said with it."""
 
     ingredient: Ingredient

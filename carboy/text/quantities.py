@@ -16,8 +16,9 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Literal
+
+from msgspec import Struct
 
 from carboy.model.plan import Interval, Strength, StrengthUnit
 from carboy.text.figures import read_number
@@ -57,8 +58,7 @@ _AND = re.compile(r"\s+(?:and|to)\s+|\s*-\s*")
 _EITHER_WAY = re.compile(r"\s*(?:±|\+/-|\+-)\s*(?=[\d.])")
 
 
-@dataclass(frozen=True, slots=True)
-class Reading:
+class Reading(Struct, frozen=True):
     """What was read: the interval in the canonical unit ``unit``, where the figures stand, and where the reading
     ends.
     """

@@ -9,9 +9,10 @@ from __future__ import annotations
 
 import re
 from collections.abc import Iterable, Sequence
-from dataclasses import dataclass
 from functools import cache
 from typing import NoReturn
+
+from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.model.plan import StrengthUnit
@@ -19,8 +20,7 @@ from carboy.text.figures import read_number
 from carboy.text.passages import Passage, closest, skip_space
 
 
-@dataclass(frozen=True, slots=True)
-class Unit:
+class Unit(Struct, frozen=True):
     """``(figure + shift) * factor`` is the figure in the canonical unit ``name``."""
 
     name: str

@@ -32,3 +32,25 @@ def test_two_dry_solids_are_judged_as_they_lie(first: str, second: str, kind: st
 
 def test_two_dry_salts_that_do_nothing_are_left_in_peace() -> None:
     assert combined("20 g of sodium chloride", "20 g of potassium sulfate").verdict == "no objection"
+
+
+def test_a_salt_under_a_solvent_is_not_taken_for_dissolved() -> None:
+    # nothing ionises in nitromethane: no pH, no heat of dissolving in a water that is not there
+    report = combined("50 g of chromium trioxide", "50 mL of nitromethane")
+    last = report.steps[-1]
+    assert last.pH is None
+    assert last.temperature_C == pytest.approx((25.0, 25.0))
+
+
+def test_hydrogen_from_a_metal_in_a_dry_alcohol_all_leaves() -> None:
+    # 10 g of sodium, 22.990 g/mol, are 0.4350 mol: half as much H2, 0.2175 mol; ethanol is in excess and no water holds the gas
+    gas = only(combined("500 mL of ethanol", "10 g of sodium"), "flammable-gas", species="H2")
+    assert gas.amount_mol is not None
+    assert gas.amount_mol[1] == pytest.approx(0.2175, rel=0.01)
+
+
+def test_a_liquid_acid_still_acts_on_a_dry_salt() -> None:
+    assert (
+        only(combined("20 g of sodium sulfite", "50 mL of 96 % sulfuric acid"), "toxic-gas", species="SO2").signal
+        == "danger"
+    )

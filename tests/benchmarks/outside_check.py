@@ -61,7 +61,9 @@ def own_databases(count: int) -> None:
         # where the answer hangs on a species that only one side has, the problem is outside what both know
         outside = sum(any("is only" in words for words in constants) for constants in told.values())
         agree = len(answers) - len(apart)
-        print(f"{database.path.name}: {agree} of {len(answers)} agree; {agree} of {len(answers) - outside} in the common domain")
+        print(
+            f"{database.path.name}: {agree} of {len(answers)} agree; {agree} of {len(answers) - outside} in the common domain"
+        )
         blamed: Counter[str] = Counter()
         for c in apart:
             constants = told[id(c)]

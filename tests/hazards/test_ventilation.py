@@ -146,7 +146,9 @@ def test_ppm_in_a_hood_along_a_dose() -> None:
     found = only(vetted({"add": "1 L of 0.1 M hydrochloric acid"}, SULFIDE, setting=HOOD), "toxic-gas", "H2S")
     assert measure(found, "at this pace") == pytest.approx(0.272, rel=0.01)
     # 10 ppm of 0.5 m3/s is 5e-6 m3/s: 0.01 x 0.024465 / 5e-6 = 48.9 s
-    assert measure(found, "shortest time of addition that keeps the air of the hood below its short-term limit") == pytest.approx(48.9 / 60, rel=0.01)
+    assert measure(
+        found, "shortest time of addition that keeps the air of the hood below its short-term limit"
+    ) == pytest.approx(48.9 / 60, rel=0.01)
     # all at once in the 50 m3 that stand for a room: 0.01 x 0.024465 / 50 = 4.9 ppm
     assert measure(found, "in the room if all") == pytest.approx(4.89, rel=0.01)
 
@@ -176,7 +178,9 @@ def test_no_pace_no_concentration_but_a_time() -> None:
     step = {"add": "100 mL of 0.1 M sodium sulfide"}
     found = only(vetted({"add": "1 L of 0.1 M hydrochloric acid"}, step, setting=HOOD), "toxic-gas", "H2S")
     assert not [one for one in found.measures if one.quantity.startswith("at this pace")]
-    assert measure(found, "shortest time of addition that keeps the air of the hood below its short-term limit") == pytest.approx(48.9 / 60, rel=0.01)
+    assert measure(
+        found, "shortest time of addition that keeps the air of the hood below its short-term limit"
+    ) == pytest.approx(48.9 / 60, rel=0.01)
 
 
 def test_of_a_stated_range_of_flow_the_least_counts() -> None:

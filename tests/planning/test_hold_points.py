@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-import time
 from pathlib import Path
 
 import pytest
@@ -152,23 +151,3 @@ def test_every_hold_point_has_test_basis_and_sources() -> None:
             assert ": " in point.test
             assert point.basis.endswith(".")
             assert point.sources
-
-
-def test_hold_points_take_less_than_twice_as_long_again() -> None:
-    lab = laboratory()
-    names = (
-        "mercury-sulfide-right-order",
-        "cyanide-alkaline-chlorination",
-        "bleach-and-ammonia",
-        "fehling-waste-by-sulfide",
-    )
-    cases = [read_case(shipped(f"{name}.yaml"), lab.names) for name in (*names, "nitric-acid-and-ethanol-in-store")]
-
-    def seconds(wanted: bool) -> float:
-        begin = time.process_time()
-        for case in cases:
-            lab.vet(case, hold_points=wanted)
-        return time.process_time() - begin
-
-    seconds(True)  # everything that is read once
-    assert min(seconds(True) for _ in range(2)) < 3 * max(seconds(False) for _ in range(2))
