@@ -93,10 +93,10 @@ def test_the_check_script_takes_the_test_command_from_here():
 
 
 def test_every_command_has_a_line_here():
-    from carboy.cli.main import app
+    from carboy.cli.main import application
 
     text = README.read_text(encoding="utf-8")
-    for command in app.registered_commands:
+    for command in application().registered_commands:
         assert f"carboy {command.name}" in text
     assert "carboy kb check" in text
 

@@ -8,7 +8,7 @@ import numpy as np
 
 from carboy.bench.trace import Course
 from carboy.chemistry.heat import HeatBook, heat_book
-from carboy.chemistry.mixture import WATER_MOLAR_MASS, Array, Mixture, poured_together
+from carboy.chemistry.mixture import WATER_MOLAR_MASS, Array, Mixture, poured_together, solve_together
 from carboy.chemistry.stock import PROTON, WATER
 from carboy.model.knowledge import Threshold
 from carboy.reasoning.binding import Surroundings
@@ -44,13 +44,15 @@ def along(
     capacity_L: Array | None,
     air_mol: Array | None,
     fractions: Array | None = None,
+    beside: Mixture | None = None,
 ) -> Course:
     """The vessel along the dosing path. Every point is the vessel with that fraction of the addition in it, reacted.
     ``fractions`` are those to look at, rising; otherwise :func:`path_fractions`.
 
     Of a dry salt only what the water at hand can dissolve takes part; the rest lies there and is in the vessel afterwards.
 
-    ``capacity_L`` given: sealed, with ``air_mol`` of air shut in.
+    ``capacity_L`` given: sealed, with ``air_mol`` of air shut in. ``beside``: a content to be asked for next, which is solved in the same
+    go where that can be.
     """
     if fractions is None:
         fractions = path_fractions(vessel.lanes)
@@ -62,6 +64,8 @@ def along(
     if capacity_L is not None:
         together.headspace_L = np.maximum(np.repeat(capacity_L, points) - together.volume_L, 1e-3)
         together.air_mol = None if air_mol is None else np.repeat(air_mol, points)
+    if beside is not None:
+        solve_together(together, beside)
     shares = (np.ones(start.lanes), np.tile(fractions, vessel.lanes))
     sources = [
         (part, share * wetted if part.neat else share) for part, share in zip((vessel, added), shares, strict=True)
@@ -71,10 +75,8 @@ def along(
     return course
 
 
-def at_contact(
-    vessel: Mixture, added: Mixture, reactor: Reactor, surroundings: Surroundings, thresholds: dict[str, Threshold]
-) -> Course:
-    """The place where the stream falls in: a parcel of the addition, undiluted, with growing shares of the vessel's liquid."""
+def contact_parcel(vessel: Mixture, added: Mixture, thresholds: dict[str, Threshold]) -> Mixture:
+    """What is at the place where the stream falls in: a parcel of the addition, undiluted, with growing shares of the vessel's liquid."""
     points = len(_CONTACT_SHARES)
     share = thresholds["contact-share"].value.magnitude
     parcel_L = thresholds["contact-volume"].value.magnitude
@@ -85,11 +87,13 @@ def at_contact(
     wanted = np.repeat(part * own, points) * mixed / (1.0 - mixed)
     there = np.maximum(np.repeat(vessel.volume_L, points), 1e-9)
     drawn = np.minimum(wanted / there, 1.0)
-    together = poured_together(vessel.repeated(points).scaled(drawn), dose)
-    fractions = _CONTACT_SHARES
-    mixture, firings = reactor.run(together, surroundings, slowest="at once")
-    none = np.zeros(together.lanes)
-    return Course(mixture, together, firings, fractions, none, together.temperature_C)
+    return poured_together(vessel.repeated(points).scaled(drawn), dose)
+
+
+def at_contact(parcel: Mixture, reactor: Reactor, surroundings: Surroundings) -> Course:
+    """What happens in a :func:`contact_parcel` before it is mixed in: rules that act at once."""
+    mixture, firings = reactor.run(parcel, surroundings, slowest="at once")
+    return Course(mixture, parcel, firings, _CONTACT_SHARES, parcel.zeros(), parcel.temperature_C)
 
 
 def stored(vessel: Mixture, reactor: Reactor, surroundings: Surroundings, slowest: str) -> Course:

@@ -8,7 +8,7 @@ from typing import Any
 
 import numpy as np
 
-from carboy.bench.follow import along, at_contact, stored
+from carboy.bench.follow import along, at_contact, contact_parcel, stored
 from carboy.bench.make_up import Bench, MadeUp
 from carboy.bench.ranges import Ranges
 from carboy.bench.separation import separated
@@ -290,6 +290,7 @@ class Walker:
         else:
             if sealed:
                 state.air_mol = self._air(state, before, also_L=added.volume_L)  # opened to pour, closed at once
+            parcel = contact_parcel(before, added, self.stock.index.thresholds)
             path = along(
                 before,
                 added,
@@ -297,8 +298,9 @@ class Walker:
                 surroundings,
                 capacity_L=state.capacity_L if sealed else None,
                 air_mol=state.air_mol,
+                beside=parcel,
             )
-            contact = at_contact(before, added, self.reactor, surroundings, self.stock.index.thresholds)
+            contact = at_contact(parcel, self.reactor, surroundings)
             after = _with_rest(path, before, added)
             after.temperature_C = np.minimum(path.reached_C[path.last()], 100.0)
             self._record(path.firings, state, number, walk)

@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from carboy.chemistry.equilibrium import Solved
+from carboy.chemistry.network import Network
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 
 Array = NDArray[np.float64]
@@ -68,24 +69,30 @@ class Mixture:
     @cached_property
     def solved(self) -> Solved | None:
         """Speciation; None where there is nothing ionic (a neat solvent) or nothing in water yet (a dry salt, a neat acid): no pH there."""
-        if self.neat:
+        if not self.ionises:
             return None
-        if (
-            not self.dissolvable
-            and not np.any(np.abs(self.total(PROTON)) > TRACE)
-            and not np.any(self.total(WATER) > 0)
-        ):
-            return None
+        network, totals, water = self._system()
+        start = self.hint if self.hint is not None and self.hint.network is network else None
+        return self.stock.solved_states.solve(network, totals, water, headspace_L=self.headspace_L, start=start)
+
+    @property
+    def ionises(self) -> bool:
+        """Whether there is anything that the equilibria are about, and water or a medium for it."""
+        return not self.neat and (
+            bool(self.dissolvable)
+            or bool(np.any(np.abs(self.total(PROTON)) > TRACE))
+            or bool(np.any(self.total(WATER) > 0))
+        )
+
+    def _system(self) -> tuple[Network, Array, Array]:
+        """The network, mol of its components ``[L, C]`` and mol of water ``[L]``."""
         network = self.stock.networks.network(self.dissolvable, self.network_temperature_C)
         totals = np.stack([self.total(token) for token in network.components], axis=1)
         for column, token in enumerate(network.components):
             if token != PROTON:
                 np.maximum(totals[:, column], 0.0, out=totals[:, column])
-        start = self.hint if self.hint is not None and self.hint.network is network else None
-        water = np.maximum(
-            self.total(WATER), 0.0
-        )  # a dry salt that takes up water may ask for more than the first drop brings
-        return self.stock.solved_states.solve(network, totals, water, headspace_L=self.headspace_L, start=start)
+        # a dry salt that takes up water may ask for more than the first drop brings
+        return network, totals, np.maximum(self.total(WATER), 0.0)
 
     @property
     def pH(self) -> Array:
@@ -266,6 +273,15 @@ class Mixture:
             self.network_temperature_C,
             dict(self.neat),
         )
+
+
+def solve_together(first: Mixture, second: Mixture) -> None:
+    """Solve two open contents of the same components in one go, which takes little longer than one of them; nothing otherwise."""
+    if first.headspace_L is None and second.headspace_L is None and first.ionises and second.ionises:
+        (network, totals, water), (other, more, drops) = first._system(), second._system()
+        if network is other:
+            whole, liquid = np.concatenate([totals, more]), np.concatenate([water, drops])
+            first.stock.solved_states.solve(network, whole, liquid, headspace_L=None, start=None)
 
 
 def poured_together(first: Mixture, second: Mixture) -> Mixture:

@@ -8,6 +8,7 @@ import typer
 
 from carboy.cli.output import first_reading, write
 
+SHORT = "Ask the graph and the rules."
 HELP = """Ask the graph and the rules in the words of the rules. A word with ? is what you want to know.
 
 \b

@@ -9,6 +9,7 @@ import typer
 
 from carboy.cli.output import Progress, Status, counted_words, first_reading, write
 
+SHORT = "Run the expect blocks of case files."
 HELP = """Run the expect blocks of case files, one line a case. Without files: the cases that ship with carboy.
 
 \b

@@ -11,6 +11,7 @@ import typer
 
 from carboy.cli.output import Progress, first_reading, status_of, write
 
+SHORT = "May these bottles go together?"
 HELP = """May these bottles go together? They are poured one after the other, in the order given.
 
 \b

@@ -8,6 +8,7 @@ import typer
 
 from carboy.cli.output import Status, first_reading, write
 
+SHORT = "How much reagent, and how much is too much?"
 HELP = """How much of a reagent does an aim need, how much is too much, and which test tells when to stop?
 
 \b

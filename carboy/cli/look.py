@@ -8,6 +8,7 @@ import typer
 
 from carboy.cli.output import first_reading, write
 
+SHORT = "What the graph knows of a thing."
 HELP = """What the graph knows of a substance, material, gas, species, class, container material or source.
 
 \b

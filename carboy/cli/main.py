@@ -4,12 +4,13 @@ from __future__ import annotations
 
 import os
 import sys
+from collections.abc import Sequence
+from importlib import import_module
 from typing import Annotated
 
 import typer
 
 import carboy
-from carboy.cli import ask, cases, combine, dose, kb, look, rule, treat, vet
 from carboy.cli.output import Status
 from carboy.errors import CarboyError
 
@@ -25,14 +26,7 @@ Exit status: 0 no objection, 1 conditional or refuse, 3 cannot say, 2 the input 
 
 A screening aid, not a permit: the safety data sheets, the rules of the site and a qualified person decide."""
 
-app = typer.Typer(
-    name="carboy",
-    help=HELP,
-    no_args_is_help=True,
-    rich_markup_mode=None,
-    pretty_exceptions_enable=False,
-    context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
-)
+COMMANDS = ("combine", "vet", "dose", "treat", "look", "ask", "rule", "cases", "kb")  # in the order of the help page
 
 
 def _version(wanted: bool) -> None:
@@ -41,7 +35,6 @@ def _version(wanted: bool) -> None:
         raise typer.Exit
 
 
-@app.callback()
 def _common(
     version: Annotated[
         bool, typer.Option("--version", help="Print the version and stop.", callback=_version, is_eager=True)
@@ -50,15 +43,32 @@ def _common(
     pass
 
 
-app.command("combine", help=combine.HELP, short_help="May these bottles go together?")(combine.combine)
-app.command("vet", help=vet.HELP, short_help="Is this procedure safe, and does it reach its aim?")(vet.vet)
-app.command("dose", help=dose.HELP, short_help="How much reagent, and how much is too much?")(dose.dose)
-app.command("treat", help=treat.HELP, short_help="How does this waste become safe?")(treat.treat)
-app.command("look", help=look.HELP, short_help="What the graph knows of a thing.")(look.look)
-app.command("ask", help=ask.HELP, short_help="Ask the graph and the rules.")(ask.ask)
-app.command("rule", help=rule.HELP, short_help="A rule in its own words.")(rule.rule)
-app.command("cases", help=cases.HELP, short_help="Run the expect blocks of case files.")(cases.cases)
-app.add_typer(kb.app, name="kb")
+def application(*commands: str) -> typer.Typer:
+    """The command line with some of :data:`COMMANDS`; with all of them where none is named."""
+    app = typer.Typer(
+        name="carboy",
+        help=HELP,
+        no_args_is_help=True,
+        rich_markup_mode=None,
+        pretty_exceptions_enable=False,
+        context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 100},
+    )
+    app.callback()(_common)
+    for name in commands or COMMANDS:
+        module = import_module(f"carboy.cli.{name}")
+        if name == "kb":
+            app.add_typer(module.app, name=name)
+        else:
+            app.command(name, help=module.HELP, short_help=module.SHORT)(getattr(module, name))
+    return app
+
+
+def _asked_for(arguments: Sequence[str]) -> tuple[str, ...]:
+    """The command that is called for by its name; none where the help, a slip of the pen or the shell's completion needs them all.
+
+    A command is built from its signature by pydantic, which takes a while for all of them."""
+    completing = any(name.startswith("_CARBOY_COMPLETE") for name in os.environ)
+    return tuple(arguments[:1]) if not completing and arguments and arguments[0] in COMMANDS else ()
 
 
 def run() -> None:
@@ -66,7 +76,7 @@ def run() -> None:
     # pydantic would look through every installed distribution for plug-ins, which no record here uses
     os.environ.setdefault("PYDANTIC_DISABLE_PLUGINS", "__all__")
     try:
-        app()
+        application(*_asked_for(sys.argv[1:]))()
     except CarboyError as error:
         _fail(shortened(error.render()))
     except BrokenPipeError:  # the reader of a pipe went away

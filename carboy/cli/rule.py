@@ -8,6 +8,7 @@ import typer
 
 from carboy.cli.output import first_reading, write
 
+SHORT = "A rule in its own words."
 HELP = """A rule in its own words: what it says, what prevents it, its conditions, equations, sources and examples.
 
 \b

@@ -8,6 +8,7 @@ import typer
 
 from carboy.cli.output import Progress, Status, first_reading, write
 
+SHORT = "How does this waste become safe?"
 HELP = """How does this waste become safe? Procedures from the treatments of the graph, each vetted by the engine before it is offered.
 
 \b

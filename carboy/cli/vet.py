@@ -9,6 +9,7 @@ import typer
 
 from carboy.cli.output import Progress, first_reading, status_of, write
 
+SHORT = "Is this procedure safe, and does it reach its aim?"
 HELP = """Is this procedure safe in this order, at these amounts, in this vessel, and does it reach its aim?
 
 \b

@@ -6,7 +6,7 @@ import json
 
 import pytest
 
-from carboy.cli.main import app
+from carboy.cli.main import application
 from carboy.rulebook.book import load_rules
 
 
@@ -117,7 +117,7 @@ def test_rule_suggests(carboy):
 
 
 def test_every_command_teaches_by_example(carboy):
-    names = [command.name for command in app.registered_commands]
+    names = [command.name for command in application().registered_commands]
     assert {"combine", "vet", "look", "ask", "rule", "cases"} <= set(names)
     for name in names:
         ran = carboy(name, "--help")

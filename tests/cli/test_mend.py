@@ -9,7 +9,7 @@ from pathlib import Path
 import pytest
 from typer.testing import CliRunner
 
-from carboy.cli.main import app
+from carboy.cli.main import application
 from carboy.errors import InputError
 
 CASES = Path(__file__).parents[2] / "cases"
@@ -17,7 +17,7 @@ WRONG_ORDER = CASES / "water-onto-sulfuric-acid.yaml"
 
 
 def run(*words: str):
-    return CliRunner().invoke(app, list(words))
+    return CliRunner().invoke(application(), list(words))
 
 
 def test_mend_lists_what_was_changed():

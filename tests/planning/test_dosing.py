@@ -8,7 +8,7 @@ import pytest
 from typer.testing import CliRunner
 
 import carboy
-from carboy.cli.main import app
+from carboy.cli.main import application
 from carboy.errors import InputError
 from carboy.knowledge.index import load_index
 from carboy.model.dosing import DoseReport
@@ -287,12 +287,12 @@ def test_error_in_a_reagent_is_shown_in_its_own_text() -> None:
 
 def test_command_line() -> None:
     runner = CliRunner()
-    done = runner.invoke(app, ["dose", MERCURY, "--with", SULFIDE, "--aim", MERCURY_AIM, "--json"])
+    done = runner.invoke(application(), ["dose", MERCURY, "--with", SULFIDE, "--aim", MERCURY_AIM, "--json"])
     assert done.exit_code == 1  # hydrogen sulfide is a warning at pH 8
     told = json.loads(done.stdout)
     assert told["format"] == "carboy-dose/1"
     assert told["window"]["least"] == pytest.approx(0.16, rel=0.01)
-    plain = runner.invoke(app, ["dose", MERCURY, "--with", SULFIDE, "--aim", MERCURY_AIM, "--plain"])
+    plain = runner.invoke(application(), ["dose", MERCURY, "--with", SULFIDE, "--aim", MERCURY_AIM, "--plain"])
     assert plain.stdout.isascii()
     assert max(map(len, plain.stdout.splitlines())) <= 100
     assert "When to stop" in plain.stdout
@@ -301,6 +301,6 @@ def test_command_line() -> None:
 def test_exit_status_of_a_dose_without_objection_and_of_one_that_cannot_be_told() -> None:
     runner = CliRunner()
     clean = ["1 L of 0.02 M zinc sulfate", "--with", "1 M sodium hydroxide", "--aim", "dissolved zinc below 2.61 mg/L"]
-    assert runner.invoke(app, ["dose", *clean]).exit_code == 0
+    assert runner.invoke(application(), ["dose", *clean]).exit_code == 0
     unknown = ["1 L of 0.02 M flurbium nitrate", "--with", "1 M sodium hydroxide", "--aim", "pH above 9"]
-    assert runner.invoke(app, ["dose", *unknown]).exit_code == 3
+    assert runner.invoke(application(), ["dose", *unknown]).exit_code == 3
