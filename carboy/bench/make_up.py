@@ -47,29 +47,33 @@ class Bench:
         self.index = stock.index
         self.ranges = ranges
         self.heat = heat_book(stock)
+        self._points: dict[str, list[tuple[float, float]]] = {}  # by substance id
 
     @cached_property
     def concentrated(self) -> dict[str, Material]:
         """Substance id -> the material that "concentrated" means for it."""
         return {item.strength_of: item for item in self.index.materials.values() if item.strength_of}
 
-    @cached_property
-    def _solution_points(self) -> dict[str, list[tuple[float, float]]]:
-        points: dict[str, list[tuple[float, float]]] = {}
-        for item in self.index.materials.values():
-            if item.density is not None and len(item.parts) == 1 and item.balance == "water" and item.state == "l":
-                points.setdefault(item.parts[0].substance, []).append(
-                    (item.parts[0].typical / 100, item.density.magnitude)
-                )
-        for identity, substance in self.index.substances.items():
-            if substance.state == "l" and substance.density is not None:
-                points.setdefault(identity, []).append((1.0, substance.density.magnitude))
-        return {identity: sorted(set(found)) for identity, found in points.items()}
+    def _solution_points(self, substance_id: str) -> list[tuple[float, float]]:
+        """Mass fraction and g/mL of the strengths whose density the graph knows, the weakest first."""
+        known = self._points.get(substance_id)
+        if known is None:
+            points = {
+                (item.parts[0].typical / 100, item.density.magnitude)
+                for item in self.index.materials.values()
+                if item.density is not None and item.balance == "water" and item.state == "l"
+                if len(item.parts) == 1 and item.parts[0].substance == substance_id
+            }
+            substance = self.index.substances.get(substance_id)
+            if substance is not None and substance.state == "l" and substance.density is not None:
+                points.add((1.0, substance.density.magnitude))
+            known = self._points[substance_id] = sorted(points)
+        return known
 
     def density(self, substance_id: str, mass_fraction: Array) -> Array:
         """g/mL of a solution in water, between the strengths whose density the graph knows."""
         plain = 1.0 / ((1.0 - mass_fraction) / WATER_DENSITY + mass_fraction / DISSOLVED_SALT_DENSITY)
-        points = self._solution_points.get(substance_id)
+        points = self._solution_points(substance_id)
         if not points:
             return plain
         grid = [(0.0, WATER_DENSITY), *(point for point in points if point[0] > 0.005)]
