@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property, lru_cache
 from pathlib import Path
@@ -14,8 +14,9 @@ from carboy.bench.walk import Walk, Walker
 from carboy.chemistry.mixture import Mixture
 from carboy.chemistry.stock import WATER, ChemicalStock
 from carboy.errors import InputError
-from carboy.hazards.goals import goal_reports
-from carboy.hazards.judge import SIGNAL_ORDER, Judge
+from carboy.hazards.aims import with_missed_aims
+from carboy.hazards.goals import goal_reports, judged_goals
+from carboy.hazards.judge import SIGNAL_ORDER, Judge, in_order
 from carboy.hazards.merging import merge_findings, wider_goal, wider_step
 from carboy.hazards.numbers import figures
 from carboy.hazards.steps import step_report
@@ -106,8 +107,16 @@ class Laboratory:
         lab = self if admitted.index is self.index else Laboratory(admitted.index, self.rules)
         return lab, admitted.case, admitted.notes
 
-    def vet(self, case: Case, progress: Progress | None = None, *, hold_points: bool = False) -> Report:
-        """The report on a case; with ``hold_points``, which take as long again, what must be true before each step."""
+    def vet(
+        self,
+        case: Case,
+        progress: Progress | None = None,
+        *,
+        hold_points: bool = False,
+        follow: Sequence[str] = (),
+    ) -> Report:
+        """The report on a case; with ``hold_points``, which take as long again, what must be true before each step; ``follow``: symbols of
+        elements whose every gram is to be accounted for."""
         lab, ready, notes = self.prepared(case)
         outcome = lab._outcome(ready, progress)
         report = lab._report(outcome, notes)
@@ -115,6 +124,10 @@ class Laboratory:
             from carboy.planning.hold_points import HoldPoints
 
             report.hold_points = HoldPoints(lab.judge, lab.reactor, lab.stock).of(outcome.walk)
+        if follow:
+            from carboy.planning.accounting import account
+
+            report.accounts = [account(outcome.walk, element, lab.stock) for element in dict.fromkeys(follow)]
         return report
 
     def combine(
@@ -166,7 +179,9 @@ class Laboratory:
         outcome = Outcome(
             walk, judgement.findings, judgement.leverage, [step_report(trace, self.stock) for trace in walk.steps]
         )
-        outcome.goals = goal_reports(walk, self.stock)
+        judged = judged_goals(walk, self.stock)
+        outcome.goals = [one.report() for one in judged]
+        outcome.findings = in_order(with_missed_aims(outcome.findings, judged, walk, self.judge))
         if not walk.open_conversion:
             return outcome
         slack = self.walk(case, left_standing=left_standing, least=True)
@@ -294,14 +309,20 @@ def combine(*portions: str, setting: Setting | None = None, vessel: VesselSpec |
     return laboratory().combine(portions, setting, vessel)
 
 
-def vet(case: str | Path | Case, *, progress: Progress | None = None) -> Report:
-    """Is this procedure safe in this order, and does it reach its aim? ``case`` is a path to a case file or a Case.
+def vet(case: str | Path | Case, *, progress: Progress | None = None, follow: Sequence[str] = ()) -> Report:
+    """Is this procedure safe in this order, and does it reach its aim? ``case`` is a path to a case file or a Case. ``follow``: elements, by
+    name or symbol, whose every gram is to be accounted for.
 
-    Raises InputError where the file cannot be read.
+    Raises InputError where the file cannot be read, or for what is no element.
     """
     lab = laboratory()
     plan = case if isinstance(case, Case) else read_case(case, lab.names)
-    return lab.vet(plan, progress, hold_points=True)
+    symbols: list[str] = []
+    if follow:
+        from carboy.planning.accounting import element_symbol
+
+        symbols = [element_symbol(word) for word in follow]
+    return lab.vet(plan, progress, hold_points=True, follow=symbols)
 
 
 def dose(

@@ -74,6 +74,10 @@ class StepTrace:
     duration_s: Array | None = None
     notes: list[str] = field(default_factory=list)
     sludge: Mixture | None = None  # a filter's cake
+    brought: Mixture | None = None  # what came from a bottle, not from another vessel
+    left: dict[str, Array] = field(
+        default_factory=dict
+    )  # mol of each gas that left the open vessel at the end, [ranges]
     left_alone: tuple[Mixture, ...] = ()  # what was poured, each left standing by itself: what storage is compared with
     left_firings: tuple[Firing, ...] = ()  # what would go on in each of them by itself
 
@@ -83,3 +87,17 @@ class StepTrace:
         courses = (self.path, self.contact, self.storage)
         mixtures = [self.after, *(course.mixture for course in courses if course is not None)]
         return not all(bool(np.all(mixture.converged)) for mixture in mixtures)
+
+
+@dataclass
+class LedgerPage:
+    """What is where after a step (0: before the first), for the account of what went where.
+
+    ``contents``: vessel -> content. ``brought``: from bottles, in this step. ``left``: gas -> mol that left open vessels, ``[ranges]``.
+    """
+
+    step: int
+    action: str
+    contents: dict[str, Mixture]
+    brought: tuple[Mixture, ...] = ()
+    left: dict[str, Array] = field(default_factory=dict)

@@ -9,6 +9,7 @@ from msgspec import Struct
 from carboy.bench.make_up import MadeUp
 from carboy.chemistry.mixture import Array, Mixture
 from carboy.model.plan import Interval, Portion, VesselSpec
+from carboy.model.report import Stream
 
 
 @dataclass
@@ -26,10 +27,20 @@ class VesselState:
     labels: list[str] = field(default_factory=list)
     stood: str = "at once"  # the slowest speed whose reactions have had their time since the last pour
     unknown: bool = False  # holds something that nobody could name, so that its pH is anybody's guess
+    stream: Stream = "vessel"
+    settled: bool = False  # has stood since it was last poured into or stirred, so that its solids lie at the bottom
+    carriers: dict[str, tuple[float, float]] = field(
+        default_factory=dict
+    )  # what is dry of itself: words -> g, mL of liquid it holds
 
     @property
     def filled(self) -> bool:
         return bool(self.content.amounts)
+
+    @property
+    def carried_mL(self) -> float:
+        """Liquid that filter aid, paper and the like in the vessel can hold."""
+        return sum(volume for _, volume in self.carriers.values())
 
 
 class Pouring(Struct, frozen=True):
@@ -41,3 +52,4 @@ class Pouring(Struct, frozen=True):
     over: Interval | None
     portion: Portion | None
     made: MadeUp | None
+    fresh: bool = True  # from a bottle; what comes out of another vessel is not

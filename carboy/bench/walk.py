@@ -11,8 +11,8 @@ import numpy as np
 from carboy.bench.follow import along, at_contact, contact_parcel, stored
 from carboy.bench.make_up import Bench, MadeUp
 from carboy.bench.ranges import Ranges
-from carboy.bench.separation import separated
-from carboy.bench.trace import Course, StepTrace
+from carboy.bench.separation import LIQUID_IN_AID, LIQUID_IN_PAPER, LIQUID_OVER_SLUDGE, Separated, separated
+from carboy.bench.trace import Course, LedgerPage, StepTrace
 from carboy.bench.vessels import Pouring, VesselState
 from carboy.chemistry.mixture import (
     ATMOSPHERE_KPA,
@@ -27,6 +27,7 @@ from carboy.chemistry.mixture import (
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
 from carboy.errors import InputError
 from carboy.model.plan import (
+    Absorbent,
     Add,
     Case,
     Check,
@@ -39,7 +40,9 @@ from carboy.model.plan import (
     Transfer,
     VesselSpec,
     Wait,
+    Wipe,
 )
+from carboy.model.report import Stream
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.equation import HYDROXIDE, side_words
 from carboy.reasoning.firing import SPEEDS, Firing, Reactor
@@ -47,6 +50,7 @@ from carboy.reasoning.record import Record
 
 _HOUR = 3600.0
 _DAY = 24 * _HOUR
+_SETTLES_IN = 0.5 * _HOUR  # of standing, so that a liquid can be drawn off its solids; common practice
 _DEFAULT_ROOM = 2.0  # a vessel that is not described holds twice the final volume
 
 
@@ -59,10 +63,18 @@ class Walk:
     record: Record
     steps: list[StepTrace] = field(default_factory=list)
     vessels: dict[str, VesselState] = field(default_factory=dict)
+    ledger: list[LedgerPage] = field(default_factory=list)  # before the first step, then after each
     assumptions: list[str] = field(default_factory=list)
     questions: list[str] = field(default_factory=list)
     unrecognised: list[str] = field(default_factory=list)
     aims: bool = True  # whether something is to be reached, as in a written procedure; two bottles poured together aim at nothing
+
+    def trace_of(self, number: int, vessel: str = "") -> StepTrace:
+        """What a step did, to ``vessel`` where it touched several; raises KeyError where there is no such step."""
+        found = [trace for trace in self.steps if trace.number == number]
+        if not found:
+            raise KeyError(number)
+        return next((trace for trace in found if trace.vessel == vessel), found[-1])
 
     @property
     def open_conversion(self) -> bool:
@@ -99,10 +111,14 @@ class Walker:
             walk.questions += portion.questions
             walk.unrecognised += portion.unrecognised
         self._lay_out(case, walk, made)
+        held = tuple(state.content for state in walk.vessels.values() if state.filled)
+        walk.ledger.append(LedgerPage(0, "at the start", _contents(walk), held))
         for number, step in enumerate(case.steps, start=1):
             if self.progress is not None:
                 self.progress(number, len(case.steps))
+            already = len(walk.steps)
             self._step(number, step, walk, made)
+            walk.ledger.append(_page(number, step, walk, walk.steps[already:]))
         for name in ("assumptions", "questions", "unrecognised"):
             setattr(walk, name, list(dict.fromkeys(getattr(walk, name))))
         return walk
@@ -166,15 +182,9 @@ class Walker:
             case Add():
                 self._add(number, step, walk, made)
             case Rinse():
-                state = self._vessel(step.vessel, walk)
-                portion = made[f"step {number}"]
-                text = step.portion.text
-                self._pour(
-                    number,
-                    state,
-                    Pouring(f"rinse with {text}", portion.mixture, text, None, step.portion, portion),
-                    walk,
-                )
+                self._rinse(number, step, walk, made)
+            case Wipe():
+                self._wipe(number, step, walk)
             case Transfer():
                 self._transfer(number, step, walk)
             case Filter():
@@ -184,6 +194,7 @@ class Walker:
                 before = state.content
                 state.content = before.take(np.arange(before.lanes))
                 state.content.temperature_C = np.full(before.lanes, 0.5 * (step.to.low + step.to.high))
+                state.settled = False  # it is stirred, or moves of itself
                 self._stand(
                     number, f"{step.kind} to {step.to.high:g} degC", state, "minutes", None, walk, earlier=before
                 )
@@ -219,7 +230,9 @@ class Walker:
             self._pour(number, state, Pouring(f"add {words}", content, words, step.over, label, portion), walk)
         else:
             target = step.to or state.spec.name
-            self._transfer(number, Transfer(vessel=step.source, to=target, part=step.part, over=step.over), walk)
+            unit = step.part_unit or "L"
+            moved = Transfer(vessel=step.source, to=target, part=step.part, part_unit=unit, over=step.over)
+            self._transfer(number, moved, walk)
 
     def _share(self, number: int, step: Add, content: Mixture, walk: Walk) -> Array:
         assert step.part is not None
@@ -277,6 +290,7 @@ class Walker:
         before = state.content if state.filled else None
         self._join(state, added, walk, number, pouring.portion, pouring.made)
         state.stood = "at once"
+        state.settled = False
         surroundings = self._surroundings(state, number)
         sealed = state.cover == "sealed"
         path: Course | None = None
@@ -320,6 +334,7 @@ class Walker:
             path=path,
             contact=contact,
             duration_s=duration,
+            brought=added if pouring.fresh else None,
         )
         if over_capacity.any():
             trace.notes.append(
@@ -402,11 +417,19 @@ class Walker:
         content = after
         if state.cover != "sealed" and after.gases:
             amounts = dict(after.amounts)
-            for token, left in after.gases.items():
-                if np.any(left > TRACE):
-                    for component, count in self.stock.components_of(token).items():
+            for token, gas in after.gases.items():
+                if np.any(gas > TRACE):
+                    parts = self.stock.components_of(token)
+                    left = gas
+                    for (
+                        component,
+                        count,
+                    ) in parts.items():  # rounding of the equilibrium must not take more than is there
+                        if component != PROTON and count > 0:
+                            left = np.minimum(left, np.maximum(amounts.get(component, after.zeros()), 0.0) / count)
+                    for component, count in parts.items():
                         amounts[component] = amounts.get(component, after.zeros()) - count * left
-            amounts = {token: value if token == PROTON else np.maximum(value, 0.0) for token, value in amounts.items()}
+                    trace.left[token] = left
             content = after.with_amounts(amounts)
         state.content = content = content.take(np.arange(content.lanes))
         for token in (*content.amounts, *after.solids, *content.labelled):
@@ -474,6 +497,7 @@ class Walker:
         duration = None if seconds is None else np.full(walk.ranges.lanes, seconds)
         filled = [state for state in walk.vessels.values() if state.filled]
         for state in [self._vessel(step.vessel, walk)] if step.vessel or not filled else filled:
+            state.settled = step.kind != "stir" and (seconds is None or seconds >= _SETTLES_IN or step.kind == "settle")
             self._stand(number, words, state, slowest, duration, walk)
 
     def _cover(self, number: int, step: Cover, walk: Walk) -> None:
@@ -500,11 +524,18 @@ class Walker:
         target = walk.vessels.get(step.to) or self._new_vessel(
             VesselSpec(name=step.to), walk, walk.ranges.lanes, source.capacity_L
         )
-        whole = source.content.volume_L
+        if step.kind == "sample" and not target.filled:
+            target.stream = "sample"
+        whole = source.content.volume_L if step.part_unit == "L" else source.content.mass_g
         share = np.ones_like(whole)
         if step.part is not None:
             wanted = walk.ranges.draw(f"part taken in step {number}", step.part.low, step.part.high)
             share = np.minimum(wanted / np.maximum(whole, 1e-9), 1.0)
+            if float(wanted[0]) > float(whole[0]) * (1 + 1e-6):
+                walk.assumptions.append(
+                    f"Step {number}: {float(wanted[0]):.3g} {step.part_unit} are wanted of {source.spec.name}, which holds "
+                    f"{float(whole[0]):.3g} {step.part_unit}; all of it is taken."
+                )
         elif step.heel is not None:
             share = np.clip(1.0 - step.heel.high / np.maximum(whole, 1e-9), 0.0, 1.0)
         moved = source.content.scaled(share)
@@ -512,38 +543,53 @@ class Walker:
         walk.record.moved(source.spec.name, target.spec.name, tuple(moved.amounts))
         target.earlier.update(source.earlier)
         target.unknown = target.unknown or source.unknown
+        for words, (grams, volume) in list(source.carriers.items()):
+            part = float(share[0])
+            own, more = target.carriers.get(words, (0.0, 0.0)), (grams * part, volume * part)
+            target.carriers[words] = (own[0] + more[0], own[1] + more[1])
+            source.carriers[words] = (grams - more[0], volume - more[1])
         action = f"transfer {source.spec.name} to {target.spec.name}"
-        self._pour(number, target, Pouring(action, moved, source.spec.name, step.over, None, None), walk)
+        if step.kind == "sample":
+            action = f"sample {source.spec.name}"
+        self._pour(number, target, Pouring(action, moved, source.spec.name, step.over, None, None, fresh=False), walk)
 
     def _filter(self, number: int, step: Filter, walk: Walk) -> None:
         state = self._vessel(step.vessel, walk)
         if not state.filled:
             raise InputError(f"step {number}: vessel '{step.vessel}' is empty")
         content = state.content
-        passes = 0.0 if step.passes is None else step.passes.high
-        clear, sludge = separated(content, retained_mL_per_g=step.retained, passes=passes)
-        filtrate_name = step.filtrate or f"{state.spec.name} filtrate"
-        cake_name = step.cake or f"{state.spec.name} cake"
-        spec = walk.vessels.get(filtrate_name)
-        jug = spec or self._new_vessel(VesselSpec(name=filtrate_name), walk, walk.ranges.lanes, state.capacity_L)
-        holder = walk.vessels.get(cake_name) or self._new_vessel(
-            VesselSpec(name=cake_name), walk, walk.ranges.lanes, state.capacity_L
-        )
+        parts = self._separated(number, step, state, walk)
+        names = (step.filtrate or f"{state.spec.name} filtrate", step.cake or f"{state.spec.name} cake")
+        jug = self._receiver(names[0], "filtrate" if step.kind == "filter" else "decanted liquid", state, walk)
+        holder = self._receiver(names[1], "cake", state, walk)
         state.content = empty(self.stock, content.lanes, float(content.temperature_C[0]))
         came_from, was_here = state.pours, dict(state.earlier)
         state.pours, state.earlier, state.labels = {}, {}, []
-        for target, part in ((jug, clear), (holder, sludge)):
+        carriers, state.carriers = state.carriers, {}
+        deliveries = [(jug, parts.filtrate)]
+        if step.first_runnings is not None:
+            first, rest = _first_runnings(parts, step.first_runnings.low)
+            beaker = self._receiver(step.runnings, "filtrate", state, walk) if step.runnings else jug
+            deliveries = [(beaker, first), (jug, rest)]
+        deliveries.append((holder, parts.sludge))
+        for target, part in deliveries:
             target.content = part if not target.filled else poured_together(target.content, part)
             target.pours = {token: came_from.get(token, frozenset({number})) for token in part.amounts}
             target.unknown = target.unknown or state.unknown
+            target.settled = False
+            passed = {token: self.stock.classes.get(token, frozenset()) for token in (*part.amounts, *part.solids)}
+            target.earlier = was_here if target is holder else passed
             walk.record.moved(state.spec.name, target.spec.name, tuple(part.amounts))
-        jug.earlier = {token: self.stock.classes.get(token, frozenset()) for token in (*clear.amounts, *clear.solids)}
-        holder.earlier = was_here
+        holder.carriers.update(carriers)
+        if step.aid is not None:
+            self._carry(holder, step.aid, LIQUID_IN_AID, "filter aid")
+        if step.paper is not None and parts.thrown_away.amounts:
+            self._throw_away(number, state, step.waste, step.paper, parts.thrown_away, was_here, walk)
         surroundings = self._surroundings(jug, None)
         walk.steps.append(
             self._trace(
                 number,
-                f"{step.kind} {step.vessel} into {filtrate_name}",
+                f"{step.kind} {step.vessel} into {names[0]}",
                 jug,
                 jug.content,
                 surroundings,
@@ -551,6 +597,126 @@ class Walker:
                 sludge=holder.content,
             )
         )
+
+    def _separated(self, number: int, step: Filter, state: VesselState, walk: Walk) -> Separated:
+        decanted = step.kind == "decant"
+        retained = step.retained
+        if decanted and retained is None:
+            retained = LIQUID_OVER_SLUDGE
+        floating = decanted and not state.settled and step.passes is None
+        carried = state.carried_mL + _held_mL(step.aid, LIQUID_IN_AID)
+        parts = separated(
+            state.content,
+            retained_mL_per_g=retained,
+            passes=0.0 if step.passes is None else step.passes.high,
+            carried_mL=carried,
+            thrown_away_mL=_held_mL(step.paper, LIQUID_IN_PAPER),
+            evenly=floating,
+        )
+        if floating and parts.passed.amounts:
+            walk.assumptions.append(
+                f"Step {number}: {state.spec.name} had not settled when it was decanted, so that its solids go over with the liquid in "
+                "equal measure; let it settle first."
+            )
+        if step.aid is not None:
+            walk.assumptions.append(_held_words(number, step.aid, LIQUID_IN_AID, "filter aid", "the cake"))
+        if step.paper is not None:
+            walk.assumptions.append(_held_words(number, step.paper, LIQUID_IN_PAPER, "paper", step.waste))
+        if decanted and step.retained is None and not floating and parts.sludge.volume_L.max() > 0:
+            walk.assumptions.append(
+                f"Step {number}: a settled sludge keeps {LIQUID_OVER_SLUDGE:g} mL of liquid per g of solid (common practice), at most half."
+            )
+        return parts
+
+    def _receiver(self, name: str, stream: Stream, source: VesselState, walk: Walk) -> VesselState:
+        """The vessel that a stream goes to; a new one where there is none of this name."""
+        target = walk.vessels.get(name) or self._new_vessel(
+            VesselSpec(name=name), walk, walk.ranges.lanes, source.capacity_L
+        )
+        if not target.filled and target is not source:
+            target.stream = stream
+        return target
+
+    def _carry(self, holder: VesselState, dry: Absorbent, usual: float, words: str) -> None:
+        grams, volume = holder.carriers.get(dry.words or words, (0.0, 0.0))
+        holder.carriers[dry.words or words] = (grams + dry.grams, volume + _held_mL(dry, usual))
+
+    def _throw_away(
+        self,
+        number: int,
+        source: VesselState,
+        name: str,
+        dry: Absorbent,
+        content: Mixture,
+        earlier: dict[str, frozenset[str]],
+        walk: Walk,
+    ) -> None:
+        """What something dry has taken up, as a stream of its own: the bin it goes to is, for its liquid, made of it."""
+        place = walk.vessels.get(name) or self._new_vessel(
+            VesselSpec(name=name, material=dry.material or "glass"), walk, walk.ranges.lanes, source.capacity_L
+        )
+        if not place.filled:
+            place.stream = "contaminated solid"
+        self._carry(place, dry, LIQUID_IN_PAPER, "paper")
+        walk.record.moved(source.spec.name, place.spec.name, tuple(content.amounts))
+        place.earlier.update(earlier)
+        place.unknown = place.unknown or source.unknown
+        action = f"{dry.words or 'paper'} from {source.spec.name} to {name}"
+        self._pour(number, place, Pouring(action, content, source.spec.name, None, None, None, fresh=False), walk)
+
+    def _wipe(self, number: int, step: Wipe, walk: Walk) -> None:
+        state = self._vessel(step.vessel, walk)
+        if not state.filled:
+            raise InputError(f"step {number}: vessel '{step.vessel}' is empty")
+        volume_mL = np.maximum(1000 * state.content.volume_L, 1e-6)
+        share = np.minimum(_held_mL(step.absorbent, LIQUID_IN_PAPER) / volume_mL, 1.0)
+        taken = state.content.scaled(share)
+        state.content = state.content.scaled(1.0 - share)
+        if np.all(share >= 1.0):
+            state.content = empty(self.stock, walk.ranges.lanes, float(state.content.temperature_C[0]))
+        walk.assumptions.append(_held_words(number, step.absorbent, LIQUID_IN_PAPER, "paper", step.to))
+        self._throw_away(number, state, step.to, step.absorbent, taken, dict(state.earlier), walk)
+
+    def _rinse(self, number: int, step: Rinse, walk: Walk, made: dict[str, MadeUp]) -> None:
+        state = self._vessel(step.vessel, walk)
+        portion, text = made[f"step {number}"], step.portion.text
+        words = f"{step.kind} {state.spec.name} with {text}" if step.to else f"{step.kind} with {text}"
+        self._pour(number, state, Pouring(words, portion.mixture, text, None, step.portion, portion), walk)
+        if not step.to:
+            return
+        content = state.content
+        parts = separated(content, retained_mL_per_g=step.retained, carried_mL=state.carried_mL)
+        target = self._receiver(step.to, "washings", state, walk)
+        state.content = parts.sludge
+        walk.record.moved(state.spec.name, target.spec.name, tuple(parts.clear.amounts))
+        target.unknown = target.unknown or state.unknown
+        target.earlier.update(
+            {token: self.stock.classes.get(token, frozenset()) for token in (*parts.clear.amounts, *parts.clear.solids)}
+        )
+        action = f"washings of {state.spec.name} to {target.spec.name}"
+        self._pour(number, target, Pouring(action, parts.clear, state.spec.name, None, None, None, fresh=False), walk)
+
+
+def _held_mL(dry: Absorbent | None, usual: float) -> float:
+    return 0.0 if dry is None else dry.grams * (usual if dry.holds is None else dry.holds)
+
+
+def _held_words(number: int, dry: Absorbent, usual: float, words: str, place: str) -> str:
+    per_gram = usual if dry.holds is None else dry.holds
+    basis = "common practice" if dry.holds is None else "as the case says"
+    return (
+        f"Step {number}: {dry.grams:g} g of {dry.words or words} takes {_held_mL(dry, usual):.3g} mL of liquid along to {place} "
+        f"({per_gram:g} mL per g, {basis})."
+    )
+
+
+def _first_runnings(parts: Separated, litres: float) -> tuple[Mixture, Mixture]:
+    """The first ``litres`` of a filtrate, with all that has passed, and the clear rest."""
+    share = np.minimum(litres / np.maximum(parts.clear.volume_L, 1e-9), 1.0)
+    first = parts.clear.scaled(share)
+    if parts.passed.amounts:
+        first = poured_together(first, parts.passed)
+    return first, parts.clear.scaled(1.0 - share)
 
 
 def _with_rest(path: Course, before: Mixture, added: Mixture) -> Mixture:
@@ -568,6 +734,20 @@ def _with_rest(path: Course, before: Mixture, added: Mixture) -> Mixture:
                     after.volume_L = after.volume_L + rest * part.volume_L
                     after.mass_g = after.mass_g + rest * part.mass_g
     return after
+
+
+def _contents(walk: Walk) -> dict[str, Mixture]:
+    return {name: state.content for name, state in walk.vessels.items() if state.filled}
+
+
+def _page(number: int, step: Step, walk: Walk, traces: list[StepTrace]) -> LedgerPage:
+    left: dict[str, Array] = {}
+    for trace in traces:
+        for token, amount in trace.left.items():
+            left[token] = left[token] + amount if token in left else amount
+    brought = tuple(trace.brought for trace in traces if trace.brought is not None)
+    main = traces[0 if isinstance(step, Rinse) else -1]  # paper goes first, washings last
+    return LedgerPage(number, main.action, _contents(walk), brought, left)
 
 
 def _brought(tokens: dict[str, float], part: float) -> dict[str, float]:

@@ -6,6 +6,7 @@ import numpy as np
 from msgspec import Struct
 
 from carboy.chemistry.activity import TRUSTED_IONIC_STRENGTH
+from carboy.chemistry.columns import shared_columns
 from carboy.chemistry.iteration import (
     BALANCE,
     SUPERSATURATION,
@@ -73,6 +74,7 @@ class Solved(Struct, eq=False):
 
 
 _NO_LANES = ("network", "reasons")
+_FEW = 12  # components, up to which putting several in one column gains nothing
 
 
 def solve(
@@ -106,8 +108,10 @@ def solve(
     _check(network, totals, water_mol, headspace_L, ambient_atm)
     # Overflow and the like are judged by the outcome: a lane that is not finite does not converge.
     with np.errstate(all="ignore"):
-        solution = _Solution(network, totals, water_mol, vessel)
-        if start is not None and start.network is network:
+        if start is not None and start.network is not network:
+            start = None
+        solution = _Solution(network, totals, water_mol, vessel, start)
+        if start is not None:
             solution.from_neighbour(start)
         for pace in _PACES:
             left = np.flatnonzero([reason != "" for reason in solution.reasons])
@@ -129,12 +133,23 @@ _PACES = (
 class _Solution:
     """The lanes of one call on their way to the outcome."""
 
-    def __init__(self, network: Network, totals: FloatArray, water_mol: FloatArray, vessel: Vessel) -> None:
+    def __init__(
+        self, network: Network, totals: FloatArray, water_mol: FloatArray, vessel: Vessel, start: Solved | None
+    ) -> None:
         self.network = network
         self.sealed = vessel.headspace_L is not None
-        self.terms = Terms.of(network, self.sealed)
         self.lanes, self.scale = make_lanes(network, totals, water_mol, vessel)
+        self.absent = self.lanes.absent  # [L, components]
         count = totals.shape[0]
+        self.column = np.arange(totals.shape[1])
+        if start is None and count > 1 and totals.shape[1] > _FEW:
+            self.column = shared_columns(~self.absent)
+        if self.column.max() + 1 < totals.shape[1]:
+            self.terms = Terms.over(network, self.sealed, self.column)
+            self.lanes = self.lanes.in_columns(self.column)
+        else:
+            self.column = np.arange(totals.shape[1])
+            self.terms = Terms.of(network, self.sealed)
         self.state = first_state(self.lanes)
         self.on_floor = np.zeros(count, dtype=bool)
         self.reasons = ["not attempted"] * count
@@ -229,7 +244,7 @@ class _Solution:
             pH=-state.x[:, 0] / LN10,
             ionic_strength=state.strength,
             water_kg=np.exp(state.ln_water) * self.scale,
-            log_activity=np.where(lanes.absent, -np.inf, state.x / LN10),
+            log_activity=np.where(self.absent, -np.inf, state.x[:, self.column] / LN10),
             saturation=np.where(lanes.allowed[:, :solids], ln_saturation(terms, lanes, state, medium) / LN10, -np.inf),
             bubbling=phases[:, solids] > 0.0,
             converged=np.array([reason == "" for reason in self.reasons], dtype=bool),

@@ -31,6 +31,8 @@ from carboy.chemistry.mass_action import (
     ln_constants,
     ln_saturation,
     matrix_vector,
+    pairs_of,
+    square,
     term_amounts,
     vector_matrix,
 )
@@ -219,7 +221,7 @@ def interior_point(terms: Terms, lanes: Lanes, state: State, pace: Pace) -> IntA
         matrix += weight[:, :-1] @ terms.solid_pairs
         if held.any_gas:
             matrix += (phases[:, -1:] * held.shares) @ terms.gas_pairs
-        matrix = matrix.reshape(-1, size, size)
+        matrix = square(matrix, size)
         if held.any_gas:
             row = held.gas_row
             matrix += (weight[:, -1] - phases[:, -1])[:, None, None] * (row[:, :, None] * row[:, None, :])
@@ -387,7 +389,7 @@ def finish(
     last_change = np.zeros(count, dtype=np.intp)
     gas = np.zeros((terms.gas_nu.shape[0], size + 4))
     gas[:, :size], gas[:, size + 2] = terms.gas_nu, terms.gas_water
-    gas_pairs = (gas[:, :, None] * gas[:, None, :]).reshape(len(gas), (size + 4) ** 2)
+    gas_pairs = pairs_of(gas)
     at_b, at_i, at_m, at_w = size, size + 1, size + 2, size + 3  # bubbled gas, ionic strength, molality, ln water
     n = size + 4
     elimination: Elimination | None = None
@@ -396,7 +398,7 @@ def finish(
         medium = Medium.at(terms, state.strength, state.molality)
         amounts = term_amounts(terms, lanes, state, medium)
         held = Constraints.at(terms, lanes, state, medium)
-        pairs = (amounts @ terms.feature_pairs).reshape(count, size + 4, size + 4)
+        pairs = square(amounts @ terms.feature_pairs, size + 4)
         if elimination is None:
             weight = np.where(lanes.absent, np.inf, diagonal_of(pairs)[:, :size])
             filled = state.phases[:, :solids] / lanes.most[:, :solids]
@@ -407,7 +409,7 @@ def finish(
         row, row_water = held.gas_row, held.gas_water
         if bubbling.any():
             mean = held.shares @ gas
-            spread = (held.shares @ gas_pairs).reshape(pairs.shape) - mean[:, :, None] * mean[:, None, :]
+            spread = square(held.shares @ gas_pairs, size + 4) - mean[:, :, None] * mean[:, None, :]
             pairs += bubbled[:, None, None] * spread
         kg = np.exp(state.ln_water)
         both = amounts @ terms.sums

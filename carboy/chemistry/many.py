@@ -1,8 +1,8 @@
 """Equilibrium of many vessels that hold different things, in few batches.
 
-A batch costs a fixed time (some twenty turns of small matrices) and a time for each lane that grows with the square of
-the components. So vessels whose components differ a little go into one batch over all of these, where what a vessel
-lacks is absent from its lane, and vessels that share little do not.
+A batch costs a fixed time (some twenty turns of small matrices) and a time for each lane that grows with the species of
+all components together. So vessels whose components differ a little go into one batch over all of these, where what a
+vessel lacks is absent from its lane, and vessels that share little do not.
 """
 
 from __future__ import annotations
@@ -16,9 +16,9 @@ from carboy.chemistry.equilibrium import Solved, solve
 from carboy.chemistry.mass_action import IntArray
 from carboy.chemistry.network import FloatArray, NetworkFactory
 
-# Times of one batch, of one lane and of one lane per square of components, in the first as the unit; measured with
+# Times of one batch, of one lane and of one lane per component, in the first as the unit; measured with
 # tests/benchmarks. Only their ratios matter, and those little.
-_BATCH, _LANE, _SQUARE = 1.0, 0.004, 0.00012
+_BATCH, _LANE, _COMPONENT = 1.0, 0.004, 0.006
 _IMPLIED = ("H+", "H2O")
 
 
@@ -112,4 +112,4 @@ def _grouped(sets: Sequence[frozenset[str]]) -> list[tuple[frozenset[str], list[
 
 
 def _time(lanes: int, components: int) -> float:
-    return lanes * (_LANE + _SQUARE * components * components)
+    return lanes * (_LANE + _COMPONENT * components)

@@ -7,6 +7,7 @@ further terms beside the aqueous species.
 
 from __future__ import annotations
 
+from functools import cache
 from typing import Self
 
 import numpy as np
@@ -31,7 +32,9 @@ _CEILING = 60.0  # ln of the largest molality that is evaluated
 
 
 class Terms(Struct, frozen=True, eq=False):
-    """What all lanes share: J terms (aqueous species, then headspace gases) and M solids over C components."""
+    """What all lanes share: J terms (aqueous species, then headspace gases) and M solids over C columns, one for each
+    component or for several that never meet.
+    """
 
     nu: FloatArray  # [J, C]
     scaling: FloatArray  # [J, 4 C]: gains, losses as positive numbers, and both times the sum of |nu| of the term
@@ -39,15 +42,16 @@ class Terms(Struct, frozen=True, eq=False):
     features: FloatArray  # [J, C + 4]: nu, z^2, neutral, water, aqueous
     nu_across: FloatArray  # [C, J]
     medium_across: FloatArray  # [4, J]: z^2, neutral, water, aqueous
-    feature_pairs: FloatArray  # [J, (C + 4)^2]
-    nu_pairs: FloatArray  # [J, C^2]
+    feature_pairs: FloatArray  # [J, pairs of C + 4]
+    nu_pairs: FloatArray  # [J, pairs of C]
     solid_nu: FloatArray  # [M, C]
     solid_water: FloatArray  # [M]
-    solid_pairs: FloatArray  # [M, C^2]
+    solid_pairs: FloatArray  # [M, pairs of C]
     gas_nu: FloatArray  # [G, C]
     gas_water: FloatArray  # [G]
-    gas_pairs: FloatArray  # [G, C^2]
+    gas_pairs: FloatArray  # [G, pairs of C]
     slope: float  # A of the Davies equation
+    sparse: bool  # whether columns are shared, so that most terms are absent from a lane
 
     @property
     def size(self) -> int:
@@ -58,18 +62,22 @@ class Terms(Struct, frozen=True, eq=False):
         """Cached on the network."""
         cache = network.__dict__.setdefault("_terms", {})
         if sealed not in cache:
-            cache[sealed] = cls._make(network, sealed)
+            cache[sealed] = cls.over(network, sealed, np.arange(len(network.components)))
         made: Self = cache[sealed]
         return made
 
     @classmethod
-    def _make(cls, network: Network, sealed: bool) -> Self:
-        nu, water, charge = network.nu, network.nu_water, network.charge
+    def over(cls, network: Network, sealed: bool, column: IntArray) -> Self:
+        """With each component in the ``column`` [components] given for it."""
+        into = np.zeros((column.size, int(column.max()) + 1))
+        into[np.arange(column.size), column] = 1.0
+        nu, water, charge = network.nu @ into, network.nu_water, network.charge
+        solid_nu, gas_nu = network.solid_nu @ into, network.gas_nu @ into
         aqueous = np.ones(len(network.species))
         neutral = (charge == 0.0).astype(float)
         if sealed:
             none = np.zeros(len(network.gases))
-            nu = np.vstack([nu, network.gas_nu])
+            nu = np.vstack([nu, gas_nu])
             water = np.concatenate([water, network.gas_nu_water])
             charge, aqueous, neutral = (np.concatenate([part, none]) for part in (charge, aqueous, neutral))
         features = np.column_stack([nu, charge**2, neutral, water, aqueous])
@@ -83,15 +91,16 @@ class Terms(Struct, frozen=True, eq=False):
             features=features,
             nu_across=np.ascontiguousarray(nu.T),
             medium_across=np.ascontiguousarray(features[:, nu.shape[1] :].T),
-            feature_pairs=_pairs(features),
-            nu_pairs=_pairs(nu),
-            solid_nu=network.solid_nu,
+            feature_pairs=pairs_of(features),
+            nu_pairs=pairs_of(nu),
+            solid_nu=solid_nu,
             solid_water=network.solid_nu_water,
-            solid_pairs=_pairs(network.solid_nu),
-            gas_nu=network.gas_nu,
+            solid_pairs=pairs_of(solid_nu),
+            gas_nu=gas_nu,
             gas_water=network.gas_nu_water,
-            gas_pairs=_pairs(network.gas_nu),
+            gas_pairs=pairs_of(gas_nu),
             slope=activity.debye_hueckel_slope(network.temperature_C),
+            sparse=into.shape[0] > into.shape[1],
         )
 
 
@@ -116,6 +125,15 @@ class Lanes(Struct, eq=False):
     def take(self, which: IntArray | BoolArray) -> Lanes:
         """These lanes only."""
         return Lanes(**{name: getattr(self, name)[which] for name in self.__struct_fields__})
+
+    def in_columns(self, column: IntArray) -> Lanes:
+        """With each component in the ``column`` [components] given for it; those of one column are not in one lane."""
+        shape = (self.number.size, int(column.max()) + 1)
+        totals, absent = np.zeros(shape), np.ones(shape, dtype=bool)
+        for component, place in enumerate(column):
+            totals[:, place] += np.where(self.absent[:, component], 0.0, self.totals[:, component])
+            absent[:, place] &= self.absent[:, component]
+        return replace(self, totals=totals, absent=absent)
 
 
 class State(Struct, eq=False):
@@ -222,8 +240,25 @@ def diagonal_of(matrices: FloatArray) -> FloatArray:
     return matrices.reshape(matrices.shape[0], size * size)[:, :: size + 1]
 
 
-def _pairs(rows: FloatArray) -> FloatArray:
-    return np.ascontiguousarray((rows[:, :, None] * rows[:, None, :]).reshape(rows.shape[0], rows.shape[1] ** 2))
+def pairs_of(rows: FloatArray) -> FloatArray:
+    """Products of the columns of ``rows`` [R, A] two by two, each pair once: [R, A (A + 1) / 2]. Weighted and summed they are a
+    symmetric matrix, see :func:`square`."""
+    one, other = np.triu_indices(rows.shape[1])
+    return np.ascontiguousarray(rows[:, one] * rows[:, other])
+
+
+@cache
+def _places(size: int) -> IntArray:
+    """Where the entries of a symmetric matrix of ``size`` stand among its pairs, row by row."""
+    places = np.zeros((size, size), dtype=np.intp)
+    one, other = np.triu_indices(size)
+    places[one, other] = places[other, one] = np.arange(one.size)
+    return places.ravel()
+
+
+def square(pairs: FloatArray, size: int) -> FloatArray:
+    """The symmetric matrices [L, size, size] of sums of pairs [L, size (size + 1) / 2]."""
+    return np.take(pairs, _places(size), axis=1).reshape(-1, size, size)
 
 
 class Medium(Struct, eq=False):
@@ -264,7 +299,10 @@ def amounts_of(terms: Terms, state: State, constants: FloatArray) -> FloatArray:
     """mol of each term per kg of starting water, [L, J], from :func:`ln_constants`."""
     logs = state.x @ terms.nu_across
     logs += constants
-    return np.exp(np.minimum(logs, _CEILING, out=logs), out=logs)
+    np.minimum(logs, _CEILING, out=logs)
+    if terms.sparse:  # exponentials are the dearer the further they underflow
+        return np.exp(logs, out=np.zeros(logs.shape), where=constants > 0.5 * ABSENT)
+    return np.exp(logs, out=logs)
 
 
 def term_amounts(terms: Terms, lanes: Lanes, state: State, medium: Medium) -> FloatArray:

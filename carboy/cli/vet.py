@@ -17,11 +17,15 @@ carboy vet procedure.yaml
 carboy vet monday/*.yaml --plain > monday.log
 carboy vet procedure.yaml --json
 carboy vet procedure.yaml --why 2
+carboy vet procedure.yaml --follow mercury
 carboy vet procedure.yaml --mend
 carboy vet procedure.yaml --mend --apply 1 --output mended.yaml
 
 A case file has bottles, vessels, steps and goals; cases/ holds examples. Several files: the exit status is that of
 the gravest verdict, and --json prints a list of objects.
+
+--follow ELEMENT tells where every gram of it went (name or symbol; may be given several times): by vessel, cake, filtrate,
+washings, contaminated solids, samples and gas, at the end and after each step.
 
 --mend looks for the nearest changes that clear it (reorder, neutralise, dilute, cool, slow down, filter, vent, keep
 apart); each has been vetted before it is shown. --apply writes one; over the old file only with the old text kept
@@ -35,6 +39,10 @@ def vet(
     full: Annotated[bool, typer.Option("--full", help="Every derivation, note and citation.")] = False,
     why: Annotated[
         int | None, typer.Option(metavar="N", help="How the numbers of finding (N) were had; nothing else.")
+    ] = None,
+    follow: Annotated[
+        list[str] | None,
+        typer.Option(metavar="ELEMENT", help="Where every gram of it went; a name or symbol.", show_default=False),
     ] = None,
     mend: Annotated[bool, typer.Option("--mend", help="Look for changes that clear it, each vetted.")] = False,
     apply: Annotated[
@@ -60,13 +68,16 @@ def vet(
         raise InputError("--apply and --output belong to --mend")
     if output is not None and apply is None:
         raise InputError("--output needs --apply, the number of the change to write")
+    if follow and why is not None:
+        raise InputError("--why shows one finding and nothing else; --follow goes without it")
+    elements = _symbols(follow)
     with first_reading():
         lab = laboratory()
     plans = [read_case(file, lab.names) for file in files]  # all are read before the first is judged
     reports = []
     for plan in plans:
         with Progress("step") as progress:
-            reports.append(lab.vet(plan, progress, hold_points=True))
+            reports.append(lab.vet(plan, progress, hold_points=True, follow=elements))
     names = [str(file) for file in files]
     text = printed(reports, lab, names, json=json, plain=plain, full=full, why=why)
     if mend:
@@ -82,3 +93,11 @@ def vet(
             raise typer.Exit(status_of([mended.report]))
     write(text)
     raise typer.Exit(status_of(reports))
+
+
+def _symbols(words: list[str] | None) -> list[str]:
+    if not words:
+        return []
+    from carboy.planning.accounting import element_symbol
+
+    return [element_symbol(word) for word in words]

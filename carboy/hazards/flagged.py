@@ -379,6 +379,8 @@ def _class_draft(
     )
     names = {variable: name_of(token, stock) for variable, token in raised.bound.items()}
     subject = flag.words or ", ".join(name_of(term, stock) for term in terms)
+    if flag.kind == "heat" and not flag.words:
+        subject = f"heat, which the graph has no figure for; {subject}"
     weight = float(grams.max())
     lane = int(np.argmax(grams))
     measures: list[Measure] = []

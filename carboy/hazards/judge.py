@@ -114,6 +114,10 @@ class Judge:
             leaders.append(leader)
         return leaders
 
+    def finding_of(self, draft: Draft, record: Record) -> Finding:
+        """A draft that was made elsewhere, as a finding with its reaction paths."""
+        return self._finding(draft, record)
+
     # --- words -------------------------------------------------------------------------------------------------
 
     def _finding(self, draft: Draft, record: Record) -> Finding:

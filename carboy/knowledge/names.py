@@ -39,6 +39,7 @@ _WATER = {
     "hepta": 7.0,
 }
 _WATER |= {"octa": 8.0, "ennea": 9.0, "nona": 9.0, "deca": 10.0, "undeca": 11.0, "dodeca": 12.0, "octadeca": 18.0}
+_SHORTEST_LIMIT = 5  # letters and figures by which a published limit can be told
 _HYDRATE_WORD = re.compile(
     rf"[\s,-]*\b(?P<count>{'|'.join(sorted(_WATER, key=len, reverse=True))})?-?hydrate\b", re.IGNORECASE
 )
@@ -279,6 +280,25 @@ class Names:
     def chemical_class(self, text: str) -> str | None:
         """Key of a chemical class from its key, label or plural (``methyl ketones``), or None."""
         return self._other("class", text)
+
+    def published_limits(self, text: str) -> dict[str, dict[str, float]]:
+        """Kind of limit -> mg/L by report key, of those that ``text`` names: by their own name (``toxicity characteristic``, ``universal
+        treatment standard``) or by their place in the code (``40 CFR 268.48``, ``261.24``); {} if none."""
+        wanted = re.sub(r"[^a-z0-9.]", "", text.casefold().replace("standards", "standard").removeprefix("the "))
+        plain = wanted.removesuffix("limit").removesuffix("limits").removesuffix("standard")
+        found: dict[str, dict[str, float]] = {}
+        if len(plain) < _SHORTEST_LIMIT:
+            return found
+        for limit in self.index.limits:
+            kind = limit.kind.replace("-", "")
+            source = limit.value.source.casefold()
+            if kind.startswith(plain) or plain in (source, source.removeprefix("40cfr")):
+                found.setdefault(limit.kind, {})[limit.subject] = limit.value.magnitude
+        return found
+
+    def no_longer_seen(self) -> float:
+        """mol/L below which test papers and strips no longer show a thing."""
+        return self.index.thresholds["destroyed-strength"].value.magnitude
 
     def gas(self, text: str) -> str | None:
         """Token of a gas from its name, formula or token (``hydrogen sulfide``, ``H2S``, ``H2S(g)``), or None."""

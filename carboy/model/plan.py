@@ -126,9 +126,22 @@ class Add(Frozen):
     over: Interval | None = None
 
 
+class Absorbent(Frozen):
+    """Something dry that takes up liquid and is thrown away wet: filter aid, paper, gloves. ``grams`` dry; ``holds`` mL of liquid per g, None
+    for what is usual; ``material``: a container id, for what the liquid does to it; ``words`` as written."""
+
+    grams: float
+    holds: float | None = None
+    material: str = ""
+    words: str = ""
+
+
 class Filter(Frozen):
     """Filter or decant a vessel: solids to ``cake``, liquid to ``filtrate``; ``retained`` mL of liquid per g of solid, ``passes`` share of solids
-    that runs through."""
+    that runs through.
+
+    ``aid`` stays with the cake, ``paper`` goes to ``waste``. ``first_runnings`` L hold all of what passes and go to ``runnings``; without
+    them what passes is in the filtrate."""
 
     kind: Literal["filter", "decant"]
     vessel: str
@@ -136,25 +149,43 @@ class Filter(Frozen):
     filtrate: str = ""
     retained: float | None = None
     passes: Interval | None = None
+    aid: Absorbent | None = None
+    paper: Absorbent | None = None
+    waste: str = ""
+    first_runnings: Interval | None = None
+    runnings: str = ""
 
 
 class Transfer(Frozen):
-    """Move the content of a vessel (all, or ``part`` L) to another, with a ``heel`` L left behind."""
+    """Move the content of a vessel (all, or ``part`` in ``part_unit``) to another, with a ``heel`` L left behind; or take a sample of it."""
 
-    kind: Literal["transfer"] = "transfer"
+    kind: Literal["transfer", "sample"] = "transfer"
     vessel: str
     to: str
     part: Interval | None = None
+    part_unit: Literal["L", "g"] = "L"
     heel: Interval | None = None
     over: Interval | None = None
 
 
 class Rinse(Frozen):
-    """Rinse a vessel or cake with a portion."""
+    """Rinse a vessel or wash a cake with a portion. With ``to`` the washings run off there, and the solids keep ``retained`` mL per g; without
+    it they stay."""
 
-    kind: Literal["rinse"] = "rinse"
+    kind: Literal["rinse", "wash"] = "rinse"
     vessel: str
     portion: Portion
+    to: str = ""
+    retained: float | None = None
+
+
+class Wipe(Frozen):
+    """Wipe out a vessel, or take up a spill, with something that is then a contaminated solid in ``to``."""
+
+    kind: Literal["wipe"] = "wipe"
+    vessel: str
+    absorbent: Absorbent
+    to: str
 
 
 class Temper(Frozen):
@@ -166,9 +197,9 @@ class Temper(Frozen):
 
 
 class Wait(Frozen):
-    """Wait, stand or stir for a time in s."""
+    """Wait, stand, let settle or stir for a time in s."""
 
-    kind: Literal["wait", "stand", "stir"]
+    kind: Literal["wait", "stand", "settle", "stir"]
     vessel: str = ""
     duration: Interval | None = None
 
@@ -192,19 +223,24 @@ class Check(Frozen):
     text: str = ""
 
 
-Step = Annotated[Add | Filter | Transfer | Rinse | Temper | Wait | Cover | Check, Field(discriminator="kind")]
+Step = Annotated[Add | Filter | Transfer | Rinse | Wipe | Temper | Wait | Cover | Check, Field(discriminator="kind")]
 
 
 class Goal(Frozen):
-    """``dissolved mercury in jug below 0.2 mg/L``: quantity "dissolved" | "total" | "pH", subject as a report key or element, window."""
+    """``dissolved mercury in jug below 0.2 mg/L``: what is judged, subject as a report key or element, window.
+
+    ``residual``: of all that belongs to a class (``subject`` its key). ``leached``: what a leaching test draws from a cake; without a
+    subject every metal that ``limit`` lists, as its share of the limit. ``limit``: the published limit or ``site`` that the window is from.
+    """
 
     text: str
-    quantity: Literal["dissolved", "total", "pH"]
+    quantity: Literal["dissolved", "total", "pH", "residual", "leached"]
     subject: str = ""
     vessel: str = ""
     low: float | None = None
     high: float | None = None
     unit: str = ""
+    limit: str = ""
 
 
 class Expectation(Frozen):
@@ -240,5 +276,6 @@ class Case(Frozen):
     vessels: tuple[VesselSpec, ...] = ()
     steps: tuple[Step, ...]
     goals: tuple[Goal, ...] = ()
+    limits: dict[str, str] = {}  # of the site: what (a report key or pH) -> window as written
     expect: tuple[Expectation, ...] = ()
     file: str = ""

@@ -12,6 +12,7 @@ Signal = Literal["danger", "warning", "note"]
 Moment = Literal["contact", "during", "after", "storage"]
 Verdict = Literal["refuse", "conditional", "no objection", "cannot say"]
 Pair = tuple[float, float]
+Stream = Literal["vessel", "cake", "filtrate", "decanted liquid", "washings", "contaminated solid", "sample", "gas"]
 
 
 class ReportPart(BaseModel):
@@ -130,6 +131,41 @@ class HoldPoint(ReportPart):
     sources: list[str] = []
 
 
+class Share(ReportPart):
+    """Where a part of an element is at the end: the stream, as what, how many grams over the stated ranges, and how many per cent of what
+    was put in (nominal). ``carrier``: what dry thing it is wet in, such as paper."""
+
+    place: str
+    stream: Stream
+    state: Literal["dissolved", "solid", "gas", "liquid apart"]
+    form: str = ""
+    grams: Pair
+    nominal_g: float
+    percent: float | None
+    carrier: str = ""
+
+
+class AccountStep(ReportPart):
+    """After a step: g put in so far, and g in each place (nominal)."""
+
+    step: int
+    action: str
+    put_in_g: float
+    grams: dict[str, float]
+
+
+class ElementAccount(ReportPart):
+    """Where every gram of an element went. ``gap_g``: what was put in less what is found, the worst over the stated ranges."""
+
+    element: str
+    name: str
+    put_in_g: Pair
+    shares: list[Share]
+    steps: list[AccountStep]
+    gap_g: float
+    gap_share: float
+
+
 class Report(ReportPart):
     """What `combine` and `vet` return."""
 
@@ -140,6 +176,7 @@ class Report(ReportPart):
     steps: list[StepReport] = []
     goals: list[GoalReport] = []
     hold_points: list[HoldPoint] = []
+    accounts: list[ElementAccount] = []
     unrecognised: list[str] = []
     assumptions: list[str] = []
     questions: list[str] = []

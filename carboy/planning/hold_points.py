@@ -82,7 +82,8 @@ class HoldPoints:
         """The hold points of every step that pours into something, in the order of steps."""
         seen: dict[str, _Seen] = {}
         found: list[HoldPoint] = []
-        for step, trace in zip(walk.case.steps, walk.steps, strict=True):
+        for trace in walk.steps:
+            step = walk.case.steps[trace.number - 1]
             held = seen.setdefault(trace.vessel, _Seen())
             if trace.before is not None and trace.added is not None and trace.path is not None:
                 found += self._before(trace, held.most)

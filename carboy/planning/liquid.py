@@ -48,12 +48,15 @@ def level(hazard: LiquidHazard, content: Mixture, stock: ChemicalStock) -> Array
         if token in content.amounts:
             grams = grams + content.dissolved(token) * counted_mass(token, stock)
     if hazard.classes:
+        # what has a hazard of its own (formaldehyde) is not counted with its class as well
+        own = {token for other in stock.index.hazards.values() for token in other.species}
         for token in content.amounts:
-            if _belongs(token, hazard, stock):
+            if token not in own and _belongs(token, hazard, stock):
                 there = content.dissolved(token) if token in content.dissolvable else content.total(token)
                 grams = grams + there * stock.molar_mass(token)
         for name in content.labelled:
-            if name not in content.amounts and _belongs(name, hazard, stock) and set(stock.yield_of(name)) != {name}:
+            made = set(stock.yield_of(name))
+            if name not in content.amounts and _belongs(name, hazard, stock) and made != {name} and not made <= own:
                 grams = grams + content.remaining(name) * stock.molar_mass(name)
     return 1000 * grams / np.maximum(content.volume_L, 1e-9)
 

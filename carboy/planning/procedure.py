@@ -25,9 +25,16 @@ WASTE, TANK = "waste", "tank"
 _SIZES = (0.1, 0.25, 0.5, 1, 2, 3, 5, 10, 15, 20, 30, 50, 75, 100, 150, 200, 300)  # L
 _GRID = 48  # amounts tried at once when a pH is sought
 _WATER_DENSITY = 0.997  # g/mL at 25 degC, CRC Handbook (from memory)
+_ACID_ENOUGH = 2.0  # pH; what is more acid than this counts towards a dose of acid
 _WITHIN = 0.2  # how far into a window of pH one goes
+_CLOSE = 0.01  # how near the amount for a pH is sought
 _LEAST = 1e-6  # mol of a reagent per litre of waste; below it there is nothing to dose
 _LEAST_G, _LEAST_L = 0.02, 5e-5  # of a reagent per litre of waste; less can be neither weighed nor measured
+_ROUNDS = 7  # how often the grid is closed in; each narrows it by its own number
+_FINEST = 7  # figures of an amount, where fewer would miss a narrow window of pH
+_DROPS = 20.0  # to a millilitre, common practice
+_DROPWISE = 1e-3  # L; less is counted in drops
+_SETTLED = 0.05  # g/L of solid at the end that calls for a filter
 _ORDINALS = ("", "second ", "third ", "fourth ", "fifth ", "sixth ", "seventh ")
 
 
@@ -61,6 +68,9 @@ class Procedure:
     roomier: float = 1.0
     steps: list[dict[str, str]] = field(default_factory=list)
     origin: list[tuple[str, str]] = field(default_factory=list)
+    words: list[str] = field(
+        default_factory=list
+    )  # how the amount of each step is said, where the case file is too exact
     vessels: list[str] = field(default_factory=lambda: [TANK])
     cakes: list[tuple[str, str]] = field(default_factory=list)  # vessel, treatment that filled it
     size_L: float = 1000.0
@@ -84,10 +94,11 @@ class Procedure:
             "goals": list(goals),
         }
 
-    def add(self, step: dict[str, str], treatment: str = "", test: str = "") -> None:
+    def add(self, step: dict[str, str], treatment: str = "", test: str = "", words: str = "") -> None:
         """One more step."""
         self.steps.append(step)
         self.origin.append((treatment, test))
+        self.words.append(words)
 
 
 class Builder:
@@ -100,6 +111,9 @@ class Builder:
         self._ranges = Ranges()
         self._waste = self._made_up()
         self._reagents: dict[str, tuple[Mixture, str]] = {}
+        self.portions = (
+            0  # in how many equal ones the waste would fit the bench, where a procedure was too large for it
+        )
 
     def build(self, sequence: tuple[str, ...], *, slower: float = 1.0, roomier: float = 1.0) -> Procedure:
         """The procedure of a sequence of treatments. Raises CannotDo."""
@@ -107,15 +121,33 @@ class Builder:
         treatments = [self.lab.index.treatments[key] for key in sequence]
         self._begin(made, treatments)
         for treatment in treatments:
+            if self._idle(made, treatment):
+                continue
             for stage in treatment.stages:
                 self._stage(made, treatment, stage)
+        self._settle(made)
         final = float(self.content(made).volume_L[0])
         largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
         if final > largest:
-            raise CannotDo(f"it takes {final:.3g} L of liquid, more than the {largest:g} L of a bench treatment")
+            raise self._too_large("takes", final, 1.1 * final / largest)
         room = self.lab.index.thresholds["treatment-free-space"].value.magnitude * roomier
         made.size_L = next((size for size in _SIZES if size >= room * made.fullest_L), _SIZES[-1])
         return made
+
+    def _too_large(self, verb: str, litres: float, share: float) -> CannotDo:
+        """What is said of a procedure that is too large; ``share`` is how often the bench would have to hold it."""
+        portions = max(ceil(share), 2)
+        self.portions = min(self.portions or portions, portions)
+        return CannotDo(f"it {verb} {litres:.3g} L, too much for one batch on the bench; {portions} portions may fit")
+
+    def _idle(self, made: Procedure, treatment: Treatment) -> bool:
+        """Whether a treatment that doses by what is there finds nothing of it."""
+        content = self.content(made)
+        doses = [stage for stage in treatment.stages if stage.demands and stage.agent != PROTON]
+        least = _LEAST * content.volume_L
+        return bool(doses) and not any(
+            np.any(content.total(demand.species) > least) for stage in doses for demand in stage.demands
+        )
 
     def waste_alone(self) -> Mixture:
         """The waste as it comes, reacted."""
@@ -183,12 +215,11 @@ class Builder:
         if factor > 1.02:
             largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
             if volume * factor > largest:
-                raise CannotDo(
-                    f"it asks for dilution to {volume * factor:.3g} L, more than the {largest:g} L of a bench treatment"
-                )
+                raise self._too_large("asks for dilution to", volume * factor, 1.3 * volume * factor / largest)
             water = _round_up(volume * (factor - 1.0))
             made.steps.clear()
             made.origin.clear()
+            made.words.clear()
             made.content = None
             unit, _ = self._reagent("water")
             self._put(made, self._scaled(unit, 1000.0 * water * _WATER_DENSITY))
@@ -217,22 +248,44 @@ class Builder:
                 self._to_pH(made, treatment, stage)
             case "dose":
                 self._dose(made, treatment, stage)
+            case "stir" if "add" not in made.steps[-1] or made.origin[-1][0] != treatment.id:
+                pass  # nothing of this treatment has gone in that it would mix
             case "stir" | "stand":
                 self._react(made, self.content(made), _speed(stage.action, stage.minutes))
                 made.add({stage.action: _time(stage.minutes), "in": made.vessel}, treatment.id, stage.test)
             case "filter":
-                place = _ORDINALS[min(len(made.cakes), len(_ORDINALS) - 1)]
-                cake, jug = f"{place}sludge", f"{place}jug"
-                made.add({"filter": made.vessel, "cake": cake, "filtrate": jug}, treatment.id, stage.test)
-                self._clear(made)
-                made.cakes.append((cake, treatment.id))
-                made.vessels.append(jug)
+                self._filter(made, treatment.id, stage.test)
+
+    def _filter(self, made: Procedure, treatment: str, test: str) -> None:
+        place = _ORDINALS[min(len(made.cakes), len(_ORDINALS) - 1)]
+        cake, jug = f"{place}sludge", f"{place}jug"
+        made.add({"filter": made.vessel, "cake": cake, "filtrate": jug}, treatment, test)
+        self._clear(made)
+        made.cakes.append((cake, treatment))
+        made.vessels.append(jug)
+
+    def _settle(self, made: Procedure) -> None:
+        """A filter at the end where solid came down that no treatment was about (iron hydroxide of a neutralised pickle)."""
+        content = self.content(made)
+        grams = content.zeros()
+        for token, amount in content.solids.items():
+            grams = grams + amount * self.lab.stock.molar_mass(token)
+        for token, amount in content.aside.items():
+            if self.lab.stock.species(token).phase == "s":
+                grams = grams + amount * self.lab.stock.molar_mass(token)
+        if np.any(grams > _SETTLED * content.volume_L):
+            self._react(made, content, "days")
+            made.add({"stand": "12 h", "in": made.vessel})
+            self._filter(made, "", "")
 
     def _dose(self, made: Procedure, treatment: Treatment, stage: Stage) -> None:
         content = self.content(made)
         # for the most that the stated ranges allow: too little treats nothing, and too much is judged by the vetting
         demands = (content.total(demand.species) * demand.mol_per_mol for demand in stage.demands)
-        needed = stage.excess * float(np.max(sum(demands, content.zeros())))
+        wanted = stage.excess * sum(demands, content.zeros())
+        if stage.agent == PROTON:  # acid that is free already need not be brought
+            wanted = wanted - np.maximum(content.volume_L * (10.0**-content.pH - 10.0**-_ACID_ENOUGH), 0.0)
+        needed = float(np.max(wanted))
         if needed <= _LEAST * float(content.volume_L[0]):
             return
         unit, words = self._reagent(stage.reagent)
@@ -246,8 +299,10 @@ class Builder:
         assert stage.pH_low is not None
         assert stage.pH_high is not None
         content = self.content(made)
-        content = content.take(np.array([0]))
         up = stage.action == "raise"
+        # within stated ranges for the one that needs most; whether the others bear it is judged by the vetting
+        acid = content.total(PROTON)
+        content = content.take(np.array([int(np.argmax(acid) if up else np.argmin(acid))]))
         inside = content.pH[0] >= stage.pH_low if up else content.pH[0] <= stage.pH_high
         if inside:
             return
@@ -258,18 +313,29 @@ class Builder:
         low, high = 1e-6 * litres, (2000.0 if words == "g" else 5.0) * litres
         amounts = np.geomspace(low, high, _GRID)
         reached = np.nan
-        for _ in range(3):
+        for _ in range(_ROUNDS):
             pH = self._pH_after(content, unit, amounts)
             there = pH >= aim if up else pH <= aim
             if not there.any():
                 raise CannotDo(f"{stage.reagent} does not bring the pH to {aim:.1f}")
             place = int(np.argmax(there))
             low, high, reached = (amounts[place - 1] if place else 0.0), float(amounts[place]), float(pH[place])
+            if high - low < _CLOSE * high and stage.pH_low <= reached <= stage.pH_high:
+                break
             amounts = np.linspace(low, high, _GRID)
         if reached > stage.pH_high + 0.3 if up else reached < stage.pH_low - 0.3:
             raise CannotDo(f"{stage.reagent} overshoots the window of pH {stage.pH_low:g} to {stage.pH_high:g}")
         if high > (_LEAST_G if words == "g" else _LEAST_L) * litres:
-            self._pour(made, treatment, stage, high, words)
+            self._pour(made, treatment, stage, self._fewest_figures(content, unit, high, stage, words), words)
+
+    def _fewest_figures(self, content: Mixture, unit: Mixture, amount: float, stage: Stage, words: str) -> float:
+        """The amount rounded as far as the pH stays in the window."""
+        assert stage.pH_low is not None
+        assert stage.pH_high is not None
+        rounded = np.array([_rounded(amount, digits, words) for digits in range(3, _FINEST + 1)])
+        pH = self._pH_after(content, unit, rounded)
+        fits = (pH >= stage.pH_low) & (pH <= stage.pH_high)
+        return float(rounded[int(np.argmax(fits))]) if fits.any() else amount
 
     def _pH_after(self, content: Mixture, unit: Mixture, amounts: np.ndarray) -> np.ndarray:
         together = poured_together(content.repeated(len(amounts)), unit.repeated(len(amounts)).scaled(amounts))
@@ -278,11 +344,22 @@ class Builder:
         return np.nan_to_num(after.pH, nan=7.0)
 
     def _pour(self, made: Procedure, treatment: Treatment, stage: Stage, amount: float, words: str) -> None:
-        text = f"{_amount(amount) if words == 'L' else _grams(amount)} of {stage.reagent}"
+        exact = stage.pH_low is not None
+        digits = _FINEST if exact else 4
+        text = f"{_amount(amount, digits) if words == 'L' else _grams(amount, digits)} of {stage.reagent}"
         step = {"add": text, "to": made.vessel}
-        if stage.minutes:
-            step["over"] = f"{_minutes(stage.minutes * made.slower)} min"
-        made.add(step, treatment.id, stage.test)
+        minutes = stage.minutes * made.slower
+        said = ""
+        if words == "L" and amount < _DROPWISE:
+            minutes = min(minutes, _DROPS * amount * 1000 / 4)  # some four drops a minute
+            said = f"{_amount(amount, 2)} ({max(1, round(_DROPS * 1000 * amount))} drops) of {stage.reagent}"
+        elif exact:
+            said = f"about {_amount(amount, 3) if words == 'L' else _grams(amount, 3)} of {stage.reagent}"
+        if exact:
+            said += f", to pH {stage.pH_low:g} to {stage.pH_high:g},"
+        if minutes:
+            step["over"] = f"{_minutes(minutes)} min"
+        made.add(step, treatment.id, stage.test, said)
         unit, _ = self._reagent(stage.reagent)
         self._put(made, self._scaled(unit, amount))
 
@@ -310,17 +387,25 @@ def _speed(action: str, minutes: float) -> str:
     return "minutes" if action == "stir" or minutes < 30 else "hours" if minutes < 720 else "days"
 
 
-def _figures(value: float, digits: int = 4) -> str:
+def _rounded(value: float, digits: int, words: str) -> float:
+    """As the text of the case has it: the same digits whether told in L or mL."""
+    return (
+        float(_figures(value, digits)) if words == "g" or value >= 1 else float(_figures(1000 * value, digits)) / 1000
+    )
+
+
+def _figures(value: float, digits: int) -> str:
     rounded = round(value, digits - 1 - floor(log10(abs(value)))) if value > 0 else 0.0
-    return f"{rounded:.10f}".rstrip("0").rstrip(".")
+    text = f"{rounded:.10f}"
+    return text.rstrip("0").rstrip(".") if "." in text else text
 
 
-def _amount(litres: float) -> str:
-    return f"{_figures(litres)} L" if litres >= 1 else f"{_figures(1000 * litres)} mL"
+def _amount(litres: float, digits: int = 4) -> str:
+    return f"{_figures(litres, digits)} L" if litres >= 1 else f"{_figures(1000 * litres, digits)} mL"
 
 
-def _grams(grams: float) -> str:
-    return f"{_figures(grams)} g"
+def _grams(grams: float, digits: int = 4) -> str:
+    return f"{_figures(grams, digits)} g"
 
 
 def _minutes(value: float) -> str:

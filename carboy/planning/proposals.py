@@ -97,13 +97,13 @@ class Proposer:
     # --- what there is
 
     def _trace(self, finding: Finding) -> StepTrace:
-        return self.walk.steps[finding.step - 1]
+        return self.walk.trace_of(finding.step, finding.vessel)
 
     def _pour(self, finding: Finding) -> tuple[int, Add] | None:
         """The step of the finding if it pours something into a vessel that holds something already."""
         place = finding.step - 1
         step = self.case.steps[place]
-        trace = self.walk.steps[place]
+        trace = self.walk.trace_of(finding.step, finding.vessel)
         return (place, step) if isinstance(step, Add) and trace.before is not None and trace.added is not None else None
 
     def _capacity(self, vessel: str) -> float:
@@ -210,7 +210,7 @@ class Proposer:
         last = finding.step - 1
         pours = [place for place in edits.pours_into(self.case, vessel) if place <= last]
         for place in reversed(pours[1:]):
-            before = self.walk.steps[place].before
+            before = self.walk.trace_of(place + 1, vessel).before
             if before is None or not (before.solids or before.aside):
                 continue
             filters = [
@@ -231,9 +231,9 @@ class Proposer:
     def _place_for_reagent(self, finding: Finding) -> tuple[int, str, Mixture, Mixture | None] | None:
         """Before which step, into which vessel, with what in it, and what the step then adds."""
         place = finding.step - 1
-        trace = self.walk.steps[place]
         step = self.case.steps[place]
         vessel = edits.vessel_of(step)
+        trace = self.walk.trace_of(finding.step, vessel)
         if trace.before is None or not vessel or not trace.before.amounts:
             return None
         return place, vessel, trace.before, trace.added if isinstance(step, Add) else None

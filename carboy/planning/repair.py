@@ -309,10 +309,11 @@ def _most(findings: list[Finding]) -> float:
 def _dissolved_in_the_end(metal: str, report: Report, case: Case) -> float:
     """mol of a metal dissolved in all vessels when the procedure is over, at the most."""
     last: dict[str, float] = {}
-    for step, state in zip(case.steps, report.steps, strict=True):
+    for state in report.steps:
+        step = case.steps[state.step - 1]
         emptied = {
             Filter: lambda one: one.vessel,
-            Transfer: lambda one: one.vessel if one.part is None else "",
+            Transfer: lambda one: one.vessel if one.part is None and one.heel is None else "",
             Add: lambda one: one.source if one.part is None else "",
         }.get(type(step))
         if emptied is not None:
@@ -357,7 +358,8 @@ def _checks_hold(report: Report, case: Case, before: Report, old: Case) -> bool:
 
 def _checks(report: Report, case: Case) -> list[bool]:
     met = []
-    for step, state in zip(case.steps, report.steps, strict=True):
+    for state in report.steps:
+        step = case.steps[state.step - 1]
         if not isinstance(step, Check):
             continue
         pair = {"pH": state.pH, "temperature": state.temperature_C}.get(step.quantity)

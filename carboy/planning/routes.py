@@ -14,12 +14,13 @@ from carboy.chemistry.mixture import TRACE, Mixture
 from carboy.errors import InputError
 from carboy.hazards.steps import pair
 from carboy.model.knowledge import Index
-from carboy.model.plan import Goal
+from carboy.model.plan import Goal, Portion
 from carboy.model.report import Report
 from carboy.model.treatment import Rejected, Route, RouteStep, Stream, TreatReport
 from carboy.planning.liquid import counted_mass, hazards_of, said, unknown_metals
 from carboy.planning.procedure import WASTE, Builder, CannotDo, Procedure, Vetter
-from carboy.planning.search import State, must_go, reachable, sequences
+from carboy.planning.search import PH, State, must_go, reachable, sequences
+from carboy.text.case_writer import quantity_text
 from carboy.text.cases import case_from_mapping
 from carboy.text.goals import parse_goal
 from carboy.text.portions import parse_portion
@@ -33,9 +34,14 @@ CAUTIONS = (
     "Try it on a hundredth of the waste first, and measure what the label does not say.",
 )
 NEUTRALISATION = "Only the pH makes this a waste: the elementary neutralisation exclusion may hold (40 CFR 264.1(g)(6)); ask the site."
+LIQUID_GOES_TO = "the sewer, where its authority allows, or a contractor"
+SOLID_GOES_TO = "a contractor, unless an analysis shows it harmless"
 DEFAULT_SETTING = {"place": "hood", "hood_flow": "0.4 m3/s", "temperature": "22 degC"}
 _TRIED = 10  # sequences made into procedures
+_LISTED = 60  # sequences looked through for those
 _OFFERED = 3
+_OFFERED_ALIKE = 2  # of those that take the hazards of the waste in the same way and differ in what follows
+_TRIED_ALIKE = 4
 _PATIENCE = ((1.0, 1.0), (4.0, 2.5))  # how much slower and roomier each try is
 _CURED_BY_PATIENCE = frozenset({"foam", "heat", "asphyxiant-gas", "pressure", "oxygen", "toxic-gas"})
 _SHOWN = 1e-3  # mg/L
@@ -49,6 +55,8 @@ def find_routes(
     aim: str | None = None,
     setting: Mapping[str, Any] | None = None,
     progress: Progress | None = None,
+    *,
+    _split_before: bool = False,
 ) -> TreatReport:
     """Routes for the waste that ``waste`` describes like a label. ``aim``: a further goal, ``dissolved mercury below 0.2 mg/L``.
 
@@ -71,7 +79,27 @@ def find_routes(
     state = hazards_of(content, lab.stock)
     report = blank.model_copy(update={"hazards": said(state, lab.index.hazards)})
     report.remains = said(state - must_go(lab.index), lab.index.hazards)
-    return _searched(report, state, content, builder, lab, goal, progress)
+    report = _searched(report, state, content, builder, lab, goal, progress)
+    part = "" if report.routes or _split_before else _part(portion, builder.portions, lab)
+    if part:
+        split = find_routes(lab, part, aim, setting, progress, _split_before=True)
+        if split.routes:
+            split.reasons.insert(
+                0,
+                f"It is too much for one batch on the bench. These routes are for one of {builder.portions} equal portions, "
+                f"{part.partition(' of ')[0]} each; every portion is treated by itself.",
+            )
+            return split.model_copy(update={"waste": waste})
+    return report
+
+
+def _part(portion: Portion, parts: int, lab: Vetter) -> str:
+    """One of so many equal parts of a waste as a label has it; empty where it cannot be said, or need not."""
+    words = portion.text.partition(" of ")[2]
+    if parts < 2 or not words or portion.unit == "mol":
+        return ""
+    text = f"{quantity_text(portion.amount.times(1.0 / parts), portion.unit)} of {words}"
+    return text if parse_portion(text, lab.names).ingredients == portion.ingredients else ""
 
 
 def _searched(
@@ -99,19 +127,26 @@ def _searched(
         return report
     report.outcome = "no sound treatment"
     found: list[Route] = []
-    queue = list(sequences(state, lab.index, _TRIED))
+    queue = list(sequences(state, lab.index, _LISTED))
     tried: list[tuple[str, ...]] = []
+    alike: dict[frozenset[str], tuple[int, int]] = {}  # tried and offered
     while queue and len(tried) < _TRIED and len(found) < _OFFERED:
         sequence = queue.pop(0)
         if sequence in tried or any(set(route.treatments) <= set(sequence) for route in found):
             continue  # the same with something needless added
+        manner = _manner(sequence, state, lab.index)
+        tries, offers = alike.get(manner, (0, 0))
+        if tries >= _TRIED_ALIKE or offers >= _OFFERED_ALIKE:
+            continue
         tried.append(sequence)
+        alike[manner] = (tries + 1, offers)
         if progress is not None:
-            progress(len(tried), len(tried) + len(queue))
+            progress(len(tried), _TRIED)
         attempt = _tried(sequence, state, builder, lab, goal)
         if isinstance(attempt, Route):
             if all(route.case_file != attempt.case_file for route in found):
                 found.append(attempt)
+                alike[manner] = (tries + 1, offers + 1)
             continue
         report.rejected.append(attempt.rejected)
         if attempt.left and attempt.left != state:  # what the records did not foresee: go on from where it ended
@@ -138,12 +173,41 @@ def _searched(
             "None of the treatments of the graph reaches a safe end by way of steps that vet clean; what stood in the way is told for each."
         )
     else:
-        stuck = said(reachable(state, lab.index), lab.index.hazards)
+        stuck = reachable(state, lab.index)
         report.reasons.append(
             "No sequence of the recorded treatments fits: "
-            + (f"{', '.join(stuck)} would stay." if stuck else "each is forbidden by something else in the liquid.")
+            + (
+                f"{', '.join(said(stuck, lab.index.hazards))} would stay."
+                if stuck
+                else "each is forbidden by something else in the liquid."
+            )
         )
+        report.reasons += _in_the_way(stuck, state, lab.index)
     return report
+
+
+def _manner(sequence: tuple[str, ...], state: State, index: Index) -> frozenset[str]:
+    """The treatments of a sequence that take what the waste holds, the pH aside where there is more."""
+    meant = state & must_go(index)
+    meant = meant - set(PH) or meant
+    return frozenset(key for key in sequence if meant & set(index.treatments[key].takes))
+
+
+def _in_the_way(stuck: State, state: State, index: Index) -> list[str]:
+    """For each hazard that stays, what keeps its treatments from being done."""
+    words = []
+    for key in sorted(stuck - set(PH) or stuck):
+        takers = [treatment for treatment in index.treatments.values() if key in treatment.takes]
+        against = state & frozenset(other for treatment in takers for other in treatment.forbidden_by)
+        if takers and against:
+            name = index.hazards[key].name
+            words.append(
+                f"{name[0].upper()}{name[1:]}: its treatments ({'; '.join(treatment.name for treatment in takers)}) "
+                f"are not sound beside {', '.join(said(against, index.hazards))}."
+            )
+    if words:
+        words.append("It leaves closed, with all of it on the label, by a contractor.")
+    return words
 
 
 def _not_calculated(tried: list[tuple[str, ...]], index: Index) -> list[str]:
@@ -265,8 +329,10 @@ def _route(
         names=[item.name for item in treatments],
         vessel_L=made.size_L,
         steps=[
-            RouteStep(step=place.step, action=_said_step(step), treatment=treatment, pH=place.pH, test=test)
-            for step, place, (treatment, test) in zip(made.steps, report.steps, made.origin, strict=True)
+            RouteStep(step=place.step, action=_said_step(step, words), treatment=treatment, pH=place.pH, test=test)
+            for step, words, place, (treatment, test) in zip(
+                made.steps, made.words, report.steps, made.origin, strict=True
+            )
         ],
         streams=streams,
         sludge_g=sludge,
@@ -280,10 +346,10 @@ def _route(
     )
 
 
-def _said_step(step: Mapping[str, str]) -> str:
+def _said_step(step: Mapping[str, str], words: str) -> str:
     if "add" in step:
         over = f" over {step['over']}" if "over" in step else ""
-        return f"add {'the ' if step['add'] == WASTE else ''}{step['add']} to the {step['to']}{over}"
+        return f"add {'the ' if step['add'] == WASTE else ''}{words or step['add']} to the {step['to']}{over}"
     if "filter" in step:
         return f"filter the {step['filter']}: {step['cake']} on the filter, clear liquid to the {step['filtrate']}"
     action = next(iter(step))
@@ -293,13 +359,9 @@ def _said_step(step: Mapping[str, str]) -> str:
 def _streams(made: Procedure, walk: Walk, lab: Vetter) -> list[Stream]:
     streams = []
     ending = made.origin[-1][0]
-    rest = (
-        lab.index.treatments[ending].goes_to
-        if ending and not made.cakes
-        else "the sewer, where its authority allows, or a contractor"
-    )
+    rest = lab.index.treatments[ending].goes_to if ending and not made.cakes else LIQUID_GOES_TO
     for vessel, kind, goes in (
-        *((name, "sludge", lab.index.treatments[key].goes_to) for name, key in made.cakes),
+        *((name, "sludge", lab.index.treatments[key].goes_to if key else SOLID_GOES_TO) for name, key in made.cakes),
         (made.vessel, "liquid", rest),
     ):
         content = walk.vessels[vessel].content

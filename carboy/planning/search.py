@@ -14,7 +14,7 @@ State = frozenset[str]
 _DONE = "done"
 _LONGEST = 7  # treatments in a row
 _LOOKED_AT = 400  # sequences looked at, cheapest first
-_PH = ("acid", "base")
+PH = ("acid", "base")
 
 
 def must_go(index: Index) -> State:
@@ -26,15 +26,15 @@ def must_go(index: Index) -> State:
 def applies(treatment: Treatment, state: State) -> bool:
     """Whether a treatment may be done in a state, and for more than the pH it brings on the way."""
     takes = set(treatment.takes)
-    meant = takes - set(_PH) or takes
+    meant = takes - set(PH) or takes
     return bool(meant & state) and not set(treatment.forbidden_by) & state
 
 
 def after(treatment: Treatment, state: State) -> State:
     """The state that a treatment leaves, as its record has it."""
     left = set(state) - set(treatment.takes)
-    if set(treatment.leaves) & set(_PH):
-        left -= set(_PH)
+    if set(treatment.leaves) & set(PH):
+        left -= set(PH)
     return frozenset(left | set(treatment.leaves))
 
 

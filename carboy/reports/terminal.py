@@ -6,6 +6,7 @@ from collections.abc import Iterator, Mapping, Sequence
 
 from carboy.model.knowledge import Source
 from carboy.model.report import Report
+from carboy.reports.accounting import account_lines
 from carboy.reports.citations import Citations
 from carboy.reports.hold_points import hold_lines
 from carboy.reports.measures import measure_lines, step_lines
@@ -42,6 +43,9 @@ def _lines(
     yield from measure_lines(report, style, full=full)
     yield from step_lines(report, style)
     yield from path_lines(report, style, full=full)
+    for account in report.accounts:
+        yield ""
+        yield from account_lines(account, style)
     yield from listed("Taken as given", gathered(report.assumptions), style, faint=True)
     yield from citations.lines(style, full=full)
     if report.cautions:

@@ -13,6 +13,7 @@ from collections.abc import Sequence
 from typing import Any, Literal
 
 from carboy.model.plan import (
+    Absorbent,
     Add,
     Case,
     Check,
@@ -27,6 +28,7 @@ from carboy.model.plan import (
     Transfer,
     VesselSpec,
     Wait,
+    Wipe,
 )
 
 Measured = Literal["L", "g", "s", "degC", "kPa", "m3/s", "m3", "/h"]
@@ -90,6 +92,8 @@ def case_text(case: Case, comments: Sequence[str] = ()) -> str:
     if case.vessels:
         root["vessels"] = {spec.name: _vessel(spec) for spec in case.vessels}
     root["steps"] = [_step(step) for step in case.steps]
+    if case.limits:
+        root["limits"] = dict(case.limits)
     if case.goals:
         root["goals"] = [goal.text for goal in case.goals]
     if case.expect:
@@ -164,6 +168,20 @@ def _step(step: Step) -> dict[str, Any] | str:
                 row["passes"] = f"{figure(100 * step.passes.low)} to {figure(100 * step.passes.high)} %"
                 if step.passes.exact:
                     row["passes"] = f"{figure(100 * step.passes.low)} %"
+            if step.first_runnings is not None:
+                row["first_runnings"] = quantity_text(step.first_runnings, "L")
+            if step.runnings:
+                row["runnings"] = step.runnings
+            if step.aid is not None:
+                row["aid"] = _absorbent(step.aid)
+            if step.paper is not None:
+                row["paper"] = _absorbent(step.paper)
+                row["waste"] = step.waste
+        case Transfer(kind="sample"):
+            row["sample"] = (
+                f"{quantity_text(step.part, step.part_unit)} from {step.vessel}" if step.part else step.vessel
+            )
+            row["to"] = step.to
         case Transfer():
             row["transfer"] = step.vessel
             row["to"] = step.to
@@ -173,8 +191,16 @@ def _step(step: Step) -> dict[str, Any] | str:
                 row["heel"] = quantity_text(step.heel, "L")
             _timed(row, "over", step.over)
         case Rinse():
-            row["rinse"] = step.vessel
+            row[step.kind] = step.vessel
             row["with"] = step.portion.text
+            if step.to:
+                row["to"] = step.to
+            if step.retained is not None:
+                row["retained"] = f"{figure(step.retained)} mL/g"
+        case Wipe():
+            row["wipe"] = step.vessel
+            row["with"] = _absorbent(step.absorbent)
+            row["to"] = step.to
         case Temper():
             row[step.kind] = quantity_text(step.to, "degC")
             _placed(row, step.vessel)
@@ -197,6 +223,15 @@ def _added(step: Add) -> str:
     if step.part is None:
         return step.source
     return f"{quantity_text(step.part, 'g' if step.part_unit == 'g' else 'L')} from {step.source}"
+
+
+def _absorbent(dry: Absorbent) -> str:
+    text = (
+        f"{quantity_text(Interval(low=dry.grams, high=dry.grams), 'g')} of {dry.words}"
+        if dry.words
+        else f"{figure(dry.grams)} g"
+    )
+    return text if dry.holds is None else f"{text}, {figure(dry.holds)} mL/g"
 
 
 def _timed(row: dict[str, Any], key: str, duration: Interval | None) -> None:

@@ -6,16 +6,21 @@ one open glass vessel (its ``volume`` is None: twice the final volume); filterin
 names given, or ``cake`` and ``filtrate``.
 
 Besides what the bench language shows: ``half of``, ``the rest of`` and ``all of`` a bottle; ``stir: 10 min``; a step
-of one word (``- stir``); ``retained`` (mL of liquid per g of solid) and ``passes`` (share of the solids) of a filter;
-``heel`` and ``part`` of a transfer; ``rinse: cake-1`` ``with: 50 mL of water``; a vessel written as its volume
-(``tank: 20 L``).
+of one word (``- stir``); ``heel`` and ``part`` of a transfer; a vessel written as its volume (``tank: 20 L``).
+
+A filter may have ``retained`` (mL of liquid per g of solid) and ``passes`` (share of the solids that runs through),
+``first_runnings: 200 mL`` (which hold all that passes) with ``runnings``, the vessel they go to; ``aid: 20 g`` (filter aid,
+which stays with the cake) and ``paper: 5 g`` with ``waste``, the bin that it goes to (``contaminated solids``). Both hold
+liquid; ``20 g, 3 mL/g`` says how much. ``settle: 2 h`` lets solids sink before a ``decant``. ``wash: cake-1`` (or ``rinse``)
+``with: 50 mL of water`` ``to: washings``; without ``to`` the rinse stays where it is. ``sample: 20 mL from tank`` ``to: vial``.
+``wipe: tank`` ``with: 10 g of paper`` ``to: bin``.
 """
 
 from __future__ import annotations
 
 import math
 import re
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
 from typing import Any, Literal, get_args
@@ -24,6 +29,7 @@ from msgspec import Struct
 
 from carboy.errors import InputError
 from carboy.model.plan import (
+    Absorbent,
     Add,
     Case,
     Check,
@@ -40,31 +46,46 @@ from carboy.model.plan import (
     Transfer,
     VesselSpec,
     Wait,
+    Wipe,
 )
 from carboy.model.report import Moment, Signal, Verdict
 from carboy.model.rule import Kind
 from carboy.span import Span
 from carboy.text.documents import MOST_CHARACTERS, Node, from_data, read_yaml
-from carboy.text.goals import Target, parse_target
+from carboy.text.goals import Target, goal_of, parse_target
 from carboy.text.passages import Passage, closest
 from carboy.text.portions import NameLookup, parse_portion
 from carboy.text.quantities import Dimension, begins_quantity, parse_quantity, read_quantity
 
-CASE_KEYS = ("title", "setting", "bottles", "vessels", "steps", "goals", "expect")
+CASE_KEYS = ("title", "setting", "bottles", "vessels", "steps", "limits", "goals", "expect")
 SETTING_KEYS = ("place", "hood_flow", "room_volume", "air_changes", "temperature")
 VESSEL_KEYS = ("volume", "material", "cover", "rating", "holds")
 PLACES = ("hood", "bench", "room", "outdoors", "glovebox", "cabinet", "store")
 COVERS: tuple[str, ...] = ("open", "loose", "vented", "sealed")
 STEP_KEYS: dict[str, tuple[str, ...]] = {
     "add": ("to", "over"),
-    "filter": ("cake", "filtrate", "retained", "passes"),
+    "filter": (
+        "cake",
+        "filtrate",
+        "retained",
+        "passes",
+        "aid",
+        "paper",
+        "waste",
+        "first_runnings",
+        "runnings",
+    ),
     "decant": ("to", "cake", "filtrate", "retained", "passes"),
     "transfer": ("to", "part", "heel", "over"),
-    "rinse": ("with",),
+    "sample": ("to",),
+    "rinse": ("with", "to", "retained"),
+    "wash": ("with", "to", "retained"),
+    "wipe": ("with", "to"),
     "heat": ("in", "to"),
     "cool": ("in", "to"),
     "wait": ("in", "for"),
     "stand": ("in", "for"),
+    "settle": ("in", "for"),
     "stir": ("in", "for"),
     "seal": ("in",),
     "open": ("in",),
@@ -101,11 +122,21 @@ NUMBERS_OF_A_STEP = (
 )
 _WITH_SPECIES = ("dissolved_mol", "solids_mol", "gas_mol")
 DEFAULT_VESSEL = "vessel"
+WASTE = "contaminated solids"  # the bin for paper and the like where none is named
 _LARGEST_VESSEL = 1e5  # L
 _LONGEST_TIME = 3.2e9  # s, a hundred years
 _LONGEST_NAME = 80
 
 _FROM = re.compile(r"(?P<part>\S.*?)\s+(?:from|out of|of)\s+(?:the\s+)?(?P<source>\S.*)", re.IGNORECASE)
+_ABSORBENT = re.compile(
+    r"\s*(?P<amount>[^,]*?\d\s*(?:mg|g|kg))\s*(?:of\s+(?P<what>[^,]+?))?\s*"
+    r"(?:,\s*(?P<holds>\d+(?:\.\d+)?)\s*(?:mL|ml)\s*(?:/|per)\s*g)?\s*"
+)
+_MEETS = re.compile(
+    r"\s*(?P<vessel>\S.*?)\s+(?:meets|keeps|is within)\s+(?:the\s+)?(?:site|discharge|site's own)\s+limits?\s*",
+    re.IGNORECASE,
+)
+_MOST_HELD = 100.0  # mL per g
 _SHARES = {"all": 1.0, "half": 0.5, "a half": 0.5, "a third": 1 / 3, "a quarter": 0.25}
 _REST = ("rest", "the rest", "remainder", "the remainder", "what is left")
 
@@ -229,6 +260,7 @@ class _CaseReader:
     made: set[str] = field(default_factory=set)  # by filtering and decanting
     filled: set[str] = field(default_factory=set)
     declared: bool = True
+    site: dict[str, Target] = field(default_factory=dict)  # limits of the site, by report key or pH
 
     # -- the whole
 
@@ -257,7 +289,8 @@ class _CaseReader:
         if not nodes:
             entries["steps"][1].fail("the list of steps is empty")
         steps = tuple(self.step(node) for node in nodes)
-        goals = tuple(self.goal(node) for node in self.optional_list(entries, "goals"))
+        limits = self.limits(entries["limits"][1]) if "limits" in entries else {}
+        goals = tuple(goal for node in self.optional_list(entries, "goals") for goal in self.goals(node))
         expect = tuple(self.expectation(node, len(steps), goals) for node in self.optional_list(entries, "expect"))
         return Case(
             title=title or (Path(self.file).stem if self.file else "untitled"),
@@ -266,6 +299,7 @@ class _CaseReader:
             vessels=tuple(self.vessels.values()),
             steps=steps,
             goals=goals,
+            limits=limits,
             expect=expect,
             file=self.file,
         )
@@ -366,11 +400,15 @@ class _CaseReader:
             return self.filter("filter" if verb == "filter" else "decant", value, options)
         if verb == "transfer":
             return self.transfer(value, options)
-        if verb == "rinse":
-            return self.rinse(place, value, options)
+        if verb == "sample":
+            return self.sample(value, options)
+        if verb in ("rinse", "wash"):
+            return self.rinse("rinse" if verb == "rinse" else "wash", place, value, options)
+        if verb == "wipe":
+            return self.wipe(place, value, options)
         if verb in ("heat", "cool"):
             return self.temper("heat" if verb == "heat" else "cool", place, value, options)
-        if verb in ("wait", "stand", "stir"):
+        if verb in ("wait", "stand", "settle", "stir"):
             return self.wait(verb, place, value, options)
         if verb == "check":
             return self.check(value, options)
@@ -569,7 +607,114 @@ class _CaseReader:
         passes: Interval | None = None
         if "passes" in options:
             passes = parse_quantity(options["passes"].worded("the share of solids that passes"), "share")
-        return Filter(kind=kind, vessel=vessel, cake=cake, filtrate=filtrate, retained=retained, passes=passes)
+        aid = self.absorbent(options["aid"], "filter aid") if "aid" in options else None
+        paper = self.absorbent(options["paper"], "paper") if "paper" in options else None
+        waste = self.bin(options.get("waste"), (vessel, cake, filtrate)) if paper is not None else ""
+        if paper is None and "waste" in options:
+            options["waste"].fail(
+                "'waste' is where the 'paper' goes; say how much paper there is, such as 'paper: 5 g'"
+            )
+        first, runnings = self.first_runnings(options, passes, cake, filtrate)
+        return Filter(
+            kind=kind,
+            vessel=vessel,
+            cake=cake,
+            filtrate=filtrate,
+            retained=retained,
+            passes=passes,
+            aid=aid,
+            paper=paper,
+            waste=waste,
+            first_runnings=first,
+            runnings=runnings,
+        )
+
+    def first_runnings(
+        self, options: dict[str, Node], passes: Interval | None, cake: str, filtrate: str
+    ) -> tuple[Interval | None, str]:
+        """The first runnings of a filter and the vessel they go to (\"\" for the filtrate's)."""
+        if "first_runnings" not in options:
+            if "runnings" in options:
+                options["runnings"].fail("how much are the first runnings? Write such as 'first_runnings: 200 mL'")
+            return None, ""
+        node = options["first_runnings"]
+        volume = parse_quantity(node.worded("the first runnings"), "volume")
+        if volume.high <= 0.0:
+            node.fail("first runnings of nothing are none; leave this out")
+        if passes is None:
+            node.fail("what share of the solids passes with the first runnings? Write such as 'passes: 2 %'")
+        if "runnings" not in options:
+            return volume, ""
+        place = options["runnings"].worded("the name of a vessel").text.strip()
+        if place == cake:
+            options["runnings"].fail("the first runnings cannot go into the cake; name another vessel")
+        name = place if place in self.vessels else self.new_vessel(options["runnings"], "runnings", filtrate)
+        self.filled.add(name)
+        return volume, name
+
+    def absorbent(self, node: Node, words: str) -> Absorbent:
+        """``20 g``, ``20 g of paper``, ``20 g of paper, 3 mL/g``."""
+        passage = node.worded(f"the {words}")
+        found = _ABSORBENT.fullmatch(passage.plain)
+        if found is None:
+            node.fail(
+                f"the {words} is given by its dry weight, such as '20 g', or '20 g, 3 mL/g' with the liquid that it holds"
+            )
+        reading = read_quantity(passage, found.start("amount"), found.end("amount"), ("mass",), "a weight")
+        if reading is None or passage.plain[reading.end : found.end("amount")].strip() or reading.interval.high <= 0.0:
+            node.fail(f"the {words} is given by its dry weight, such as '20 g'")
+        if not reading.interval.exact:
+            node.fail(f"the dry weight of the {words} is one figure, such as '20 g'")
+        named = (found["what"] or words).strip()
+        holds = float(found["holds"].replace(",", ".")) if found["holds"] else None
+        if holds is not None and holds > _MOST_HELD:
+            node.fail("nothing holds as much liquid as that; the figure is in mL per g")
+        material = self.names.container(named) or self.names.container("paper") or ""
+        return Absorbent(grams=reading.interval.low, holds=holds, material=material, words=named)
+
+    def bin(self, node: Node | None, taken: Sequence[str]) -> str:
+        """The vessel that contaminated solids go to: a known one, or a new one of this name."""
+        if node is None:
+            if WASTE not in self.vessels:
+                self.made.add(WASTE)
+            name = WASTE
+        else:
+            name = node.worded("the name of a vessel").text.strip()
+            if name in taken:
+                node.fail(f"'{name}' is where something else of this step goes; a bin has a name of its own")
+            if name not in self.known_vessels():
+                name = self.new_vessel(node, WASTE, "")
+        self.filled.add(name)
+        return name
+
+    def wipe(self, place: Passage, value: Node, options: dict[str, Node]) -> Wipe:
+        if "with" not in options:
+            raise InputError("a wipe needs 'with', such as 'with: 10 g of paper'", span=_span(place))
+        vessel = self.existing(value if value.kind != "null" else None, place, filled=True)
+        absorbent = self.absorbent(options["with"], "paper")
+        return Wipe(vessel=vessel, absorbent=absorbent, to=self.bin(options.get("to"), (vessel,)))
+
+    def sample(self, value: Node, options: dict[str, Node]) -> Transfer:
+        """``20 mL from tank``."""
+        passage = value.worded("what is sampled")
+        found = _FROM.fullmatch(passage.plain.strip())
+        if found is None:
+            value.fail("a sample says how much is taken of what, such as '20 mL from tank'")
+        taken = self.taken(passage, found)
+        if taken is None or "part" not in taken or taken["source"] in self.bottles:
+            value.fail("a sample says how much is taken of which vessel, such as '20 mL from tank'")
+        vessel = taken["source"]
+        node = options.get("to")
+        if node is None:
+            to = self.new_vessel(None, "sample", vessel)
+        else:
+            to = node.worded("the name of a vessel").text.strip()
+            if to == vessel:
+                node.fail(f"a sample of '{to}' goes into another vessel")
+            if to not in self.known_vessels():
+                to = self.new_vessel(node, "sample", vessel)
+        self.filled.add(to)
+        return Transfer(kind="sample", vessel=vessel, to=to, part=taken["part"], part_unit=taken["part_unit"])
 
     def retained(self, node: Node) -> float:
         """mL per g: ``0.5`` or ``0.5 mL/g``."""
@@ -627,13 +772,24 @@ class _CaseReader:
         over = self.duration(options["over"], "the time of a transfer") if "over" in options else None
         return Transfer(vessel=vessel, to=to, part=part, heel=heel, over=over)
 
-    def rinse(self, place: Passage, value: Node, options: dict[str, Node]) -> Rinse:
+    def rinse(self, kind: Literal["rinse", "wash"], place: Passage, value: Node, options: dict[str, Node]) -> Rinse:
         if "with" not in options:
-            raise InputError("a rinse needs 'with', the portion to rinse with", span=_span(place))
+            raise InputError(f"a {kind} needs 'with', the portion to {kind} with", span=_span(place))
         vessel = self.existing(value if value.kind != "null" else None, place)
         portion = parse_portion(options["with"].worded("what is rinsed with"), self.names)
         self.filled.add(vessel)
-        return Rinse(vessel=vessel, portion=portion)
+        if "retained" in options and "to" not in options:
+            options["retained"].fail("the liquid retained is what stays when washings run off; say where 'to'")
+        if "to" not in options:
+            return Rinse(kind=kind, vessel=vessel, portion=portion)
+        to = options["to"].worded("the name of a vessel").text.strip()
+        if to == vessel:
+            options["to"].fail(f"the washings cannot run back into '{vessel}'; leave 'to' out if they stay there")
+        if to not in self.known_vessels():
+            to = self.new_vessel(options["to"], "washings", vessel)
+        self.filled.add(to)
+        retained = self.retained(options["retained"]) if "retained" in options else None
+        return Rinse(kind=kind, vessel=vessel, portion=portion, to=to, retained=retained)
 
     def temper(self, kind: Literal["heat", "cool"], place: Passage, value: Node, options: dict[str, Node]) -> Temper:
         """``heat: 80 degC`` with ``in``, or ``heat: tank`` with ``to``."""
@@ -693,22 +849,53 @@ class _CaseReader:
 
     # -- goals and expectations
 
-    def goal(self, node: Node) -> Goal:
+    def limits(self, node: Node) -> dict[str, str]:
+        """The site's own limits: ``mercury: 0.05 mg/L``, ``pH: 6 to 9``."""
+        if node.kind == "null":
+            return {}
+        written: dict[str, str] = {}
+        for key, (place, value) in node.named("'limits'").items():
+            words = " ".join(value.worded(f"the limit of '{key}'").text.split())
+            ends = re.fullmatch(r"(\S+)\s*(?:to|-)\s*(\S+.*)", words)
+            window = f"between {ends[1]} and {ends[2]}" if ends else words
+            if window[:1].isdigit() or window[:1] == ".":
+                window = f"below {window}"
+            try:
+                target = parse_target(f"{key} {window}", self.names)
+            except InputError as error:
+                raise InputError(
+                    f"this site limit cannot be read: {error.message}", span=_span(place), suggestions=error.suggestions
+                ) from None
+            if target.vessel:
+                value.fail("a site limit holds for whatever leaves; it names no vessel")
+            self.site["pH" if target.quantity == "pH" else target.subject] = target
+            written[key] = words
+        return written
+
+    def goals(self, node: Node) -> Iterator[Goal]:
+        """The goal of a line; a line such as ``jug meets the site limits`` is one for each of them."""
         passage = node.worded("a goal")
-        target = parse_target(passage, self.names)
+        found = _MEETS.fullmatch(passage.plain)
+        if found is None:
+            target = parse_target(passage, self.names, site=self.site)
+            yield goal_of(passage.text.strip(), target, self.in_the_end(target, passage, node))
+            return
+        if not self.site:
+            node.fail("the case has no site limits; write them under 'limits', such as 'mercury: 0.05 mg/L'")
+        for subject, own in self.site.items():
+            whole = Target(
+                own.quantity, own.subject, found["vessel"], found.span("vessel"), own.low, own.high, own.unit, "site"
+            )
+            vessel = self.in_the_end(whole, passage, node)
+            only = "dissolved " if own.quantity == "dissolved" else ""
+            yield goal_of(f"{only}{subject} in {vessel} within the site limit", whole, vessel)
+
+    def in_the_end(self, target: Target, passage: Passage, node: Node) -> str:
+        """The vessel of a goal, which must hold something when all is done."""
         vessel = self.vessel_of_target(target, passage, None)
         if vessel not in self.filled:
             node.fail(f"'{vessel}' is empty at the end, so that this goal says nothing")
-        assert target.quantity != "temperature"
-        return Goal(
-            text=passage.text.strip(),
-            quantity=target.quantity,
-            subject=target.subject,
-            vessel=vessel,
-            low=target.low,
-            high=target.high,
-            unit=target.unit,
-        )
+        return vessel
 
     def expectation(self, node: Node, steps: int, goals: Sequence[Goal]) -> Expectation:
         entries = {key: entry[1] for key, entry in node.named("an expectation", EXPECT_KEYS).items()}

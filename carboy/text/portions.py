@@ -78,6 +78,15 @@ class NameLookup(Protocol):
     def report_keys(self, text: str) -> tuple[str, ...]:
         """Keys of the report that an element, ion or class covers."""
 
+    def chemical_class(self, text: str) -> str | None:
+        """Key of a chemical class; None if there is none of this name."""
+
+    def published_limits(self, text: str) -> dict[str, dict[str, float]]:
+        """Kind of limit -> mg/L by report key, of the published limits that ``text`` names; {} if none."""
+
+    def no_longer_seen(self) -> float:
+        """mol/L below which test papers and strips no longer show a thing."""
+
 
 AMOUNT_DIMENSIONS = ("volume", "mass", "amount")
 _MOST_OF: dict[str, float] = {"L": 1e5, "g": 1e8, "mol": 1e7}

@@ -287,4 +287,4 @@ def test_every_reagent_of_the_records_is_known(lab: Laboratory):
 
 
 def test_every_hazard_has_a_treatment_or_a_reason(lab: Laboratory):
-    assert set(lab.index.hazards) - must_go(lab.index) == {"ammonia"}
+    assert set(lab.index.hazards) - must_go(lab.index) == {"ammonia", "complexant"}

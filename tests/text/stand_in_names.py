@@ -90,6 +90,20 @@ class StandInNames:
     def container(self, text: str) -> str | None:
         return _CONTAINERS.get(text.casefold())
 
+    def chemical_class(self, text: str) -> str | None:
+        return {"strong oxidiser": "strong-oxidiser"}.get(text.casefold())
+
+    def published_limits(self, text: str) -> dict[str, dict[str, float]]:
+        folded = text.casefold()
+        if "toxicity" in folded or "261.24" in folded:
+            return {"toxicity-characteristic": {"Hg": 0.2}}
+        if "268.48" in folded:
+            return {"universal-treatment-wastewater": {"Hg": 0.15}, "universal-treatment-leachate": {"Hg": 0.025}}
+        return {}
+
+    def no_longer_seen(self) -> float:
+        return 1e-5
+
     def report_keys(self, text: str) -> tuple[str, ...]:
         folded = text.casefold()
         exact = {key.casefold(): (key,) for keys in _KEYS.values() for key in keys}
