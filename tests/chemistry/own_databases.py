@@ -72,9 +72,13 @@ _LARGER = ("wateq4f.dat", "minteq.v4.dat")  # with the package phreeqc, where th
 
 @dataclass
 class OwnDatabase:
-    """One database of the reference code, and ours cut down to the solids that it has."""
+    """One database of the reference code, and ours cut down to the solids that it has.
+
+    ``davies``: with Davies there as here, so that the comparison is of the constants alone.
+    """
 
     path: Path
+    davies: bool = False
     code: Any = field(init=False, repr=False)
     networks: NetworkFactory = field(init=False, repr=False)
     rows: tuple[Equilibrium, ...] = field(init=False, repr=False)
@@ -88,6 +92,8 @@ class OwnDatabase:
         text = re.sub(
             r"(?m)^\s*-gamma\s+0(\.0*)?\s+0(\.0*)?\s*$", "", self.path.read_text(encoding="utf-8", errors="replace")
         )
+        if self.davies:
+            text = re.sub(r"(?m)^\s*-(?:llnl_)?gamma\b.*$", "", text)
         text = re.sub(r"(?m)^(\s*-?log_k)\s*$", r"\1 0.0", text)  # three are blank in the wateq4f shipped
         masters, _, rest = text.partition("SOLUTION_SPECIES")
         names = {line.split()[0] for line in rest.partition("PHASES")[2].splitlines() if line[:1].isalpha()}
@@ -249,13 +255,13 @@ def _components(portions: Mapping[str, float]) -> dict[str, float]:
 
 
 @cache
-def databases() -> tuple[OwnDatabase, ...]:
+def databases(*, davies: bool = False) -> tuple[OwnDatabase, ...]:
     """Those shipped with phreeqpython, and the larger ones where the package phreeqc is installed."""
     paths = [Path(phreeqpython.__file__).parent / "database" / name for name in _SHIPPED]
     more = importlib.util.find_spec("phreeqc")
     if more is not None and more.origin is not None:
         paths += [Path(more.origin).parent / "databases" / name for name in _LARGER]
-    return tuple(OwnDatabase(path) for path in paths if path.exists())
+    return tuple(OwnDatabase(path, davies) for path in paths if path.exists())
 
 
 def own_problems(database: OwnDatabase, seed: int, count: int) -> Iterator[dict[str, float]]:
