@@ -5,6 +5,7 @@ from __future__ import annotations
 import numpy as np
 from msgspec import Struct
 
+from carboy.chemistry import activity
 from carboy.chemistry.activity import TRUSTED_IONIC_STRENGTH
 from carboy.chemistry.columns import shared_columns
 from carboy.chemistry.iteration import (
@@ -19,6 +20,7 @@ from carboy.chemistry.iteration import (
     rough_start,
 )
 from carboy.chemistry.mass_action import (
+    ABSENT,
     LN10,
     BoolArray,
     Constraints,
@@ -74,6 +76,8 @@ class Solved(Struct, eq=False):
 
 
 _NO_LANES = ("network", "reasons")
+_ACID_ROUNDS = 60
+_ACID_CLOSE = 1e-7  # in ln gamma
 _FEW = 12  # components, up to which putting several in one column gains nothing
 
 
@@ -118,6 +122,7 @@ def solve(
             if left.size == 0:
                 break
             solution.attempt(left, pace)
+        solution.follow_acid()
         return solution.outcome()
 
 
@@ -208,18 +213,73 @@ class _Solution:
         state.phases = np.where(lanes.allowed, phases, 0.0)
         self._finish(which, lanes, state, state.phases > 0.0, most_turns=25)
 
+    def follow_acid(self) -> None:
+        """Take the interaction of H+ with the anions of strong acid into the constants, and solve again until both agree.
+
+        The rounds are sped up by the secant through the last two (Anderson 1965, depth 1). A lane that does not settle keeps what
+        the last sound round gave.
+        """
+        anions = np.flatnonzero(self.network.acid_interaction)
+        if anions.size == 0:
+            return
+        coefficients = self.network.acid_interaction[anions]
+        places = np.concatenate([[0], anions])  # H+ is the first species
+        bare = self.lanes.ln_beta[:, places].copy()
+        taken = np.zeros(bare.shape)  # of the interaction, what is in the constants
+        last_taken, last_off = taken.copy(), np.full(bare.shape, np.nan)
+        live = np.flatnonzero([reason == "" for reason in self.reasons])
+        for _ in range(_ACID_ROUNDS):
+            off = self._acid_interaction(live, places, coefficients) - taken[live]
+            moving = np.abs(off).max(axis=1) > _ACID_CLOSE
+            live, off = live[moving], off[moving]
+            if live.size == 0:
+                return
+            held = taken[live]
+            turned = off - last_off[live]
+            share = (off * turned).sum(axis=1) / np.maximum((turned * turned).sum(axis=1), 1e-300)
+            share = np.clip(np.where(np.isfinite(share), share, 0.0), -2.0, 0.95)[:, None]
+            secant = np.where(np.isfinite(turned), held - last_taken[live] + turned, 0.0)
+            last_taken[live], last_off[live] = held, off
+            taken[live] = np.maximum(held + off - share * secant, 0.0)
+            live = self._with_interaction(live, places, bare[live], taken)
+
+    def _acid_interaction(self, which: IntArray, places: IntArray, coefficients: FloatArray) -> FloatArray:
+        """What the interaction adds to ln gamma of H+ and of the anions in the state that some lanes are in, [lanes, places]."""
+        lanes, state = self.lanes.take(which), self.state.take(which)
+        medium = Medium.at(self.terms, state.strength, state.molality)
+        molality = term_amounts(self.terms, lanes, state, medium)[:, places] / np.exp(state.ln_water)[:, None]
+        proton, others = activity.ln_acid_interaction(molality[:, 0], molality[:, 1:], coefficients, state.strength)
+        there = lanes.ln_beta[:, places] > 0.5 * ABSENT
+        return np.where(there, np.column_stack([proton, others]), 0.0)
+
+    def _with_interaction(self, which: IntArray, places: IntArray, bare: FloatArray, taken: FloatArray) -> IntArray:
+        """Solve some lanes with ``taken`` in their constants; those that came out sound."""
+        lanes, state, before = self.lanes.take(which), self.state.take(which), self.lanes.ln_beta[which]
+        lanes.ln_beta[:, places] = bare - taken[which]
+        ended, turns = finish(self.terms, lanes, state, state.phases > 0.0)
+        self.iterations[which] += turns
+        sound = np.array([reason == "" for reason in self._judged(lanes, state, ended)], dtype=bool)
+        self.lanes.ln_beta[which] = np.where(sound[:, None], lanes.ln_beta, before)
+        self._keep(which[sound], lanes.take(sound), state.take(sound), ended[sound])
+        return which[sound]
+
     def _keep(self, which: IntArray, lanes: Lanes, state: State, ended: BoolArray) -> None:
         """Take over the state of some lanes, judged afresh by its residuals."""
         self.state.put(which, state)
-        relative, excess, medium_error, left_kg = residuals(self.terms, lanes, state)
+        left_kg = residuals(self.terms, lanes, state)[3]
         self.on_floor[which] = left_kg < lanes.least_water * (1.0 + 1e-9)
+        for lane, reason in zip(which, self._judged(lanes, state, ended), strict=True):
+            self.reasons[lane] = reason
+
+    def _judged(self, lanes: Lanes, state: State, ended: BoolArray) -> list[str]:
+        """Why each lane is not a solution, or nothing."""
+        relative, excess, medium_error, _ = residuals(self.terms, lanes, state)
         balance = np.abs(relative).max(axis=1)
         over = np.where(lanes.allowed, excess, -1.0).max(axis=1)
         held = lanes.allowed & (np.abs(state.phases) > 1e-9 * lanes.most)
         under = np.where(held, np.where(state.phases < 0.0, np.inf, -excess), -1.0).max(axis=1)
-        for place, lane in enumerate(which):
-            measures = (float(part[place]) for part in (balance, over, under, medium_error))
-            self.reasons[lane] = _reason(bool(ended[place]), *measures)
+        measured = zip(ended, balance, over, under, medium_error, strict=True)
+        return [_reason(bool(done), *(float(number) for number in numbers)) for done, *numbers in measured]
 
     def outcome(self) -> Solved:
         """The answer in the caller's units."""

@@ -36,6 +36,7 @@ class Network:
     nu_water: FloatArray  # [S]
     log_beta: FloatArray  # [S]
     charge: FloatArray  # [S]
+    acid_interaction: FloatArray  # [S] with H+, log10, kg/mol; zero where none is known
     solids: tuple[str, ...]
     solid_nu: FloatArray  # [M, C]
     solid_nu_water: FloatArray  # [M]
@@ -115,6 +116,10 @@ class NetworkFactory:
             raise KnowledgeError(f"the species '{token}' is used as a component but is not described")
         return float(record.charge)
 
+    def _interaction(self, token: str) -> float:
+        record = self._species.get(token)
+        return 0.0 if record is None or record.acid_interaction is None else record.acid_interaction.magnitude
+
     def _chosen(self, tokens: tuple[str, ...]) -> list[Equilibrium]:
         present = set(tokens)
         numbers = set(self._without)
@@ -166,6 +171,7 @@ class NetworkFactory:
             nu_water=_fixed(np.concatenate([np.zeros(len(tokens)), nu_water])),
             log_beta=_fixed(np.concatenate([np.zeros(len(tokens)), log_beta])),
             charge=_fixed(np.array([*(charges[token] for token in tokens), *formed_charges])),
+            acid_interaction=_fixed(np.array([self._interaction(name) for name in names])),
             solids=tuple(row.product for row in solid),
             solid_nu=_fixed(solid_nu),
             solid_nu_water=_fixed(solid_nu_water),

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import replace
 
 import numpy as np
 
@@ -20,6 +21,7 @@ from carboy.model.plan import Check, Goal
 from carboy.model.report import Finding, Measure
 from carboy.reasoning.equation import formation_equation
 from carboy.reasoning.firing import Firing
+from carboy.text.formulas import elements
 
 _SPENT = 0.02  # of what is left over: a reagent of which there is less than this is used up
 
@@ -35,7 +37,10 @@ def with_missed_aims(findings: list[Finding], judged: list[Judged], walk: Walk, 
 
 
 def _missed(one: Judged, walk: Walk, judge: Judge, findings: list[Finding]) -> None:
-    assert one.values is not None and one.met is not None and one.content is not None and one.vessel is not None
+    assert one.values is not None
+    assert one.met is not None
+    assert one.content is not None
+    assert one.vessel is not None
     trace = _last_trace(walk, one.vessel.spec.name)
     if trace is None:
         return
@@ -72,10 +77,15 @@ def _missed(one: Judged, walk: Walk, judge: Judge, findings: list[Finding]) -> N
 
 def _last_trace(walk: Walk, vessel: str) -> StepTrace | None:
     """The last step that touched a vessel, or that filled it as the cake of a filter."""
-    own = [trace for trace in walk.steps if trace.vessel == vessel]
+    own = [trace for trace in walk.steps if trace.vessel == vessel and _changes(trace)]
     if own:
         return own[-1]
-    return next((trace for trace in reversed(walk.steps) if trace.sludge is not None), None)
+    filtered = next((trace for trace in reversed(walk.steps) if trace.sludge is not None), None)
+    return None if filtered is None else replace(filtered, vessel=vessel)
+
+
+def _changes(trace: StepTrace) -> bool:
+    return trace.path is not None or trace.storage is not None or trace.sludge is not None
 
 
 def _tokens(goal: Goal, content: Mixture, stock: ChemicalStock) -> tuple[str, ...]:
@@ -108,14 +118,16 @@ def _draft(
     stock: ChemicalStock,
     scale: Scale,
 ) -> Draft:
-    assert one.values is not None and one.met is not None
+    assert one.values is not None
+    assert one.met is not None
     goal, value = one.goal, float(one.values[lane])
     levels = np.where(one.met, 0, WARNING)
     if goal.high is not None and goal.quantity != "pH":
         factor = scale["remobilised-danger-factor"]
         levels = np.where(one.met, 0, np.maximum(graded(one.values, goal.high, goal.high, factor * goal.high), WARNING))
-    if goal.quantity == "residual":
-        levels = np.minimum(levels, WARNING)  # what it may do is told by the findings of the steps that meet it
+    if goal.quantity in ("residual", "leached"):
+        # what a rest may do is told by the findings of the steps that meet it; a cake that leaches goes as hazardous waste
+        levels = np.minimum(levels, WARNING)
     unit = "" if one.unit == "pH" else f" {one.unit}"
     wanted = _window_words(goal, unit)
     measures = [
@@ -144,7 +156,7 @@ def _draft(
             equations = [("equilibrium", equation, left, right)]
     return Draft(
         "incomplete",
-        (tokens[0],) if tokens and goal.quantity != "pH" else (PROTON,),
+        (tokens[0],) if tokens and goal.quantity != "pH" else (),
         levels[:, None],
         np.ones(1),
         "path",
@@ -178,7 +190,7 @@ def _reasons(
         return
     if goal.high is None or not tokens:
         return
-    if goal.quantity == "residual" or _is_destroyed(tokens[0], walk, stock):
+    if goal.quantity == "residual" or _is_destroyed(tokens[0], stock):
         yield from _left_over(tokens[0], content, walk, stock)
         return
     if goal.quantity == "leached":
@@ -209,10 +221,11 @@ def _pH_reason(goal: Goal, value: float) -> Cause:
     return Cause(f"Too little base, or too much acid: the pH of {figures(value)} is below the window.")
 
 
-def _is_destroyed(token: str, walk: Walk, stock: ChemicalStock) -> bool:
-    """Whether something that came with a label is meant to be destroyed and not to come down: it is no metal."""
+def _is_destroyed(token: str, stock: ChemicalStock) -> bool:
+    """Whether a thing is to be destroyed (cyanide, sulfide, an oxidiser) and not to come down: no element of which limits are set."""
     record = stock.species(token)
-    return "metal" not in stock.classes.get(token, ()) and record.charge <= 0 and _used_up_by(token, walk) != []
+    element = record.report_key.split("(")[0]
+    return record.charge <= 0 and not any(limit.subject == element for limit in stock.index.limits if element in elements())
 
 
 def _firings(walk: Walk) -> Iterator[Firing]:
@@ -297,7 +310,7 @@ def _failed_check(number: int, step: Check, walk: Walk, stock: ChemicalStock) ->
     text = step.text or step.quantity
     return Draft(
         "incomplete",
-        (PROTON,),
+        (),
         np.where(inside, 0, WARNING if never else NOTE)[:, None],
         np.ones(1),
         "path",

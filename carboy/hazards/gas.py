@@ -76,7 +76,8 @@ def load(mixture: Mixture, token: str, swept_L: float = np.inf) -> Load:
         for part, count in mixture.stock.components_of(token).items()
         if count > 0 and part != WATER
     ]
-    return Load(gas, np.maximum(np.minimum.reduce(reserve), 0.0) if reserve else none, pressure, False, swept_L)
+    held = np.minimum.reduce(reserve) - gas if reserve else none
+    return Load(gas, np.maximum(held, 0.0), pressure, False, swept_L)
 
 
 def yardsticks(gas: Gas, classes: frozenset[str], scale: Scale) -> list[Yardstick]:

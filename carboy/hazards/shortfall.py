@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from carboy.chemistry.mixture import Array, Mixture
 from carboy.chemistry.stock import PROTON, WATER, ChemicalStock
@@ -16,6 +17,7 @@ from carboy.hazards.numbers import figures
 Value = Callable[[Mixture], Array]  # what is aimed at in a content, [lanes]
 
 _ADDED = np.geomspace(1e-4, 3.0, 24)  # mol of strong acid or base to a litre, by which other pH values are reached
+_ROUNDS = 2  # of looking more closely where the pH jumps
 _SAME_PH = 0.35  # a content within this of the pH as it is counts as having the same pH
 _REACH = (1.5, 13.5)  # pH values that are worth naming
 _MORE = 3.0  # times what the metal needs: the trial of more reagent
@@ -41,7 +43,7 @@ def causes_of(
     if content.solved is None or not tokens:
         return []
     trial = _Trial(content, tokens, limit, value, stock)
-    found = [*trial.overdose(), *trial.ligands(), *trial.oxidation_state(), *trial.pH(), *trial.reagent()]
+    found = [*trial.overdose(), *trial.ligands()] or [*trial.pH(), *trial.reagent()] or list(trial.oxidation_state())
     if not found:
         found = [
             Cause(
@@ -66,6 +68,7 @@ class _Trial:
         self.now = float(content.pH[0])
         self.metal = self._main_component()
         self.forms = self._forms()
+        self.overdosed: set[str] = set()
 
     def _main_component(self) -> str:
         return max(self.tokens, key=lambda token: float(self.content.dissolved(token)[0]))
@@ -82,24 +85,21 @@ class _Trial:
 
     # --- what would be
 
-    def _at_other_pH(self, content: Mixture) -> tuple[Array, Array]:
-        """pH and value of a content as it is and with strong acid or base in it, by pH; lanes that did not converge are left out."""
+    def _at_other_pH(self, content: Mixture) -> tuple[Mixture, NDArray[np.intp], Array]:
+        """A content as it is and with strong acid or base in it, its pH and value, by rising pH; lanes that did not converge are left out."""
         moved = np.concatenate([-_ADDED[::-1], [0.0], _ADDED]) * float(content.volume_L[0])
-        for _ in range(2):
-            many = self._with_protons(content, moved)
-            pH, values = many.pH, self.value(many)
-            far = np.abs(np.diff(pH)) > 2 * _SAME_PH
+        many = self._with_protons(content, moved)
+        for _ in range(_ROUNDS):
+            far = np.abs(np.diff(many.pH)) > 2 * _SAME_PH
             if not far.any():
                 break
             between = [np.linspace(moved[at], moved[at + 1], 6)[1:-1] for at in np.flatnonzero(far)]
             moved = np.sort(np.concatenate([moved, *between]))
-        good = many.converged & np.isfinite(pH) & (pH > _REACH[0]) & (pH < _REACH[1])
-        if len(pH) != len(moved):
             many = self._with_protons(content, moved)
-            pH, values = many.pH, self.value(many)
-            good = many.converged & np.isfinite(pH) & (pH > _REACH[0]) & (pH < _REACH[1])
-        order = np.argsort(pH[good])
-        return pH[good][order], values[good][order]
+        pH = many.pH
+        good = np.flatnonzero(many.converged & np.isfinite(pH) & (pH > _REACH[0]) & (pH < _REACH[1]))
+        order = good[np.argsort(pH[good])]
+        return many, order, pH
 
     def _with_protons(self, content: Mixture, protons: Array) -> Mixture:
         many = content.repeated(len(protons))
@@ -124,15 +124,23 @@ class _Trial:
         changed.hint = None
         return changed
 
-    def _met_at_this_pH(self, content: Mixture) -> bool:
-        pH, values = self._at_other_pH(content)
-        near = np.abs(pH - self.now) <= _SAME_PH
-        return bool(near.any() and values[near].min() <= self.limit)
+    def _met_at_this_pH(self, content: Mixture, with_solid_of: str = "") -> bool:
+        """Whether the aim is met at the pH as it is; ``with_solid_of``: while a solid of the metal with this component is there."""
+        many, order, pH = self._at_other_pH(content)
+        near = order[np.abs(pH[order] - self.now) <= _SAME_PH]
+        met = near[self.value(many)[near] <= self.limit]
+        if not with_solid_of:
+            return bool(met.size)
+        return any(
+            float(amount[met].max(initial=0.0)) > 0
+            for solid, amount in many.solids.items()
+            if self.metal in (parts := self.stock.components_of(solid)) and parts.get(with_solid_of, 0.0) > 0
+        )
 
     def _window(self, content: Mixture) -> tuple[float, float] | None:
         """The pH values between which the aim would be met, as far as they were tried."""
-        pH, values = self._at_other_pH(content)
-        met = pH[values <= self.limit]
+        many, order, pH = self._at_other_pH(content)
+        met = pH[order][self.value(many)[order] <= self.limit]
         return (float(met[0]), float(met[-1])) if met.size else None
 
     # --- causes
@@ -173,25 +181,35 @@ class _Trial:
             for solid, amount in self.content.solids.items()
         )
 
+    def _wanted(self, token: str) -> float:
+        """mol of a component that all of the metal takes, in the solid that takes most."""
+        ratios = [
+            parts.get(token, 0.0) / parts[self.metal]
+            for parts in map(self.stock.components_of, self._solids_with())
+            if parts.get(token, 0.0) > 0
+        ]
+        return max(ratios, default=0.0) * float(self.content.total(self.metal)[0])
+
     def overdose(self) -> Iterator[Cause]:
         """What brought the metal down is in such excess that it takes it back."""
         partners = self._partners()
         for token, share, form in self._holders():
-            if token not in partners or self._bound_in_solids(token) <= 0:
+            enough = max(self._wanted(token), self._bound_in_solids(token))
+            if token not in partners or enough >= float(self.content.total(token)[0]):
                 continue
-            left = self._changed({token: self._bound_in_solids(token)})
-            if self._met_at_this_pH(left):
+            if self._met_at_this_pH(self._changed({token: enough}), with_solid_of=token):
+                self.overdosed.add(token)
                 name = name_of(token, self.stock)
                 yield Cause(
-                    f"Overdose: the excess of {name} takes it back into solution ({figures(100 * share)} % of what is dissolved is {self._shown(form)}).",
+                    f"Overdose: the excess of {name} takes it back into solution ({self._held(share, form)}).",
                     f"Dose less {name}, or take the excess away before filtering.",
                 )
         window = self._window(self.content)
         if window and self.now > window[1] + _SAME_PH and self._is_hydroxo():
             yield Cause(
-                f"Overdose of base: at pH {figures(self.now)} it goes back into solution as {self._shown(self.forms[0][1])}; "
-                f"it would be below the limit between pH {figures(window[0])} and {figures(window[1])}.",
-                f"Bring the pH back to between {figures(window[0])} and {figures(window[1])}.",
+                f"Overdose of base: at pH {figures(self.now)} it goes back into solution as {self.forms[0][1]}; "
+                f"it would be below the limit {_pH_words(window)}.",
+                f"Correct the pH: it comes down {_pH_words(window)}.",
             )
 
     def _is_hydroxo(self) -> bool:
@@ -209,12 +227,12 @@ class _Trial:
     def ligands(self) -> Iterator[Cause]:
         """Something else in the vessel holds the metal in solution."""
         for token, share, form in self._holders():
-            if token in self._partners() and self._bound_in_solids(token) > 0:
+            if token in self.overdosed:
                 continue
             if self._met_at_this_pH(self._changed({token: 0.0})):
                 name = name_of(token, self.stock)
                 yield Cause(
-                    f"Complexing: {name} holds it in solution ({figures(100 * share)} % of what is dissolved is {self._shown(form)}).",
+                    f"Complexing: {name} holds it in solution ({self._held(share, form)}).",
                     f"Take the {name} out or destroy it first, or use a precipitant that is stronger than it.",
                 )
 
@@ -228,7 +246,7 @@ class _Trial:
             if one.component and token not in self.tokens and one.report_key.split("(")[0] == element
         ]
         others += [self.stock.species(token) for token in self.tokens if token != self.metal]
-        for other in others:
+        for other in sorted(others, key=lambda one: -self._ways_down(one.token)):
             if other.report_key == record.report_key or not other.atoms.get(element):
                 continue
             atoms = float(self.content.dissolved(self.metal)[0]) * record.atoms.get(element, 1.0)
@@ -242,6 +260,11 @@ class _Trial:
                 )
                 return
 
+    def _ways_down(self, token: str) -> int:
+        """Solids that a component is known to make: the state that comes down readily has more of them."""
+        solids = (one for one in self.stock.formation if self.stock.kind(one) == "solid")
+        return sum(self.stock.components_of(one).get(token, 0.0) > 0 for one in solids)
+
     def pH(self) -> Iterator[Cause]:
         """At another pH it would come down."""
         window = self._window(self.content)
@@ -251,15 +274,17 @@ class _Trial:
             return  # told as an overdose
         side = "too low" if self.now < window[0] else "too high"
         yield Cause(
-            f"The pH is outside the window: {figures(self.now)} is {side}; it would be below the limit between pH "
-            f"{figures(window[0])} and {figures(window[1])}.",
-            f"Bring the pH to between {figures(window[0])} and {figures(window[1])}.",
+            f"The pH is outside the window: {figures(self.now)} is {side}; it would be below the limit {_pH_words(window)}.",
+            f"Correct the pH: it comes down {_pH_words(window)}.",
         )
 
     def reagent(self) -> Iterator[Cause]:
         """With more of what is in the vessel and brings it down it would be below."""
-        needed = _MORE * float(self.content.dissolved(self.metal)[0])
+        dissolved = float(self.content.dissolved(self.metal)[0])
+        needed = _MORE * dissolved
         for token in self._partners():
+            if float(self.content.dissolved(token)[0]) > dissolved:
+                continue  # there is more of it than the metal could take
             more = self._changed({token: float(self.content.total(token)[0]) + needed})
             if self._met_at_this_pH(more):
                 name = name_of(token, self.stock)
@@ -269,5 +294,14 @@ class _Trial:
                 )
                 return
 
-    def _shown(self, form: str) -> str:
-        return self.stock.species(form).formula or form
+    def _held(self, share: float, form: str) -> str:
+        return f"{figures(100 * share)} % of what is dissolved, mostly as {form}"
+
+
+def _pH_words(window: tuple[float, float]) -> str:
+    low, high = window
+    return (
+        f"near pH {figures((low + high) / 2)}"
+        if high - low < 2 * _SAME_PH
+        else f"between pH {figures(low)} and {figures(high)}"
+    )

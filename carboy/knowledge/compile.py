@@ -263,6 +263,7 @@ class _Compiler:
                 report_key=node.text(":reportKey"),
                 formation=self._value(node, ":formation"),
                 forms="slow" if node.text(":forms") == "slow" else "fresh",
+                acid_interaction=self._value(node, ":acidInteraction"),
             )
         for token in (_WATER, _PROTON):
             if token not in self.species or not self.species[token].component:
@@ -416,6 +417,7 @@ class _Compiler:
             name=node.text("skos:prefLabel") if node else "",
             classes=self._classes_of(node) if node else (),
             formation=self._value(node, ":formation") if node else None,
+            acid_interaction=self._value(node, ":acidInteraction") if node else None,
         )
 
     def _lone_species(self, equilibria: Mapping[str, Equilibrium]) -> None:

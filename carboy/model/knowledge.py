@@ -62,6 +62,7 @@ class Species(Struct, frozen=True):
     report_key: str = ""  # for components: "Cr(VI)", "S(-II)", "CN", "Zn"
     formation: Value | None = None  # enthalpy of formation, kJ/mol
     forms: Literal["fresh", "slow"] = "fresh"  # solids: "slow" ones do not come down while one waits
+    acid_interaction: Value | None = None  # anions: coefficient of interaction with H+, log10, kg/mol
 
 
 class Equilibrium(Struct, frozen=True):

@@ -17,6 +17,7 @@ from carboy.chemistry.stock import PROTON, ChemicalStock
 from carboy.model.knowledge import Index, Stage, Treatment
 from carboy.model.plan import Case
 from carboy.model.report import Report
+from carboy.planning.liquid import hazards_of
 from carboy.reasoning.binding import Surroundings
 from carboy.reasoning.firing import Reactor
 from carboy.text.portions import NameLookup, parse_portion
@@ -34,6 +35,7 @@ _ROUNDS = 7  # how often the grid is closed in; each narrows it by its own numbe
 _FINEST = 7  # figures of an amount, where fewer would miss a narrow window of pH
 _DROPS = 20.0  # to a millilitre, common practice
 _DROPWISE = 1e-3  # L; less is counted in drops
+_LEFT_ALONE = "metal-sulfide"  # class of the solids that are filtered off before anything goes in
 _SETTLED = 0.05  # g/L of solid at the end that calls for a filter
 _ORDINALS = ("", "second ", "third ", "fourth ", "fifth ", "sixth ", "seventh ")
 
@@ -130,8 +132,10 @@ class Builder:
         largest = self.lab.index.thresholds["treatment-largest-batch"].value.magnitude
         if final > largest:
             raise self._too_large("takes", final, 1.1 * final / largest)
-        room = self.lab.index.thresholds["treatment-free-space"].value.magnitude * roomier
-        made.size_L = next((size for size in _SIZES if size >= room * made.fullest_L), _SIZES[-1])
+        room = self.lab.index.thresholds["treatment-free-space"].value.magnitude
+        made.size_L = min(
+            _size(roomier * room * made.fullest_L), max(_size(room * largest), _size(room * made.fullest_L))
+        )
         return made
 
     def _too_large(self, verb: str, litres: float, share: float) -> CannotDo:
@@ -141,13 +145,19 @@ class Builder:
         return CannotDo(f"it {verb} {litres:.3g} L, too much for one batch on the bench; {portions} portions may fit")
 
     def _idle(self, made: Procedure, treatment: Treatment) -> bool:
-        """Whether a treatment that doses by what is there finds nothing of it."""
+        """Whether a treatment finds nothing to do: none of what it doses by, or, where it doses by nothing, none of what it takes."""
         content = self.content(made)
         doses = [stage for stage in treatment.stages if stage.demands and stage.agent != PROTON]
         least = _LEAST * content.volume_L
-        return bool(doses) and not any(
-            np.any(content.total(demand.species) > least) for stage in doses for demand in stage.demands
-        )
+        if not doses:
+            # what has come down already but is still in the vessel counts: the filter of the treatment is for it
+            suspended = any(
+                np.any(content.total(token) > least)
+                for key in treatment.takes
+                for token in self.lab.index.hazards[key].species
+            )
+            return not suspended and not hazards_of(content, self.lab.stock) & set(treatment.takes)
+        return not any(np.any(content.total(demand.species) > least) for stage in doses for demand in stage.demands)
 
     def waste_alone(self) -> Mixture:
         """The waste as it comes, reacted."""
@@ -230,6 +240,16 @@ class Builder:
                 "",
                 "The wall of the vessel stays cool to the hand.",
             )
+        if self._is_sulfide_sludge(self.content(made)):
+            self._filter(made, "", "")
+
+    def _is_sulfide_sludge(self, content: Mixture) -> bool:
+        """Whether sulfides of metals stand in the waste: they are what a treatment would leave, and an oxidiser opens them again."""
+        grams = content.zeros()
+        for token, amount in content.solids.items():
+            if _LEFT_ALONE in self.lab.stock.classes.get(token, frozenset()):
+                grams = grams + amount * self.lab.stock.molar_mass(token)
+        return bool(np.any(grams > _SETTLED * content.volume_L))
 
     def _strength(self, content: Mixture, token: str) -> float:
         """mol/L; of the proton: free acid or free base, whichever there is."""
@@ -380,6 +400,11 @@ class Builder:
             mixture = Bench(self.lab.stock, ranges).make_up(portion, "reagent", 25.0).mixture
             known = self._reagents[label] = (mixture.take(np.array([0])), "L" if solution else "g")
         return known
+
+
+def _size(litres: float) -> float:
+    """L of the least usual vessel that holds so much."""
+    return next((size for size in _SIZES if size >= litres), _SIZES[-1])
 
 
 def _speed(action: str, minutes: float) -> str:

@@ -35,7 +35,7 @@ CAUTIONS = (
 )
 NEUTRALISATION = "Only the pH makes this a waste: the elementary neutralisation exclusion may hold (40 CFR 264.1(g)(6)); ask the site."
 LIQUID_GOES_TO = "the sewer, where its authority allows, or a contractor"
-SOLID_GOES_TO = "a contractor, unless an analysis shows it harmless"
+SOLID_GOES_TO = "a contractor, moist and apart from acid and bleach, unless an analysis shows it harmless"
 DEFAULT_SETTING = {"place": "hood", "hood_flow": "0.4 m3/s", "temperature": "22 degC"}
 _TRIED = 10  # sequences made into procedures
 _LISTED = 60  # sequences looked through for those
@@ -99,7 +99,10 @@ def _part(portion: Portion, parts: int, lab: Vetter) -> str:
     if parts < 2 or not words or portion.unit == "mol":
         return ""
     text = f"{quantity_text(portion.amount.times(1.0 / parts), portion.unit)} of {words}"
-    return text if parse_portion(text, lab.names).ingredients == portion.ingredients else ""
+    same = [item.model_dump() for item in parse_portion(text, lab.names).ingredients] == [
+        item.model_dump() for item in portion.ingredients
+    ]  # but for where they stand in the text
+    return text if same else ""
 
 
 def _searched(
@@ -129,6 +132,7 @@ def _searched(
     found: list[Route] = []
     queue = list(sequences(state, lab.index, _LISTED))
     tried: list[tuple[str, ...]] = []
+    longer: set[tuple[str, ...]] = set()
     alike: dict[frozenset[str], tuple[int, int]] = {}  # tried and offered
     while queue and len(tried) < _TRIED and len(found) < _OFFERED:
         sequence = queue.pop(0)
@@ -149,10 +153,12 @@ def _searched(
                 alike[manner] = (tries + 1, offers + 1)
             continue
         report.rejected.append(attempt.rejected)
-        if attempt.left and attempt.left != state:  # what the records did not foresee: go on from where it ended
+        # what the records did not foresee: go on from where it ended, once
+        if attempt.left and attempt.left != state and sequence not in longer:
             further = next(sequences(attempt.left, lab.index, 1), ())
             if further and not set(further) & set(sequence):
                 queue.insert(0, (*sequence, *further))
+                longer.add(queue[0])
     if found:
         report.outcome = "routes found"
         report.routes = sorted(found, key=lambda route: route.cost)
@@ -323,6 +329,7 @@ def _route(
     ]  # not those that found nothing to do
     treatments = [lab.index.treatments[key] for key in done]
     streams = _streams(made, walk, lab)
+    warned = [finding for finding in report.findings if finding.signal == "warning"]
     sludge = sum(high for stream in streams for _, high in stream.solids_g.values())
     return Route(
         treatments=done,
@@ -339,8 +346,8 @@ def _route(
         dangers=list(dict.fromkeys(danger for item in treatments for danger in item.dangers)),
         notes=[item.note for item in treatments if item.note],
         sources=sorted({source for item in treatments for source in item.sources}),
-        # fewest steps, then least sludge (a step for each 20 g), then the mildest reagents
-        cost=len(made.steps) + sludge / 20.0 + 1.5 * sum(item.harshness for item in treatments),
+        # fewest steps, least sludge (a step for each 20 g), the mildest reagents, and least to mind on the way
+        cost=len(made.steps) + sludge / 20.0 + 1.5 * (sum(item.harshness for item in treatments) + len(warned)),
         case_file=_yaml(mapping),
         report=report,
     )

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping
 
 from carboy.model.knowledge import Source
-from carboy.model.report import Pair
+from carboy.model.report import HoldPoint, Pair
 from carboy.model.treatment import Route, Stream, TreatReport
 from carboy.reports.citations import Citations
 from carboy.reports.figures import number, span
@@ -63,7 +63,7 @@ def _route(place: int, route: Route, style: Style, citations: Citations) -> Iter
     for step in route.steps:
         for hold in route.report.hold_points:
             if hold.step == step.step:
-                yield from wrapped(f"Hold: {style.words(f'{hold.must} {hold.test}')}", style.width, "        ")
+                yield from wrapped(f"Hold: {style.words(_told(hold))}", style.width, "        ")
         reached = "" if step.pH is None else f" (pH {_pH(step.pH)})"
         yield from wrapped(f"{style.words(step.action)}{reached}", style.width, f"  {step.step:>2}  ", "      ")
         if step.test:
@@ -77,6 +77,11 @@ def _route(place: int, route: Route, style: Style, citations: Citations) -> Iter
         yield from wrapped(style.words(note), style.width, "  ", "    ")
     yield "  What comes of it"
     yield from table([_stream(item, style) for item in route.streams], style.width, indent=4)
+
+
+def _told(hold: HoldPoint) -> str:
+    """What must be so, and how one sees it."""
+    return ". ".join(part.rstrip(". ") for part in (hold.must, hold.test) if part) + "."
 
 
 def _stream(item: Stream, style: Style) -> tuple[str, str, str]:

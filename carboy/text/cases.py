@@ -13,7 +13,10 @@ A filter may have ``retained`` (mL of liquid per g of solid) and ``passes`` (sha
 which stays with the cake) and ``paper: 5 g`` with ``waste``, the bin that it goes to (``contaminated solids``). Both hold
 liquid; ``20 g, 3 mL/g`` says how much. ``settle: 2 h`` lets solids sink before a ``decant``. ``wash: cake-1`` (or ``rinse``)
 ``with: 50 mL of water`` ``to: washings``; without ``to`` the rinse stays where it is. ``sample: 20 mL from tank`` ``to: vial``.
-``wipe: tank`` ``with: 10 g of paper`` ``to: bin``.
+``wipe: tank`` ``with: 10 g of paper`` (or ``20 g of nitrile gloves, 0.2 mL/g``) ``to: bin``.
+
+``limits`` are those of the site, ``mercury: 0.05 mg/L`` or ``pH: 6 to 9``; goals may name them (``total mercury in jug below
+the site limit``) or take them all (``jug meets the site limits``).
 """
 
 from __future__ import annotations
@@ -136,6 +139,7 @@ _MEETS = re.compile(
     r"\s*(?P<vessel>\S.*?)\s+(?:meets|keeps|is within)\s+(?:the\s+)?(?:site|discharge|site's own)\s+limits?\s*",
     re.IGNORECASE,
 )
+_PAPERY = re.compile(r"paper|towel|cloth|tissue|wipe|filter aid|filter pad", re.IGNORECASE)
 _MOST_HELD = 100.0  # mL per g
 _SHARES = {"all": 1.0, "half": 0.5, "a half": 0.5, "a third": 1 / 3, "a quarter": 0.25}
 _REST = ("rest", "the rest", "remainder", "the remainder", "what is left")
@@ -669,7 +673,16 @@ class _CaseReader:
         holds = float(found["holds"].replace(",", ".")) if found["holds"] else None
         if holds is not None and holds > _MOST_HELD:
             node.fail("nothing holds as much liquid as that; the figure is in mL per g")
-        material = self.names.container(named) or self.names.container("paper") or ""
+        papery = bool(_PAPERY.search(named))
+        if holds is None and not papery:
+            node.fail(
+                f"how much liquid does the {named} hold? Only for paper, cloth and filter aid is there a usual figure; "
+                f"write such as '{found['amount'].strip()} of {named}, 0.5 mL/g'"
+            )
+        worn = re.sub(r"\s*\bgloves?\b", "", named).strip()  # "nitrile gloves" are nitrile
+        material = self.names.container(named) or (worn and self.names.container(worn)) or ""
+        if not material and papery:
+            material = self.names.container("paper") or ""
         return Absorbent(grams=reading.interval.low, holds=holds, material=material, words=named)
 
     def bin(self, node: Node | None, taken: Sequence[str]) -> str:

@@ -86,6 +86,7 @@ class Draw:
             nu_water=net.nu_water[rows],
             log_beta=net.log_beta[rows],
             charge=net.charge[rows],
+            acid_interaction=net.acid_interaction[rows],
             solids=net.solids[::-1],
             solid_nu=net.solid_nu[::-1][:, columns],
             solid_nu_water=net.solid_nu_water[::-1],

@@ -112,6 +112,10 @@ def compare_strong(name: str, draw: Draw) -> Compared:
     held = min(strength, DAVIES_HELD_FROM)
     ion = -0.509 * (np.sqrt(held) / (1.0 + np.sqrt(held)) - 0.3 * held)
     log_g = np.where(network.charge == 0.0, 0.1 * min(strength, 5.0), ion * network.charge**2)
+    molality = answer.amounts[0] / answer.water_kg[0]
+    part = (1.0 - held / strength) * np.clip((molality[0] - 0.1) / 0.4, 0.0, 1.0)  # strong acid
+    log_g[0] += part * (np.minimum(molality, 20.0) @ network.acid_interaction)
+    log_g += part * min(molality[0], 20.0) * network.acid_interaction
     shift = dict(zip(network.species[size:], network.nu[size:] @ log_g[:size] - log_g[size:], strict=True))
     shift |= dict(zip(network.solids, network.solid_nu @ log_g[:size], strict=True))
     shift |= dict(zip(network.gases, network.gas_nu @ log_g[:size], strict=True))

@@ -28,6 +28,8 @@ MERCURY_I = "1 L of 0.01 M mercury(I) nitrate"
 FLUORIDE = "500 mL of 2 % sodium fluoride"
 COPPER_EDTA = "1 L of (0.01 M copper(II) sulfate + 0.05 M disodium EDTA)"
 COPPER_CITRATE = "1 L of (0.1 M copper sulfate + 0.2 M sodium citrate)"
+COD = "500 mL of (0.01 M potassium dichromate + 0.02 M mercury(II) sulfate + 0.02 M silver sulfate + 9 M sulfuric acid)"
+CYANIDE_LEAD = "1 L of (0.01 M lead nitrate + 0.05 M sodium cyanide + 0.1 M sodium hydroxide)"
 COPPER_AMMINE = "1 L of (0.05 M copper(II) sulfate + 1 M ammonia)"
 _WINDOW = re.compile(r", to pH ([\d.]+) to ([\d.]+),")
 
@@ -354,6 +356,41 @@ def test_a_waste_too_large_for_a_hood_is_split_into_equal_portions(lab: Laborato
         case = read_case(route.case_file, lab.names, file="route")
         assert case.bottles["waste"].amount.high == pytest.approx(2.0 / parts)
         assert route.vessel_L <= 50
+
+
+@pytest.mark.long
+@pytest.mark.parametrize("waste", [COD, PICKLE, CYANIDE_LEAD])
+def test_no_sludge_is_empty(waste: str):
+    routes = treated(waste).routes
+    assert routes
+    for route in routes:
+        for stream in route.streams:
+            if stream.kind == "sludge":
+                assert sum(high for _, high in stream.solids_g.values()) > 0.01
+
+
+@pytest.mark.long
+def test_sulfide_sludge_is_filtered_off_before_an_oxidiser_comes_in():
+    """Peroxide and bleach open a metal sulfide again: 0.05 mol of PbS is 12 g and leaves first."""
+    routes = treated("1 L of (0.1 M sodium sulfide + 0.05 M lead nitrate)").routes
+    assert routes
+    for route in routes:
+        actions = [step.action for step in route.steps]
+        first = next(place for place, action in enumerate(actions) if action.startswith("filter"))
+        assert not any("peroxide" in action or "hypochlorite" in action for action in actions[:first])
+        assert sludge(route).solids_g["PbS"][0] == pytest.approx(0.05 * mass("PbS"), rel=0.01)
+
+
+@pytest.mark.long
+def test_lead_beside_cyanide_comes_down_after_the_base_is_gone():
+    """Plumbite stays dissolved at the pH of the chlorination, 11 and more; lead is at its least near pH 9 to 10 (Patterson, from memory)."""
+    routes = treated(CYANIDE_LEAD).routes
+    assert routes
+    for route in routes:
+        before_filter = next(place for place, step in enumerate(route.steps) if step.action.startswith("filter"))
+        reached = route.steps[before_filter].pH
+        assert reached is not None
+        assert 6 < reached[0] < 10.6
 
 
 def test_a_treatment_that_finds_nothing_adds_nothing():
