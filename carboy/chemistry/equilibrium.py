@@ -77,7 +77,7 @@ class Solved(Struct, eq=False):
 
 _NO_LANES = ("network", "reasons")
 _ACID_ROUNDS = 60
-_ACID_CLOSE = 1e-7  # in ln gamma
+_ACID_CLOSE = 5e-7  # in ln gamma
 _FEW = 12  # components, up to which putting several in one column gains nothing
 
 
@@ -135,6 +135,17 @@ _PACES = (
 )
 
 
+class _Judged(Struct, eq=False):
+    """What the residuals of some lanes say."""
+
+    reasons: list[str]  # why each is not a solution, or nothing
+    on_floor: BoolArray  # whether the floor holds its water
+
+    def take(self, which: BoolArray) -> _Judged:
+        """These lanes only."""
+        return _Judged([self.reasons[lane] for lane in np.flatnonzero(which)], self.on_floor[which])
+
+
 class _Solution:
     """The lanes of one call on their way to the outcome."""
 
@@ -159,6 +170,12 @@ class _Solution:
         self.on_floor = np.zeros(count, dtype=bool)
         self.reasons = ["not attempted"] * count
         self.iterations = np.zeros(count, dtype=np.intp)
+        anions = np.flatnonzero(network.acid_interaction)
+        self.acid = (
+            np.concatenate([[0], anions]) if anions.size else anions
+        )  # H+, the first species, and what it interacts with
+        self.bare = self.lanes.ln_beta[:, self.acid].copy()  # constants without that
+        self.taken = np.zeros(self.bare.shape)  # of the interaction, what is in the constants
 
     def attempt(self, which: IntArray, pace: Pace) -> None:
         """All three stages for some lanes; the second only where a phase seems to form."""
@@ -190,7 +207,7 @@ class _Solution:
     def _finish(self, which: IntArray, lanes: Lanes, state: State, present: BoolArray, most_turns: int = 40) -> None:
         ended, turns = finish(self.terms, lanes, state, present, most_turns=most_turns)
         self.iterations[which] += turns
-        self._keep(which, lanes, state, ended)
+        self._keep(which, state, self._judged(lanes, state, ended))
 
     def from_neighbour(self, start: Solved) -> None:
         """Finish from a solution nearby; lanes for which that fails are left to the full way."""
@@ -202,7 +219,11 @@ class _Solution:
         which = np.flatnonzero(same)
         if which.size == 0:
             return
-        lanes, pick = self.lanes.take(which), pick[which]
+        pick = pick[which]
+        if self.acid.size:
+            molality = start.amounts[pick][:, self.acid] / start.water_kg[pick, None]
+            self._take_in(which, self._interaction(which, molality, start.ionic_strength[pick]))
+        lanes = self.lanes.take(which)
         state = first_state(lanes)
         state.x = LN10 * np.where(lanes.absent, 0.0, start.log_activity[pick])
         state.strength = start.ionic_strength[pick].copy()
@@ -219,67 +240,62 @@ class _Solution:
         The rounds are sped up by the secant through the last two (Anderson 1965, depth 1). A lane that does not settle keeps what
         the last sound round gave.
         """
-        anions = np.flatnonzero(self.network.acid_interaction)
-        if anions.size == 0:
+        if self.acid.size == 0:
             return
-        coefficients = self.network.acid_interaction[anions]
-        places = np.concatenate([[0], anions])  # H+ is the first species
-        bare = self.lanes.ln_beta[:, places].copy()
-        taken = np.zeros(bare.shape)  # of the interaction, what is in the constants
-        last_taken, last_off = taken.copy(), np.full(bare.shape, np.nan)
+        last_taken, last_off = self.taken.copy(), np.full(self.taken.shape, np.nan)
         live = np.flatnonzero([reason == "" for reason in self.reasons])
         for _ in range(_ACID_ROUNDS):
-            off = self._acid_interaction(live, places, coefficients) - taken[live]
+            lanes, state = self.lanes.take(live), self.state.take(live)
+            medium = Medium.at(self.terms, state.strength, state.molality)
+            molality = term_amounts(self.terms, lanes, state, medium)[:, self.acid] / np.exp(state.ln_water)[:, None]
+            off = self._interaction(live, molality, state.strength) - self.taken[live]
             moving = np.abs(off).max(axis=1) > _ACID_CLOSE
             live, off = live[moving], off[moving]
             if live.size == 0:
                 return
-            held = taken[live]
+            held = self.taken[live]
             turned = off - last_off[live]
             share = (off * turned).sum(axis=1) / np.maximum((turned * turned).sum(axis=1), 1e-300)
             share = np.clip(np.where(np.isfinite(share), share, 0.0), -2.0, 0.95)[:, None]
             secant = np.where(np.isfinite(turned), held - last_taken[live] + turned, 0.0)
             last_taken[live], last_off[live] = held, off
-            taken[live] = np.maximum(held + off - share * secant, 0.0)
-            live = self._with_interaction(live, places, bare[live], taken)
+            self._take_in(live, np.maximum(held + off - share * secant, 0.0))
+            lanes, state = self.lanes.take(live), state.take(moving)
+            ended, turns = finish(self.terms, lanes, state, state.phases > 0.0)
+            self.iterations[live] += turns
+            judged = self._judged(lanes, state, ended)
+            sound = np.array([reason == "" for reason in judged.reasons], dtype=bool)
+            self._take_in(live[~sound], held[~sound])
+            live = live[sound]
+            self._keep(live, state.take(sound), judged.take(sound))
 
-    def _acid_interaction(self, which: IntArray, places: IntArray, coefficients: FloatArray) -> FloatArray:
-        """What the interaction adds to ln gamma of H+ and of the anions in the state that some lanes are in, [lanes, places]."""
-        lanes, state = self.lanes.take(which), self.state.take(which)
-        medium = Medium.at(self.terms, state.strength, state.molality)
-        molality = term_amounts(self.terms, lanes, state, medium)[:, places] / np.exp(state.ln_water)[:, None]
-        proton, others = activity.ln_acid_interaction(molality[:, 0], molality[:, 1:], coefficients, state.strength)
-        there = lanes.ln_beta[:, places] > 0.5 * ABSENT
-        return np.where(there, np.column_stack([proton, others]), 0.0)
+    def _interaction(self, which: IntArray, molality: FloatArray, strength: FloatArray) -> FloatArray:
+        """What the interaction adds to ln gamma of H+ and of the anions, [lanes, acid], from their molalities."""
+        coefficients = self.network.acid_interaction[self.acid[1:]]
+        proton, anions = activity.ln_acid_interaction(molality[:, 0], molality[:, 1:], coefficients, strength)
+        return np.where(self.bare[which] > 0.5 * ABSENT, np.column_stack([proton, anions]), 0.0)
 
-    def _with_interaction(self, which: IntArray, places: IntArray, bare: FloatArray, taken: FloatArray) -> IntArray:
-        """Solve some lanes with ``taken`` in their constants; those that came out sound."""
-        lanes, state, before = self.lanes.take(which), self.state.take(which), self.lanes.ln_beta[which]
-        lanes.ln_beta[:, places] = bare - taken[which]
-        ended, turns = finish(self.terms, lanes, state, state.phases > 0.0)
-        self.iterations[which] += turns
-        sound = np.array([reason == "" for reason in self._judged(lanes, state, ended)], dtype=bool)
-        self.lanes.ln_beta[which] = np.where(sound[:, None], lanes.ln_beta, before)
-        self._keep(which[sound], lanes.take(sound), state.take(sound), ended[sound])
-        return which[sound]
+    def _take_in(self, which: IntArray, interaction: FloatArray) -> None:
+        self.taken[which] = interaction
+        self.lanes.ln_beta[which[:, None], self.acid] = self.bare[which] - interaction
 
-    def _keep(self, which: IntArray, lanes: Lanes, state: State, ended: BoolArray) -> None:
-        """Take over the state of some lanes, judged afresh by its residuals."""
+    def _keep(self, which: IntArray, state: State, judged: _Judged) -> None:
+        """Take over the state of some lanes and what it was found to be."""
         self.state.put(which, state)
-        left_kg = residuals(self.terms, lanes, state)[3]
-        self.on_floor[which] = left_kg < lanes.least_water * (1.0 + 1e-9)
-        for lane, reason in zip(which, self._judged(lanes, state, ended), strict=True):
+        self.on_floor[which] = judged.on_floor
+        for lane, reason in zip(which, judged.reasons, strict=True):
             self.reasons[lane] = reason
 
-    def _judged(self, lanes: Lanes, state: State, ended: BoolArray) -> list[str]:
-        """Why each lane is not a solution, or nothing."""
-        relative, excess, medium_error, _ = residuals(self.terms, lanes, state)
+    def _judged(self, lanes: Lanes, state: State, ended: BoolArray) -> _Judged:
+        """The state of some lanes judged afresh by its residuals."""
+        relative, excess, medium_error, left_kg = residuals(self.terms, lanes, state)
         balance = np.abs(relative).max(axis=1)
         over = np.where(lanes.allowed, excess, -1.0).max(axis=1)
         held = lanes.allowed & (np.abs(state.phases) > 1e-9 * lanes.most)
         under = np.where(held, np.where(state.phases < 0.0, np.inf, -excess), -1.0).max(axis=1)
         measured = zip(ended, balance, over, under, medium_error, strict=True)
-        return [_reason(bool(done), *(float(number) for number in numbers)) for done, *numbers in measured]
+        reasons = [_reason(bool(done), *(float(number) for number in numbers)) for done, *numbers in measured]
+        return _Judged(reasons, left_kg < lanes.least_water * (1.0 + 1e-9))
 
     def outcome(self) -> Solved:
         """The answer in the caller's units."""

@@ -225,7 +225,9 @@ def _is_destroyed(token: str, stock: ChemicalStock) -> bool:
     """Whether a thing is to be destroyed (cyanide, sulfide, an oxidiser) and not to come down: no element of which limits are set."""
     record = stock.species(token)
     element = record.report_key.split("(")[0]
-    return record.charge <= 0 and not any(limit.subject == element for limit in stock.index.limits if element in elements())
+    return record.charge <= 0 and not any(
+        limit.subject == element for limit in stock.index.limits if element in elements()
+    )
 
 
 def _firings(walk: Walk) -> Iterator[Firing]:
