@@ -8,7 +8,7 @@ from __future__ import annotations
 import gc
 import os
 
-_FRESH_OBJECTS = 50_000  # made before a search for garbage
+_FRESH_OBJECTS = 400_000  # made before a search for garbage
 
 
 def run() -> None:
