@@ -116,7 +116,7 @@ def test_acid_goes_into_water_and_not_the_other_way(lab: Laboratory):
 
 @pytest.mark.long
 def test_sulfide_is_dosed_one_to_one_with_mercury(lab: Laboratory):
-    """HgS: one sulfide a mercury(II), 1.160 g of HgS per g of Hg (formula masses; issue 5 names the figure)."""
+    """HgS: one sulfide a mercury(II), 1.160 g of HgS per g of Hg (IUPAC atomic weights)."""
     route = route_of(MERCURY, "metals-as-sulfide")
     mercury = poured(lab, MERCURY, "Hg+2")
     excess = next(stage.excess for stage in lab.index.treatments["metals-as-sulfide"].stages if stage.agent == "HS-")

@@ -123,15 +123,15 @@ MIXTURES: dict[str, tuple[str, ...]] = {
     "mercury, iodide in excess": ("1 L of 0.005 M mercury(II) nitrate", "1 L of 0.05 M potassium iodide"),
 }
 
-# The two mixtures of issue 2 as they stand there: I = 0.52 and 1.9 mol/kg, past the maximum of Davies, where ours
+# Two mixtures: I = 0.52 and 1.9 mol/kg, past the maximum of Davies, where ours
 # is held and the other code's turns back: for a doubly charged ion 0.008 and 0.5 decades apart.
 STRONG: dict[str, tuple[tuple[str, ...], float, float]] = {
-    "mercury, bicarbonate, sulfide of issue 2": (
+    "mercury, bicarbonate, sulfide": (
         ("1 L of (0.01 M mercury(II) nitrate + 0.5 M sodium bicarbonate)", "100 mL of 0.11 M sodium sulfide"),
         0.02,
         0.04,
     ),
-    "mercury, bicarbonate, great excess of sulfide of issue 2": (
+    "mercury, bicarbonate, great excess of sulfide": (
         ("1 L of (0.01 M mercury(II) nitrate + 0.5 M sodium bicarbonate)", "100 mL of 5 M sodium sulfide"),
         0.4,
         0.7,
