@@ -218,9 +218,11 @@ def make_lanes(network: Network, totals: FloatArray, water_mol: FloatArray, vess
 
 def _most(nu: FloatArray, totals: FloatArray) -> FloatArray:
     """[L, rows]: total over coefficient of the scarcest component other than H+."""
-    uses = nu > 0.0
-    uses[:, 0] = False
-    shares = np.where(uses, totals[:, None, :] / np.where(uses, nu, 1.0), np.inf).min(axis=2)
+    shares = np.full((totals.shape[0], nu.shape[0]), np.inf)
+    for component in range(1, nu.shape[1]):
+        rows = np.flatnonzero(nu[:, component] > 0.0)
+        if rows.size:
+            shares[:, rows] = np.minimum(shares[:, rows], totals[:, component, None] / nu[rows, component])
     return np.where(np.isfinite(shares), shares, 1.0)
 
 
