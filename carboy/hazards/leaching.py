@@ -10,7 +10,6 @@ from carboy.chemistry.mixture import Mixture, poured_together
 from carboy.chemistry.stock import ChemicalStock
 from carboy.model.plan import Ingredient, Interval, Portion
 
-LIQUID_TO_SOLID = 20.0  # g of fluid per g of waste; EPA method 1311, from memory
 _FLUIDS = "extraction-fluid-"  # the materials of the graph that are such fluids begin so
 BASIS = (
     "The leaching test is computed: the cake, with the liquid that it holds, in equilibrium with twenty times its weight of each of the two "
@@ -34,7 +33,8 @@ def extracts(cake: Mixture, stock: ChemicalStock, inert_g: float = 0.0) -> list[
                 ingredients=(Ingredient(words=material.name, reference=f"material:{key}"),),
             )
             fluid = bench.make_up(portion, material.name, 25.0).mixture
-            share = LIQUID_TO_SOLID * (cake.mass_g + inert_g) / np.maximum(fluid.mass_g, 1e-9)
+            ratio = stock.index.thresholds["leaching-liquid-to-solid"].value.magnitude
+            share = ratio * (cake.mass_g + inert_g) / np.maximum(fluid.mass_g, 1e-9)
             open_cake = cake.take(np.arange(cake.lanes))
             open_cake.headspace_L = open_cake.air_mol = None
             found.append(poured_together(open_cake, fluid.scaled(share)))

@@ -116,7 +116,7 @@ def faults(
         held = min(i, 0.394979339)
         davies = -0.509 * (np.sqrt(held) / (1.0 + np.sqrt(held)) - 0.3 * held)
         log_gamma = np.where(network.charge == 0.0, 0.1 * min(i, 5.0), davies * network.charge**2)
-        # strong acid: H+ and the anions that it interacts with, 0.4 of the way up from 0.1 to 0.5 mol/kg and so on, to 20 mol/kg
+        # strong acid: the interaction comes in between 0.1 and 0.5 mol/kg of H+, and molalities above 20 count as 20
         part = max(1.0 - 0.394979339 / max(i, 0.394979339), 0.0) * np.clip((molality[lane, 0] - 0.1) / 0.4, 0.0, 1.0)
         log_gamma[0] += part * (np.minimum(molality[lane], 20.0) * network.acid_interaction).sum()
         log_gamma += part * min(molality[lane, 0], 20.0) * network.acid_interaction

@@ -2,21 +2,18 @@
 
 from __future__ import annotations
 
-import functools
-
 import numpy as np
 import pytest
 
 import carboy
-from carboy.bench.make_up import Bench
-from carboy.bench.ranges import Ranges
-from carboy.model.treatment import Route, TreatReport
+from carboy.model.treatment import Route
 from carboy.planning.liquid import hazards_of
 from carboy.planning.search import after, applies, must_go, sequences, state_graph
 from carboy.text.cases import read_case
 from carboy.text.formulas import molar_mass, parse_formula
 from carboy.text.portions import parse_portion
 from carboy.vetting import Laboratory, laboratory
+from tests.planning.treating import poured, route_of, treated
 
 MERCURY = "4 L of (0.02 M mercury(II) nitrate + 0.5 M nitric acid)"
 CHROMATE = "2 L of (0.005 M potassium dichromate + 0.02 M sulfuric acid)"
@@ -43,21 +40,6 @@ WASTES = {
 @pytest.fixture(scope="module")
 def lab() -> Laboratory:
     return laboratory()
-
-
-@functools.cache
-def treated(waste: str) -> TreatReport:
-    return carboy.treat(waste)
-
-
-def route_of(waste: str, treatment: str) -> Route:
-    return next(route for route in treated(waste).routes if treatment in route.treatments)
-
-
-def poured(lab: Laboratory, text: str, token: str) -> float:
-    """mol of a component that a portion brings."""
-    mixture = Bench(lab.stock, Ranges()).make_up(parse_portion(text, lab.names), "portion", 25.0).mixture
-    return float(mixture.total(token)[0])
 
 
 def additions(route: Route, token: str, lab: Laboratory, treatment: str = "") -> float:

@@ -2,20 +2,16 @@
 
 from __future__ import annotations
 
-import functools
 import re
 
 import pytest
 
-import carboy
-from carboy.bench.make_up import Bench
-from carboy.bench.ranges import Ranges
-from carboy.model.treatment import Route, Stream, TreatReport
+from carboy.model.treatment import Route, Stream
 from carboy.planning.search import PH, applies
 from carboy.text.cases import read_case
 from carboy.text.formulas import molar_mass, parse_formula
-from carboy.text.portions import parse_portion
 from carboy.vetting import Laboratory, laboratory
+from tests.planning.treating import poured, route_of, treated
 
 COPPER = "1 L of (0.05 M copper sulfate + 0.1 M sulfuric acid)"
 SILVER_AMMINE = "1 L of (0.02 M silver nitrate + 1 M ammonia)"
@@ -37,21 +33,6 @@ _WINDOW = re.compile(r", to pH ([\d.]+) to ([\d.]+),")
 @pytest.fixture(scope="module")
 def lab() -> Laboratory:
     return laboratory()
-
-
-@functools.cache
-def treated(waste: str) -> TreatReport:
-    return carboy.treat(waste)
-
-
-def route_of(waste: str, treatment: str) -> Route:
-    return next(route for route in treated(waste).routes if treatment in route.treatments)
-
-
-def poured(lab: Laboratory, text: str, token: str) -> float:
-    """mol of a component that a portion brings."""
-    mixture = Bench(lab.stock, Ranges()).make_up(parse_portion(text, lab.names), "portion", 25.0).mixture
-    return float(mixture.total(token)[0])
 
 
 def additions(route: Route, token: str, lab: Laboratory, treatment: str) -> float:
